@@ -64,7 +64,7 @@ class Axis:
 
     @classmethod
     def make(cls, given: Axis | Sequence[Any] | Mapping[str, Any]) -> Axis:
-        """Read an axis from ``(name, low, high)`` or from a mapping with keys name, low, high, scale, label."""
+        """Read an axis from ``(name, low, high)`` or a mapping of name, low, high, scale, label."""
         if isinstance(given, Axis):
             return given
         if isinstance(given, Mapping):
