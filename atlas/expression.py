@@ -6,11 +6,12 @@ import keyword
 import re
 from collections.abc import Collection
 
-from atlas.differentiation import derivative, from_sympy, to_sympy
+from atlas.differentiation import derivative
 from atlas.errors import FormulaRefused, shown
 from atlas.evaluation import evaluate, holds
 from atlas.formula_text import symbol_mathtext, to_mathtext, unparse
 from atlas.grammar import DEEPEST, Parser
+from atlas.symbolic import from_sympy, to_sympy
 from atlas.tree import (
     FUNCTIONS,
     Binary,

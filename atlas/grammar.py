@@ -29,7 +29,7 @@ DEEPEST = 60
 
 _TOKEN = re.compile(
     r"(?P<number>(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)|(?P<word>[A-Za-z_][A-Za-z0-9_]*)"
-    r"|(?P<sign>\*\*|<=|>=|==|!=|[-+*/<>(),])"
+    r"|(?P<sign>\*\*|//|<=|>=|==|!=|[-+*/<>(),])"
 )
 _SPACE = re.compile(r"[ \t\r\n]*")
 _COMPARISONS = ("<", "<=", ">", ">=", "==", "!=")
@@ -83,7 +83,7 @@ class Parser:
         if token.kind == "end":
             raise FormulaRefused("the formula ends too early; a number, a name or a bracket is missing")
         remedy = f"; {_REMEDIES[token.text]}" if token.text in _REMEDIES else ""
-        if token.kind in ("number", "word") and not remedy:
+        if token.kind in ("number", "word") and token.text not in ("and", "or", "not") and not remedy:
             remedy = "; an operator such as * is missing before it, or a comma or bracket too much"
         _refuse(token, f"{shown(token.text)} is not expected", remedy)
 
@@ -177,8 +177,11 @@ class Parser:
             remedy = "; write * to multiply" if known else nearest(token.text, FUNCTIONS)
             _refuse(token, f"{shown(token.text)} is not a function", remedy)
         if not known:
-            remedy = _REMEDIES.get(token.text)
-            hint = f"; {remedy}" if remedy else nearest(token.text, {*self.names, *FUNCTIONS, "pi"})
+            hint = (
+                f"; {_REMEDIES[token.text]}"
+                if token.text in _REMEDIES
+                else nearest(token.text, {*self.names, *FUNCTIONS, "pi"})
+            )
             _refuse(token, f"the name {shown(token.text)} is unknown", hint)
         return Pi() if token.text == "pi" else Name(token.text)
 
@@ -193,8 +196,8 @@ class Parser:
         self.closing(opened)
         least, most = FUNCTIONS[token.text]
         if len(args) < least or (most is not None and len(args) > most):
-            allowed = f"at least {least}" if most is None else str(least)
-            _refuse(token, f"{token.text} has {len(args)} arguments", f"; {allowed} are needed")
+            needed = f"at least {least}" if most is None else f"exactly {least}"
+            _refuse(token, f"{token.text} has {needed} argument{'s'[: least - 1]}, not {len(args)},")
         return Call(token.text, tuple(args))
 
 

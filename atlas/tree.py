@@ -7,6 +7,11 @@ from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import NamedTuple, TypeAlias
 
+from atlas.errors import FormulaRefused
+from tiles.number import fraction_text
+
+LONGEST_DECIMAL = 40
+MOST_BITS = 1023
 FUNCTIONS: Mapping[str, tuple[int, int | None]] = {
     "exp": (1, 1),
     "log": (1, 1),
@@ -184,3 +189,26 @@ def size(node: Node, names: Mapping[str, Size] | None = None) -> Size:
         1 + sum(part.nodes for part in below),
         1 + max((part.depth for part in below), default=0),
     )
+
+
+def whole(value: int) -> Number:
+    """Return a whole number from 0 up as a literal."""
+    return Number(str(value), Fraction(value))
+
+
+def rational(value: Fraction) -> Node:
+    """Return a rational as a literal where a short decimal holds it, else as a quotient of literals.
+
+    Raises
+    ------
+    FormulaRefused
+        When numerator or denominator is beyond float64.
+    """
+    if value < 0:
+        return Unary("-", rational(-value))
+    if max(value.numerator.bit_length(), value.denominator.bit_length()) > MOST_BITS:
+        raise FormulaRefused("a constant is beyond float64; write the formula with smaller numbers or powers")
+    text = fraction_text(value)
+    if "/" in text or (len(text) > LONGEST_DECIMAL and value.denominator != 1):
+        return Binary("/", whole(value.numerator), whole(value.denominator))
+    return Number(text, value)
