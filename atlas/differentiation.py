@@ -104,8 +104,8 @@ def _of_branches(node: Call, name: str) -> Node:
             return _of_extreme(node, name)
         case "mod":
             rate, modulus = derivative(args[0], name), derivative(args[1], name)
-            whole = Call("floor", (Binary("/", args[0], args[1]),))
-            return _difference(rate, _product(whole, modulus))
+            held = Call("floor", (Binary("/", args[0], args[1]),))
+            return _difference(rate, _product(held, modulus))
         case "atan2":
             up, across = args
             turning = _difference(

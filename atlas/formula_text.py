@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 
 from atlas.tree import Binary, Call, Compare, Logic, Name, Node, Number, Pi, Unary
@@ -17,42 +18,9 @@ _AROUND = {
     "abs": (r"\left|", r"\right|"),
     "floor": (r"\left\lfloor ", r"\right\rfloor "),
 }
-_GREEK = frozenset(
-    [
-        "alpha",
-        "beta",
-        "gamma",
-        "delta",
-        "epsilon",
-        "zeta",
-        "eta",
-        "theta",
-        "iota",
-        "kappa",
-        "lambda",
-        "mu",
-        "nu",
-        "xi",
-        "pi",
-        "rho",
-        "sigma",
-        "tau",
-        "upsilon",
-        "phi",
-        "chi",
-        "psi",
-        "omega",
-        "Gamma",
-        "Delta",
-        "Theta",
-        "Lambda",
-        "Xi",
-        "Sigma",
-        "Upsilon",
-        "Phi",
-        "Psi",
-        "Omega",
-    ]
+_GREEK = re.compile(
+    "alpha|beta|[gG]amma|[dD]elta|epsilon|zeta|eta|[tT]heta|iota|kappa|[lL]ambda|mu|nu|[xX]i|pi|rho"
+    "|[sS]igma|tau|[uU]psilon|[pP]hi|chi|[pP]si|[oO]mega"
 )
 _BINARY = {"+": _SUM, "-": _SUM, "*": _PRODUCT, "/": _PRODUCT, "**": _POWER}
 
@@ -131,7 +99,7 @@ def symbol_mathtext(name: str) -> str:
 
 
 def _upright(word: str) -> str:
-    if word in _GREEK:
+    if _GREEK.fullmatch(word):
         return f"\\{word}"
     return word if len(word) == 1 or word.isdigit() else f"\\mathrm{{{word}}}"
 

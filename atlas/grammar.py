@@ -177,11 +177,8 @@ class Parser:
             remedy = "; write * to multiply" if known else nearest(token.text, FUNCTIONS)
             _refuse(token, f"{shown(token.text)} is not a function", remedy)
         if not known:
-            hint = (
-                f"; {_REMEDIES[token.text]}"
-                if token.text in _REMEDIES
-                else nearest(token.text, {*self.names, *FUNCTIONS, "pi"})
-            )
+            hint = nearest(token.text, {*self.names, *FUNCTIONS, "pi"})
+            hint = f"; {_REMEDIES[token.text]}" if token.text in _REMEDIES else hint
             _refuse(token, f"the name {shown(token.text)} is unknown", hint)
         return Pi() if token.text == "pi" else Name(token.text)
 

@@ -238,8 +238,8 @@ class _Reader:
             return Call("sqrt", (self.node(base),))
         if not exponent.is_Integer or exponent <= _LARGEST_POWER:
             return Binary("**", self.node(base), self.node(exponent))
-        whole, rest = divmod(int(exponent), _LARGEST_POWER)
-        factors = [self.power(base, sympy.Integer(_LARGEST_POWER))] * whole
+        count, rest = divmod(int(exponent), _LARGEST_POWER)
+        factors = [self.power(base, sympy.Integer(_LARGEST_POWER))] * count
         return _times(factors + [self.power(base, sympy.Integer(rest))] * (rest > 0))
 
 
