@@ -48,7 +48,9 @@ class Place:
         if self.option and keys:
             keys[0] = "--" + _OPTIONS.get(keys[0], keys[0]).replace("_", "-")
         path = ".".join(keys).replace(".[", "[")
-        return ": ".join(part for part in (self.file, path) if part) or "request"
+        return ": ".join(part for part in (self.file, path) if part) or (
+            "command line" if self.option else "request"
+        )
 
     def refusal(self, sentence: str) -> ConfigRefused:
         """Return the refusal that says ``sentence`` about this place."""
@@ -65,6 +67,8 @@ def brief(text: str) -> str:
 
 def shown(value: Any) -> str:
     """Return how a value of any type that was found is named in a sentence."""
+    if isinstance(value, list | tuple) and not value:
+        return "an empty list"
     if value is None or isinstance(value, str | dict | list | tuple):
         return errors.shown(value)
     if isinstance(value, int) and value.bit_length() > LONGEST_NUMBER:

@@ -14,7 +14,8 @@ from tiles.window import Axis, View
 Unit = Literal["mm", "px"]
 Corner = Literal["upper left", "upper right", "lower left", "lower right"]
 CORNERS: tuple[Corner, ...] = ("upper left", "upper right", "lower left", "lower right")
-SIZE_PATTERN = r"\s*(\d{1,9}(?:\.\d{1,6})?)\s*[x×]\s*(\d{1,9}(?:\.\d{1,6})?)\s*(mm|px)?\s*"
+_SIDE = r"([0-9]{1,9}(?:\.[0-9]{1,6})?)"
+SIZE_PATTERN = rf"\s*{_SIDE}\s*[x×]\s*{_SIDE}\s*(mm|px)?\s*"
 MILLIMETRES_PER_INCH = Fraction("25.4")
 
 
