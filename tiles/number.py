@@ -12,9 +12,10 @@ from tiles.errors import NumberRefused
 
 PI = Decimal("3.14159265358979323846264338327950288419716939937510582097494459230781640628620899863")
 LONGEST_NUMBER = 400
+_BITS = 1300  # of numerator and denominator together: as p/q such a number has at most 400 characters
 _DECIMAL = r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d{1,4})?"
-_FRACTION = re.compile(rf"\s*({_DECIMAL})\s*(?:/\s*({_DECIMAL}))?\s*")
-_OF_PI = re.compile(rf"\s*(?:([+-])|({_DECIMAL})\s*\*)?\s*pi\s*(?:/\s*({_DECIMAL}))?\s*")
+_FRACTION = re.compile(rf"\s*({_DECIMAL})\s*(?:/\s*({_DECIMAL}))?\s*", re.ASCII)
+_OF_PI = re.compile(rf"\s*(?:([+-])|({_DECIMAL})\s*\*)?\s*pi\s*(?:/\s*({_DECIMAL}))?\s*", re.ASCII)
 
 
 @total_ordering
@@ -59,7 +60,7 @@ class Exact:
             return ratio * PI if self.of_pi else ratio
 
     def __str__(self) -> str:
-        """Return the shortest text that :func:`exact` reads back as the same number."""
+        """Return a short text that :func:`exact` reads back as the same number."""
         text = fraction_text(self.value)
         if not self.of_pi:
             return text
@@ -87,8 +88,9 @@ def fraction_text(value: Fraction) -> str:
         rest //= 5
         fives += 1
     places = max(twos, fives)
-    if rest != 1 or places > LONGEST_NUMBER - 20:
-        return f"{top}/{bottom}"
+    ratio = f"{top}/{bottom}"
+    if rest != 1 or places > LONGEST_NUMBER:
+        return ratio
     if places == 0:
         digits = str(top)
         if len(digits) > 18 and digits.endswith("000000"):
@@ -98,7 +100,8 @@ def fraction_text(value: Fraction) -> str:
     scaled = abs(top) * 10**places // bottom
     sign = "-" if top < 0 else ""
     if places > 18:
-        return f"{sign}{scaled}e-{places}"
+        decimal = f"{sign}{scaled}e-{places}"
+        return decimal if len(decimal) <= LONGEST_NUMBER else ratio
     digits = str(scaled).rjust(places + 1, "0")
     return f"{sign}{digits[:-places]}.{digits[-places:]}"
 
@@ -120,7 +123,7 @@ def exact(given: str | int | float | Fraction | Decimal | Exact) -> Exact:
     Raises
     ------
     NumberRefused
-        For anything else, for a number that is not finite and for one of absurd length.
+        For anything else, for a number that is not finite and for one that takes over 390 digits.
 
     Examples
     --------
@@ -134,7 +137,7 @@ def exact(given: str | int | float | Fraction | Decimal | Exact) -> Exact:
     if isinstance(given, bool):
         raise NumberRefused(f"'{given}' is not a number; write a decimal, p/q or a multiple of pi")
     if isinstance(given, int | Fraction):
-        return Exact(Fraction(given))
+        return Exact(_bounded(Fraction(given)))
     text = repr(float(given)) if isinstance(given, float) else str(given)
     if len(text) > LONGEST_NUMBER:
         raise NumberRefused(f"a number of {len(text)} characters is too long; at most {LONGEST_NUMBER}")
@@ -150,4 +153,10 @@ def _ratio(top: str, bottom: str | None, text: str) -> Fraction:
     below = Fraction(bottom) if bottom else Fraction(1)
     if below == 0:
         raise NumberRefused(f"'{text}' divides by zero")
-    return Fraction(top) / below
+    return _bounded(Fraction(top) / below)
+
+
+def _bounded(value: Fraction) -> Fraction:
+    if value.numerator.bit_length() + value.denominator.bit_length() > _BITS:
+        raise NumberRefused("a number of more than 390 digits is too large or too fine; write a shorter one")
+    return value

@@ -5,14 +5,13 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from decimal import Decimal, localcontext
-from fractions import Fraction
 from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from tiles.errors import NumberRefused, WindowRefused, nearest
-from tiles.number import Exact, exact
+from tiles.number import PI, Exact, exact
 
 Scale = Literal["linear", "log"]
 _DIGITS = 60
@@ -144,6 +143,7 @@ class Axis:
         return float(Exact(size, self.of_pi))
 
     def _points(self, start: int, step: int, count: int, parts: int) -> NDArray[np.float64]:
+        parts = int(parts)  # a NumPy integer would overflow below
         indices = range(start, start + step * count, step)
         if self.scale == "log":
             return np.fromiter(self._log_points(indices, parts), np.float64, count)
@@ -152,9 +152,9 @@ class Axis:
         base = low.numerator * width.denominator * parts
         stride = width.numerator * low.denominator
         if self.of_pi:
-            return np.fromiter(
-                (float(Exact(Fraction(base + stride * k, bottom), True)) for k in indices), np.float64, count
-            )
+            with localcontext() as context:
+                context.prec = 80
+                return np.fromiter((float(PI * (base + stride * k) / bottom) for k in indices), float, count)
         return np.fromiter(((base + stride * k) / bottom for k in indices), np.float64, count)
 
     def _log_points(self, indices: range, parts: int) -> list[float]:
@@ -163,11 +163,13 @@ class Axis:
             context.prec = _DIGITS
             low = self.low.as_decimal()
             unit = (self.high.as_decimal() / low).ln() / parts
-            fine = [(unit * k).exp() for k in range(min(coarse, parts + 1))]
+            fine: dict[int, Decimal] = {}
             large: dict[int, Decimal] = {}
             points = []
             for index in indices:
                 block, rest = divmod(index, coarse)
+                if rest not in fine:
+                    fine[rest] = (unit * rest).exp()
                 if block not in large:
                     large[block] = low * (unit * (block * coarse)).exp()
                 points.append(float(large[block] * fine[rest]))
