@@ -10,7 +10,7 @@ from atlas.differentiation import derivative
 from atlas.errors import FormulaRefused, shown
 from atlas.evaluation import evaluate, holds
 from atlas.formula_text import symbol_mathtext, to_mathtext, unparse
-from atlas.grammar import DEEPEST, Parser
+from atlas.grammar import DEEPEST, LONGEST_TEXT, Parser
 from atlas.symbolic import from_sympy, to_sympy
 from atlas.tree import (
     FUNCTIONS,
@@ -22,6 +22,7 @@ from atlas.tree import (
     Node,
     Number,
     Pi,
+    Size,
     Unary,
     children,
     free_names,
@@ -32,6 +33,8 @@ from atlas.tree import (
 
 __all__ = [
     "FUNCTIONS",
+    "IDENTIFIER",
+    "LONGEST_TEXT",
     "Binary",
     "Call",
     "Compare",
@@ -40,6 +43,7 @@ __all__ = [
     "Node",
     "Number",
     "Pi",
+    "Size",
     "Unary",
     "check_powers",
     "children",
@@ -51,6 +55,7 @@ __all__ = [
     "is_condition",
     "is_identifier",
     "parse",
+    "size",
     "substitute",
     "symbol_mathtext",
     "to_mathtext",
@@ -60,7 +65,7 @@ __all__ = [
 
 MOST_NODES = 500
 LARGEST_EXPONENT = 64
-_IDENTIFIER = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,39}")
+IDENTIFIER = r"[A-Za-z][A-Za-z0-9_]{0,39}"
 
 
 def is_identifier(text: str) -> bool:
@@ -70,7 +75,7 @@ def is_identifier(text: str) -> bool:
     neither Python keywords nor functions of the language nor ``pi``.
     """
     return (
-        _IDENTIFIER.fullmatch(text) is not None
+        re.fullmatch(IDENTIFIER, text) is not None
         and not keyword.iskeyword(text)
         and text not in FUNCTIONS
         and text != "pi"
