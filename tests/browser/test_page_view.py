@@ -1,0 +1,298 @@
+"""Keys, wheel, drag, pinch, links, readouts and copying."""
+
+from __future__ import annotations
+
+import threading
+from collections.abc import Iterator
+from fractions import Fraction
+from functools import partial
+from http.server import SimpleHTTPRequestHandler, ThreadingHTTPServer
+from pathlib import Path
+from typing import Any
+
+import pytest
+import yaml
+
+from tests.browser.conftest import Open
+from tests.browser.opened import Opened
+from tests.browser.synthetic_site import SyntheticSite
+from tiles.number import exact
+
+pytestmark = pytest.mark.browser
+Site = tuple[SyntheticSite, Path]
+
+
+def plate(opened: Opened) -> dict[str, Any]:
+    """Return the plate that the page copies."""
+    text = opened.call("yaml")
+    document = yaml.load(text, Loader=yaml.BaseLoader)
+    assert list(document) == ["plates"]
+    (only,) = document["plates"].values()
+    return dict(only)
+
+
+def test_starts_with_the_whole_view(full_site: Site, open_page: Open) -> None:
+    site, folder = full_site
+    opened = open_page(folder).settle()
+    for name in ("across", "up"):
+        axis = opened.axis(name)
+        assert (axis["low"], axis["high"]) == (site.end(name, "low"), site.end(name, "high"))
+        size = opened.call("plot")["width" if name == "across" else "height"]
+        assert 0.97 < 1 / (axis["pixel"] * size) <= 1
+    assert "#" not in opened.page.url
+    opened.page.set_viewport_size({"width": 640, "height": 500})
+    opened.settle()
+    assert opened.axis("across")["high"] == site.end("across", "high")
+
+
+@pytest.mark.parametrize("start", ["", "#across=3.140625,0.71&up=1,0.3"])
+def test_keys_away_and_back(full_site: Site, open_page: Open, start: str) -> None:
+    opened = open_page(full_site[1], hash=start).settle()
+    before = opened.call("view")
+    opened.press("+", "+", "ArrowLeft", "ArrowUp", "Shift+ArrowRight", "a", "+", "u", "+", "Shift+ArrowUp")
+    away = opened.call("view")
+    assert away["across"]["level"] == away["up"]["level"] + before["across"]["level"] - before["up"]["level"]
+    opened.press(
+        "Shift+ArrowDown", "-", "a", "-", "b", "Shift+ArrowLeft", "ArrowDown", "ArrowRight", "-", "-"
+    )
+    assert opened.call("view") == before
+    opened.press("Home")
+    assert opened.axis("up")["high"] == 1
+
+
+def test_arrows_move_by_device_pixels(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], ratio=2, hash="#across=3,0.8&up=2,0.8").settle()
+    before = opened.axis("across")["start"]
+    opened.press("Shift+ArrowRight")
+    assert opened.axis("across")["start"] - before == opened.axis("across")["pixel"]
+    opened.press("ArrowRight")
+    assert opened.axis("across")["start"] - before == 129 * opened.axis("across")["pixel"]
+
+
+def test_axes_zoom_apart(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=2,0.8&up=2,0.8").settle()
+
+    def levels() -> tuple[float, float]:
+        view = opened.settle().call("view")
+        return view["across"]["level"], view["up"]["level"]
+
+    opened.page.mouse.move(400, 300)
+    opened.page.mouse.wheel(0, -200)
+    opened.page.wait_for_function("atlasPage.view().up.level > 2")
+    assert levels() == (2.5, 2.5)
+    for modifier, wanted in (("Shift", (2.75, 2.5)), ("Alt", (2.75, 2.75))):
+        opened.page.keyboard.down(modifier)
+        opened.page.mouse.wheel(0, -100)
+        opened.page.keyboard.up(modifier)
+        opened.page.wait_for_timeout(50)
+        assert levels() == wanted
+    opened.page.get_by_label("across", exact=True).check()
+    opened.page.get_by_role("button", name="Zoom in").click()
+    assert levels() == (3.25, 2.75)
+    opened.page.get_by_label("up", exact=True).check()
+    opened.page.get_by_role("button", name="Zoom out").click()
+    assert levels() == (3.25, 2.25)
+    opened.page.get_by_role("button", name="Tile pixels").click()
+    assert levels() == (3, 2)
+
+
+def test_wheel_keeps_what_lies_under_the_pointer(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=2,0.8&up=2,0.8").settle()
+    before = opened.addresses()
+    left, top = opened.plot_corner()
+    opened.page.mouse.move(left + 123, top + 77)
+
+    def under_pointer() -> Fraction:
+        axis = opened.settle().axis("across")
+        return axis["start"] + 123 * axis["pixel"]
+
+    held = under_pointer()
+    for turn in (-300, 300):
+        opened.page.mouse.wheel(0, turn)
+        opened.page.wait_for_function(f"atlasPage.view().up.level === {2.75 if turn < 0 else 2}")
+        assert abs(under_pointer() - held) <= opened.axis("across")["pixel"] / 2
+    assert opened.addresses() == before
+
+
+def test_drag_moves_by_exact_pixels(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=3,0.8&up=3,0.8").settle()
+    across, up = opened.axis("across"), opened.axis("up")
+    opened.page.mouse.move(400, 300)
+    opened.page.mouse.down()
+    opened.page.mouse.move(420, 310)
+    opened.page.mouse.move(437, 341)
+    opened.page.mouse.up()
+    opened.settle()
+    assert opened.axis("across")["start"] == across["start"] - 37 * across["pixel"]
+    assert opened.axis("up")["start"] == up["start"] + 41 * up["pixel"]
+
+
+@pytest.mark.parametrize(("axes", "gained"), [("both", (1, 1)), ("across", (1, 0))])
+def test_pinch(full_site: Site, open_page: Open, axes: str, gained: tuple[int, int]) -> None:
+    opened = open_page(
+        full_site[1], size=(360, 640), hash="#across=1.5,0.8&up=1,0.8", has_touch=True
+    ).settle()
+    opened.page.get_by_label("both axes" if axes == "both" else axes, exact=True).check()
+    fingers = opened.page.context.new_cdp_session(opened.page)
+
+    def touch(kind: str, *at: tuple[int, int]) -> None:
+        points = [{"x": x, "y": y, "id": k} for k, (x, y) in enumerate(at)]
+        fingers.send("Input.dispatchTouchEvent", {"type": kind, "touchPoints": points})
+
+    touch("touchStart", (170, 300))
+    touch("touchStart", (170, 300), (230, 300))
+    for out in (10, 20, 30):
+        touch("touchMove", (170 - out, 300), (230 + out, 300))
+    touch("touchEnd")
+    view = opened.settle().call("view")
+    assert (view["across"]["level"] - 1.5, view["up"]["level"] - 1) == gained
+
+
+def test_limits(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=23,0.8&up=2,0.8").settle()
+    opened.press("+", "+", "+")
+    assert opened.axis("across")["level"] == 23
+    opened.press("Home", *["-"] * 8)
+    for name, side in (("across", "width"), ("up", "height")):
+        axis = opened.axis(name)
+        assert axis["level"] <= 0 or 1 / axis["pixel"] >= opened.call("plot")[side] / 2
+    opened.press(*["ArrowRight"] * 30)
+    assert opened.addresses()[0].endswith(",1")
+
+
+def test_link_restores_the_view(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1]).settle().press("+", "ArrowLeft", "a", "+", "Shift+ArrowUp")
+    view = opened.call("view")
+    opened.page.mouse.move(300, 300)
+    opened.page.mouse.wheel(0, -130)
+    opened.page.wait_for_function(
+        "before => atlasPage.view().across.level > before", arg=view["across"]["level"]
+    )
+    view = opened.settle().call("view")
+    link = opened.page.url
+    again = open_page(full_site[1], hash="#" + link.split("#")[1]).settle()
+    assert again.call("view") == view
+    again.page.evaluate("location.hash = ''")
+    again.page.wait_for_function("atlasPage.view().across.address.endsWith(',0.8')")
+    again.page.go_back()
+    again.page.wait_for_function("link => location.href === link", arg=link)
+    assert again.settle().call("view") == view
+
+
+def test_a_link_that_makes_no_sense(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=2,0.zz&up=999").settle()
+    assert (
+        opened.status() == "The view in this page's address could not be read, so the view was left as it is."
+    )
+    assert opened.axis("across")["low"] == Fraction(14, 5)
+
+
+@pytest.mark.parametrize("zoom", [("1.25", "1.5"), ("3", "2"), ("22.5", "23")])
+def test_readout_is_exact(full_site: Site, open_page: Open, zoom: tuple[str, str]) -> None:
+    site, folder = full_site
+    opened = open_page(folder, hash=f"#across={zoom[0]},0.812345&up={zoom[1]},0.3").settle()
+    plot = opened.call("plot")
+    texts = opened.call("readout", plot["left"] + 123.5, plot["top"] + 45.5)
+    for name, text, pixel in zip(("across", "up"), texts, (123, plot["height"] - 46), strict=True):
+        axis = opened.axis(name)
+        width = site.end(name, "high") - site.end(name, "low")
+        value = site.end(name, "low") + width * (axis["start"] + (pixel + Fraction(1, 2)) * axis["pixel"])
+        places = len(text.partition(".")[2])
+        assert abs(Fraction(text) - value) <= Fraction(1, 2 * 10**places)
+        assert Fraction(1, 10**places) <= width * axis["pixel"] / 10
+    opened.page.mouse.move(plot["left"] + 123, opened.plot_corner()[1] + 45)
+    opened.settle()
+    assert opened.page.text_content("#readout") == f"pointerr = {texts[0]}x = {texts[1].replace('-', '−')} kt"
+
+
+@pytest.mark.parametrize("zoom", [("1.234375", "2.5"), ("3", "2"), ("23", "20")])
+def test_copied_plate_has_the_exact_ends(full_site: Site, open_page: Open, zoom: tuple[str, str]) -> None:
+    site, folder = full_site
+    opened = open_page(folder, hash=f"#across={zoom[0]},0.8123&up={zoom[1]},0.3").settle()
+    copied = plate(opened)
+    assert {key: copied[key] for key in ("family", "set", "title")} == site.meta()["plate"]
+    for name in ("across", "up"):
+        axis = opened.axis(name)
+        assert copied[name][0] == site.axes[name]["name"]
+        assert [exact(end).value for end in copied[name][1:]] == [axis["low"], axis["high"]]
+    opened.press("Home")
+    assert plate(opened)["across"] == ["r", "2.8", "4"]
+    assert plate(opened)["up"] == ["x", "-1/3", "1"]
+
+
+def test_log_axes_and_multiples_of_pi(curved_site: Site, open_page: Open) -> None:
+    _, folder = curved_site
+    opened = open_page(folder).settle()
+    assert plate(opened)["across"] == {"name": "dose", "low": "0.001", "high": "500", "scale": "log"}
+    assert plate(opened)["up"] == ["theta", "-1*pi/2", "1*pi"]
+    opened.go("5,0.8", "4,0.35")
+    across, up = opened.axis("across"), opened.axis("up")
+    copied = plate(opened)
+    for end, share in (
+        ("low", across["start"]),
+        ("high", across["start"] + across["pixel"] * opened.call("plot")["width"]),
+    ):
+        assert float(copied["across"][end]) == pytest.approx(1e-3 * 500_000 ** float(share), rel=1e-5)
+        assert float(across[end]) == pytest.approx(1e-3 * 500_000 ** float(share), rel=1e-13)
+    assert [exact(end) for end in copied["up"][1:]] == [
+        exact(f"{up[end].numerator}*pi/{up[end].denominator}") for end in ("low", "high")
+    ]
+    assert opened.call("readout", 400, 300)[1].endswith("π")
+
+
+@pytest.mark.parametrize("secure", [True, False])
+def test_copying_with_either_clipboard(served: Served, open_page: Open, secure: bool) -> None:
+    opened = open_page(served.address, permissions=["clipboard-read", "clipboard-write"]).settle()
+    opened.press("+", "ArrowLeft")
+    if not secure:
+        opened.page.evaluate("Object.defineProperty(window, 'isSecureContext', {value: false})")
+    for button, wanted in (("Copy YAML", opened.call("yaml")), ("Copy link", opened.page.url)):
+        opened.page.get_by_role("button", name=button).click()
+        opened.page.wait_for_function("document.getElementById('status').textContent.startsWith('Copied')")
+        assert opened.page.evaluate("navigator.clipboard.readText()") == wanted
+        opened.press("Shift+ArrowLeft", "Shift+ArrowRight")
+
+
+class Served:
+    """A static web server on loopback that remembers what it was asked for."""
+
+    def __init__(self, folder: Path) -> None:
+        answers: list[tuple[str, int]] = []
+
+        class Handler(SimpleHTTPRequestHandler):
+            def log_request(self, code: Any = "-", size: Any = "-") -> None:
+                answers.append((self.path, int(code)))
+
+        self.answers = answers
+        self.server = ThreadingHTTPServer(("127.0.0.1", 0), partial(Handler, directory=str(folder)))
+        self.address = f"http://127.0.0.1:{self.server.server_port}"
+
+
+@pytest.fixture
+def served(full_site: Site) -> Iterator[Served]:
+    serving = Served(full_site[1])
+    thread = threading.Thread(target=serving.server.serve_forever, kwargs={"poll_interval": 0.02})
+    thread.start()
+    yield serving
+    serving.server.shutdown()
+    thread.join()
+    serving.server.server_close()
+
+
+def test_absent_tiles_are_never_asked_for(served: Served, open_page: Open) -> None:
+    opened = open_page(served.address, hash="#across=3,0.8&up=3,0.8").settle()
+    opened.press(*["ArrowRight"] * 4, *["ArrowUp"] * 4, "-", "-", "-", "Home", "-", "-")
+    opened.go("2,0.01", "2,0.01")
+    paths = {path for path, _ in served.answers if path.startswith("/tiles/")}
+    assert len(paths) > 20
+    assert "/tiles/density/2/2/0/0.png" not in paths
+    assert "/tiles/density/3/3/4/4.png" not in paths
+    assert {code for _, code in served.answers} <= {200, 304}
+
+
+def test_only_what_is_shown_is_read(full_site: Site, open_page: Open) -> None:
+    opened = open_page(full_site[1], hash="#across=3,0.8&up=3,0.8").settle()
+    tiles = [url for url in opened.requests if url.endswith(".png")]
+    assert all("/tiles/density/3/3/" in url for url in tiles)
+    assert 0 < len(tiles) <= 20
+    assert all(url.startswith(("file:", "data:")) for url in opened.requests)
