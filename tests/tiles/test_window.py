@@ -96,7 +96,7 @@ def test_neighbours_share_their_edge_and_a_strip_is_a_part_of_the_whole(found, l
         )
 
 
-@given(axes(), st.integers(1, 1000))
+@given(axes(), st.integers(1, 120))
 def test_the_ends_are_the_ends(found, cells):
     edges = found.edges(cells)
     assert edges.shape == (cells + 1,)
