@@ -268,7 +268,7 @@ def _mathematics(family: Family) -> dict[str, Any]:
     for section in ("state", "parameters"):
         config[section] = {
             name: {key: value for key, value in entry.items() if key not in _GIVEN_ELSEWHERE}
-            for name, entry in config[section].items()
+            for name, entry in config.get(section, {}).items()
         }
     return config
 

@@ -176,7 +176,7 @@ class Number(Kind[Exact]):
     def read(self, given: Any, place: Place) -> Exact:
         number = _exact(given)
         if number is None:
-            raise place.refusal(f"{shown(given)} is not {self.allowed}")
+            raise place.refusal(_fault(given) or f"{shown(given)} is not {self.allowed}")
         size = abs(float(number))
         if size == float("inf") or (size == 0 and number.value != 0):
             raise place.refusal(f"{shown(given)} is out of range; write 0 or a size from 1e-300 to 1e300")
@@ -267,6 +267,19 @@ def _exact(given: Any) -> Exact | None:
     if isinstance(given, str) and not given.isascii():
         return None
     try:
+        if isinstance(given, Exact):
+            return Exact(exact(given.value).value, given.of_pi)
         return exact(given)  # type: ignore[arg-type]
     except NumberRefused:
         return None
+
+
+def _fault(given: Any) -> str:
+    """Return what is wrong with a text that is no number, where that can be said more closely."""
+    if not isinstance(given, str) or not given.isprintable():
+        return ""
+    try:
+        exact(given)
+    except NumberRefused as problem:
+        return str(problem)
+    return ""

@@ -92,7 +92,7 @@ def checked_starts(
             if name not in own:
                 hint = nearest(name, own)
                 raise spot.refusal(f"the family '{family.name}' has no state variable {shown(name)}{hint}")
-            if abs(float(value)) > float(family.escape):
+            if abs(float(value)) >= float(family.escape):
                 raise spot.at(name).refusal(
                     f"the start {value} lies beyond the escape bound {family.escape}; start inside it"
                 )

@@ -1,0 +1,168 @@
+"""The schema that editors read: it accepts what the reader accepts and knows the same keys."""
+
+from __future__ import annotations
+
+import copy
+import json
+from pathlib import Path
+from typing import Any
+
+import jsonschema
+import pytest
+import yaml
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from atlas.config import from_normalised, load, normalised, parse_config
+from atlas.family_keys import FAMILY_KEYS
+from atlas.keys import CONFIG_KEYS, SECTIONS
+from atlas.schema import key_rows, schema
+from atlas.yaml_text import read_yaml
+from tiles.errors import Refusal
+
+HERE = Path(__file__).parent
+EXAMPLES = [HERE / "sound.yaml", *sorted((HERE.parents[1] / "configs").glob("*.yaml"))]
+TREE: Any = read_yaml((HERE / "sound.yaml").read_text(encoding="utf-8"), "sound.yaml")
+SCHEMA = schema()
+VALIDATOR = jsonschema.Draft202012Validator(SCHEMA)
+
+
+def sound() -> dict[str, Any]:
+    return copy.deepcopy(TREE)
+
+
+def accepted_by_reader(tree: Any) -> bool:
+    try:
+        parse_config(tree)
+    except Refusal:
+        return False
+    return True
+
+
+def test_it_is_a_schema_of_the_draft_that_it_names():
+    assert SCHEMA["$schema"] == "https://json-schema.org/draft/2020-12/schema"
+    jsonschema.Draft202012Validator.check_schema(SCHEMA)
+    assert json.loads(json.dumps(SCHEMA)) == SCHEMA
+
+
+@pytest.mark.parametrize("path", EXAMPLES, ids=lambda path: path.name)
+def test_examples_are_accepted_as_texts_and_as_an_editor_types_them(path: Path):
+    load(path)
+    text = path.read_text(encoding="utf-8")
+    VALIDATOR.validate(read_yaml(text, path.name))
+    VALIDATOR.validate(yaml.safe_load(text))
+
+
+@pytest.mark.parametrize(
+    "way",
+    [
+        (),
+        ("defaults",),
+        ("families", "sound"),
+        ("families", "sound", "state", "n"),
+        ("families", "sound", "parameters", "r"),
+        ("plates", "growth"),
+        ("plates", "growth", "inset"),
+        ("plates", "harvest", "across"),
+        ("tile_sets", "tiles"),
+        ("tile_sets", "tiles", "levels"),
+        ("figures", "both"),
+    ],
+    ids=".".join,
+)
+def test_unknown_keys_are_refused_by_both(way: tuple[str, ...]):
+    tree = sound()
+    section = tree
+    for key in way:
+        section = section[key]
+    section["unheard_of"] = "1"
+    assert not VALIDATOR.is_valid(tree)
+    assert not accepted_by_reader(tree)
+
+
+@pytest.mark.parametrize("section", list(SECTIONS))
+def test_missing_keys_are_refused_by_both(section: str):
+    for key in (key for key in SECTIONS[section] if key.required):
+        tree = sound()
+        del next(iter(tree[section].values()))[key.name]
+        assert not VALIDATOR.is_valid(tree)
+        assert not accepted_by_reader(tree)
+
+
+@pytest.mark.parametrize(
+    ("key", "value"),
+    [
+        ("transient", "soon"),
+        ("transient", -1),
+        ("palette", "gray"),
+        ("size", "180"),
+        ("across", ["r", 1]),
+        ("across", ["r", "1", "x"]),
+        ("key", "yes"),
+        ("formats", ["jpeg"]),
+        ("formats", []),
+        ("starts", {"n": 1}),
+        ("samples", "some"),
+        ("background", "grey"),
+    ],
+)
+def test_wrong_values_are_refused_by_both(key: str, value: Any):
+    tree = sound()
+    tree["plates"]["growth"][key] = value
+    assert not VALIDATOR.is_valid(tree)
+    assert not accepted_by_reader(tree)
+
+
+def test_normalised_settings_are_a_config_for_the_schema_too():
+    for record in parse_config(sound()).outputs().values():
+        form = normalised(record)
+        assert from_normalised(form) == record
+        section = {"plate": "plates", "tile set": "tile_sets", "figure": "figures"}[form["kind"]]
+        settings_given = {key: value for key, value in form["settings"].items() if value is not None}
+        VALIDATOR.validate({section: {form["name"]: settings_given}})
+
+
+VALUES = st.one_of(
+    st.sampled_from(
+        ["", "auto", "pi", "-2*pi/3", "1/3", ".5", "1e-3", "010", "4/2", "true", "#fff", "90x60", "x"]
+    ),
+    st.sampled_from(
+        [True, 0, 1, 2.0, 0.5, -1, [], {}, ["r", 0, 1], [{"n": "1"}], {"across": 1, "up": 2}, ["png"]]
+    ),
+    st.text(max_size=5),
+)
+
+
+def paths(tree: Any, before: tuple[Any, ...] = ()) -> list[tuple[Any, ...]]:
+    """Return the way to every value below the top of a tree."""
+    entries = tree.items() if isinstance(tree, dict) else enumerate(tree) if isinstance(tree, list) else ()
+    found = []
+    for key, value in entries:
+        found += [(*before, key), *paths(value, (*before, key))]
+    return found
+
+
+@settings(deadline=None, max_examples=200)
+@given(st.sampled_from(paths(TREE)), VALUES)
+def test_whatever_the_reader_accepts_the_schema_accepts(path: tuple[Any, ...], value: Any):
+    tree = sound()
+    parent: Any = tree
+    for key in path[:-1]:
+        parent = parent[key]
+    parent[path[-1]] = value
+    assert VALIDATOR.is_valid(tree) or not accepted_by_reader(tree)
+
+
+def test_every_key_is_documented_once_a_section():
+    rows = key_rows()
+    assert {row.section for row in rows} <= set(CONFIG_KEYS)
+    assert len({(row.section, row.name) for row in rows}) == len(rows)
+    assert len(rows) == sum(map(len, SECTIONS.values())) + len(FAMILY_KEYS)
+    assert all(row.meaning.endswith(".") and row.allowed for row in rows)
+    by_name = {(row.section, row.name): row.default for row in rows}
+    assert by_name["plates", "size"] == "180x110"
+    assert by_name["plates", "formats"] == "png"
+    assert by_name["plates", "key"] == "false"
+    assert by_name["tile_sets", "levels"] == "across 4, up 4"
+    assert by_name["plates", "set"] == by_name["plates", "inset"] == "none"
+    assert by_name["figures", "panels"] == "required"
