@@ -10,9 +10,10 @@ from typing import Any, TypeVar
 
 from atlas import catalogue
 from atlas.assembly import read_figure, read_plate, read_tile_set
+from atlas.digests import counting_digest, digest, normalised
 from atlas.errors import ConfigRefused
 from atlas.families import Family, family_from_config
-from atlas.jobs import COUNTING_VERSION, Figure, Job, Plate, TileSet, counting_digest, digest, normalised
+from atlas.jobs import COUNTING_VERSION, Figure, Job, Plate, TileSet
 from atlas.keys import CONFIG_KEYS, DEFAULT_KEYS, SECTIONS
 from atlas.kinds import Text
 from atlas.names import check_distinct
@@ -32,7 +33,6 @@ __all__ = [
     "TileSet",
     "counting_digest",
     "digest",
-    "from_normalised",
     "load",
     "normalised",
     "parse_config",
@@ -242,45 +242,6 @@ def plate_from_parts(
         reader.families[family.name] = family
         parts["family"] = family.name
     return read_plate(name, parts, place, reader.family)
-
-
-def from_normalised(given: Mapping[str, Any], where: str = "record") -> Plate | TileSet | Figure:
-    """Make a record again from what `normalised` returned.
-
-    Parameters
-    ----------
-    given : mapping
-        The result of `normalised`, perhaps after a way through JSON.
-    where : str
-        What a sentence calls it.
-
-    Raises
-    ------
-    ConfigRefused, FamilyRefused, FormulaRefused
-        When it is not such a result.
-    """
-    config = parse_config(_as_config(given, Place(where)), where)
-    return config.outputs()[str(given["name"])]
-
-
-def _as_config(given: Mapping[str, Any], place: Place) -> dict[str, Any]:
-    sections = {"plate": "plates", "tile set": "tile_sets", "figure": "figures"}
-    try:
-        section, name = sections[given["kind"]], str(given["name"])
-        settings = {key: value for key, value in given["settings"].items() if value is not None}
-        parts = [_as_config(plate, place) for plate in given.get("plates", {}).values()]
-        config: dict[str, Any] = {"families": {}, "plates": {}, "tile_sets": {}, "figures": {}}
-        if section != "figures":
-            config["families"][settings["family"]] = {
-                key: value for key, value in given["family"].items() if key != "name"
-            }
-    except (KeyError, TypeError, AttributeError):
-        raise place.refusal("this is no complete record of a plate, a tile set or a figure") from None
-    for part in parts:
-        config["families"] |= part["families"]
-        config["plates"] |= part["plates"]
-    config[section][name] = settings
-    return config
 
 
 def _file_content(path: Path, where: str) -> bytes:

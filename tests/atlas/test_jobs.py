@@ -12,9 +12,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.config import counting_digest, digest, from_normalised, normalised, parse_config, plate_from_parts
+from atlas.config import counting_digest, digest, normalised, parse_config, plate_from_parts
 from atlas.errors import ConfigRefused
 from atlas.keys import FORMATS, SECTIONS
+from atlas.remake import from_normalised
 from atlas.yaml_text import read_yaml
 from tiles.palette import PALETTES
 
