@@ -136,7 +136,8 @@ class Axis {
 
   positionOf(value) {
     const above = exact.subtract(value, this.low);
-    if (this.logarithm === null) return exact.roundDiv(above.num * this.width.den * this.full, above.den * this.width.num);
+    const { num, den } = this.width;
+    if (this.logarithm === null) return exact.roundDiv(above.num * den * this.full, above.den * num);
     return exact.roundDiv(exact.ln(exact.divide(value, this.low), this.precision) << this.bits, this.logarithm);
   }
 

@@ -114,7 +114,7 @@ class Frame {
     const side = left - this.css(1);
     const line = (pixel) => top + height - 1 - pixel;
     const fits = spacer(this.css(4));
-    const { major, minor, offset } = ticks.of(this.up, Math.max(2, Math.floor(height / this.css(56))));
+    const { major, minor, offset } = ticks.of(this.up, Math.max(2, Math.floor(height / this.css(48))));
     for (const pixel of minor) this.fill(COLOURS.quiet, side - this.css(4), line(pixel), this.css(4), this.css(1));
     for (const { pixel, text } of major) {
       this.fill(COLOURS.ink, side - this.css(8), line(pixel), this.css(8), this.css(1));

@@ -34,8 +34,8 @@ class Input {
   }
 
   onKey(event) {
-    const elsewhere = event.target !== this.canvas && event.target !== document.body;
-    if (elsewhere || event.ctrlKey || event.metaKey) return;
+    const choosing = event.target.matches("input") && event.key in Input.ARROWS; // arrows choose among its buttons
+    if (choosing || event.target.closest("dialog") || event.ctrlKey || event.metaKey) return;
     const action = this.actionOf(event);
     if (!action) return;
     event.preventDefault();

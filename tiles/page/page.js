@@ -26,6 +26,7 @@ class Page {
 
   resize() {
     this.frame.resize();
+    thinKey();
     if (!this.sized) this.followHash();
     this.sized = true;
     this.redraw();
@@ -70,9 +71,10 @@ class Page {
     const named = ([a, u]) => `across ${a}, up ${u}`;
     const level = (axis) => String(Math.round(axis.level * 100) / 100).replace("-", "−");
     if (kind === "exact") return `Level ${named(asked)}: one tile pixel is one screen pixel.`;
-    if (kind === "shrunk") return `Level across ${level(this.across)}, up ${level(this.up)}.`;
-    if (kind === "none") return "No tiles were built for levels as coarse as these: zoom in.";
-    return `No tiles were built for level ${named(asked)}: those of ${named(pair)} are shown, stretched.`;
+    const here = `Level across ${level(this.across)}, up ${level(this.up)}`;
+    if (kind === "shrunk") return `${here}: ${named(pair)} is shown, shrunk.`;
+    if (kind === "none") return "No tiles of levels as coarse as these were built: zoom in.";
+    return `No tiles of level ${named(asked)} were built: ${named(pair)} is shown, stretched.`;
   }
 
   tileWords() {
@@ -312,6 +314,15 @@ function showKey({ caption, colours, labels }, marked) {
   element("key").hidden = false;
 }
 
+/** Hide the labels of the colour bar that would touch the one before. */
+function thinKey() {
+  const fits = spacer(6);
+  for (const label of element("scale").children) {
+    const { left, right } = label.getBoundingClientRect();
+    label.style.visibility = fits(left, right) ? "" : "hidden";
+  }
+}
+
 function fail(sentence) {
   const message = make("p", sentence);
   message.className = "failed";
@@ -320,7 +331,8 @@ function fail(sentence) {
 }
 
 if (!window.ATLAS_META) {
-  fail("The file meta.js is missing beside this page: copy the whole site folder, or build it again with 'atlas site'.");
+  const remedy = "copy the whole site folder, or build it again with 'atlas site'";
+  fail(`The file meta.js is missing beside this page: ${remedy}.`);
 } else if (window.ATLAS_META.version !== 1) {
   const found = window.ATLAS_META.version;
   fail(`This page reads version 1 of meta.js, but found version ${found}: build the site again with 'atlas site'.`);

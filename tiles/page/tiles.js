@@ -30,7 +30,8 @@ class Tiles {
     const asked = levels.map((level) => Math.max(0, Math.ceil(level)));
     const sharp = levels.every((level, k) => level === asked[k]);
     if (this.isBuilt(...asked)) return { asked, pair: asked, kind: sharp ? "exact" : "shrunk" };
-    const finer = this.pairs.filter((pair) => pair.every((level, k) => level >= asked[k] && level - levels[k] < 2)).pop();
+    const shrinkable = (level, k) => level >= asked[k] && level - levels[k] < 2;
+    const finer = this.pairs.filter((pair) => pair.every(shrinkable)).pop();
     const coarser = this.pairs.find((pair) => pair.every((level, k) => level <= asked[k]));
     if (finer && !(sharp && coarser)) return { asked, pair: finer, kind: "shrunk" };
     return { asked, pair: coarser || null, kind: coarser ? "stretched" : "none" };
@@ -61,6 +62,7 @@ class Tiles {
   /** Draw the visible tiles of the chosen pair into a plot box {left, top, width, height}. */
   draw(context, plot) {
     const { pair, kind } = this.choose();
+    context.imageSmoothingQuality = "high";
     this.wanted.clear();
     const [a, u] = pair || [0, 0];
     if (!pair) return this.forget();
@@ -98,7 +100,8 @@ class Tiles {
       if (parent?.state !== "ready") continue;
       const part = (axis, level, index, up) => {
         const size = 256 >> up;
-        return [[Number(index % (1n << BigInt(up))) * size, size, axis.edge(level, index), axis.edge(level, index + 1n)]];
+        const from = Number(index % (1n << BigInt(up))) * size;
+        return [[from, size, axis.edge(level, index), axis.edge(level, index + 1n)]];
       };
       context.imageSmoothingEnabled = false;
       this.place(context, plot, parent.image, part(this.across, a, column, a - b), part(this.up, u, row, u - v));
