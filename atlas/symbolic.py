@@ -12,8 +12,10 @@ from atlas.tree import Binary, Call, Compare, Logic, Name, Node, Number, Pi, Una
 
 _SAME = ("exp", "log", "sqrt", "sin", "cos", "tan", "tanh", "atan2", "floor", "sign")
 _RENAMED = {"abs": "Abs", "min": "Min", "max": "Max", "mod": "Mod"}
+_OURS = {**{name: name for name in _SAME}, **{name: ours for ours, name in _RENAMED.items()}}
 _RELATIONS = {"<": "Lt", "<=": "Le", ">": "Gt", ">=": "Ge", "==": "Eq", "!=": "Ne"}
 _LARGEST_POWER = 64
+_NOT_REAL = "the formula divides by something that is always 0, or leaves the real numbers; rewrite that part"
 _OPERATORS: Mapping[str, Callable[[Any, Any], Any]] = {
     "+": operator.add,
     "-": operator.sub,
@@ -47,12 +49,10 @@ def to_sympy(node: Node, keep: Callable[[Node], Any] | None = None) -> Any:
 
     try:
         expression = _to_sympy(node, keep or (lambda _: None))
-    except (TypeError, ValueError):  # comparisons of what sympy knows not to be real
+    except (TypeError, ValueError, ZeroDivisionError):  # comparisons of what sympy knows not to be real
         expression = sympy.nan
     if expression.has(sympy.zoo, sympy.oo, -sympy.oo, sympy.nan, sympy.I):
-        raise FormulaRefused(
-            "the formula divides by something that is always 0, or leaves the real numbers; rewrite that part"
-        )
+        raise FormulaRefused(_NOT_REAL)
     return expression
 
 
@@ -139,6 +139,8 @@ class _Reader:
             return Name(expression.name)
         if expression.is_Rational:
             return rational(Fraction(int(expression.p), int(expression.q)))
+        if expression in (sympy.I, sympy.nan, sympy.zoo, sympy.oo, -sympy.oo):
+            raise FormulaRefused(_NOT_REAL)
         if expression is sympy.pi:
             return Pi()
         if expression is sympy.E:
@@ -164,20 +166,16 @@ class _Reader:
         if kind in ("And", "Or"):
             args = sorted(expression.args, key=sympy.default_sort_key)
             return Logic(kind.lower(), tuple(map(self.node, args)))
+        if kind == "atan":
+            return Call("atan2", (self.node(expression.args[0]), whole(1)))
         if kind == "Not":
             return Unary("not", self.node(expression.args[0]))
-        names = {
-            **{name: name for name in _SAME},
-            **{sympy_name: ours for ours, sympy_name in _RENAMED.items()},
-        }
-        if kind not in names:
+        if kind not in _OURS:
             raise FormulaRefused(f"{shown(str(expression))} has no place in the formula language")
-        args = (
-            expression.args
-            if kind not in ("Min", "Max")
-            else sorted(expression.args, key=sympy.default_sort_key)
-        )
-        return Call(names[kind], tuple(map(self.node, args)))
+        args = expression.args
+        if kind in ("Min", "Max"):
+            args = sorted(args, key=sympy.default_sort_key)
+        return Call(_OURS[kind], tuple(map(self.node, args)))
 
     def branches(self, expression: Any) -> Node:
         import sympy
@@ -202,9 +200,9 @@ class _Reader:
 
     def product(self, expression: Any) -> Node:
         coefficient, rest = expression.as_coeff_Mul()
-        value = Fraction(int(coefficient.p), int(coefficient.q)) if coefficient.is_Rational else None
-        if value is None:
+        if not coefficient.is_Rational:
             raise FormulaRefused(f"{shown(str(expression))} has no place in the formula language")
+        value = Fraction(int(coefficient.p), int(coefficient.q))
         above: list[Node] = []
         below: list[Node] = []
         for factor in rest.as_ordered_factors():
