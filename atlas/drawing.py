@@ -131,11 +131,10 @@ def _tick_words(panel: PanelBox, spacing: Spacing) -> Iterator[Words]:
 def _axis_words(panel: PanelBox, text: PanelText, spacing: Spacing) -> Iterator[Words]:
     box, points = panel.raster, spacing.font_size
     if panel.show_across_labels:
-        y = box.bottom + margins.tick_baseline(spacing) + spacing.ems(margins.AXIS_LABEL)
         if panel.across_ticks.offset:
-            offset_y = box.bottom + margins.tick_baseline(spacing) + spacing.ems(margins.OFFSET_LINE)
-            yield Words(panel.across_ticks.offset, box.right, offset_y, spacing.tick_font, box.width, "right")
-            y += spacing.ems(margins.OFFSET_LINE)
+            y = box.bottom + margins.tick_baseline(spacing) + spacing.ems(margins.OFFSET_LINE)
+            yield Words(panel.across_ticks.offset, box.right, y, spacing.tick_font, box.width, "right")
+        y = panel.area.bottom - spacing.ems(margins.PAD + margins.DESCENT)
         yield Words(text.across_label, box.left + box.width / 2, y, points, panel.area.width)
     if panel.show_up_labels:
         x = panel.area.left + spacing.ems(margins.PAD + margins.ASCENT)
@@ -147,11 +146,9 @@ def _axis_words(panel: PanelBox, text: PanelText, spacing: Spacing) -> Iterator[
 
 
 def _head(panel: PanelBox, spacing: Spacing) -> Iterator[Words]:
-    """Yield panel letter and title, on one line above the frame."""
+    """Yield panel letter and title, on one line at the top; panels of a row have theirs at one height."""
     box = panel.raster
-    y = box.top - spacing.line - spacing.ems(margins.TITLE_GAP)
-    if panel.show_up_labels and panel.up_ticks.offset:
-        y -= spacing.ems(margins.OFFSET_GAP + margins.ASCENT + 0.3 - margins.TITLE_GAP)
+    y = panel.area.top + spacing.ems(margins.PAD + margins.ASCENT)
     left = panel.area.left + spacing.ems(margins.PAD)
     if panel.letter:
         room = box.left - left + spacing.ems(2.5)

@@ -104,7 +104,7 @@ def axis_text(name: str, label: str | None = None, unit: str | None = None) -> s
     name : str
         Name of the parameter or the state variable in the formulas.
     label, unit : str, optional
-        The family's words; empty where it has none.
+        The family's words, empty where it has none; a label that only repeats the name is said once.
 
     Examples
     --------
@@ -112,9 +112,10 @@ def axis_text(name: str, label: str | None = None, unit: str | None = None) -> s
     'stock $n$ (kt)'
     """
     words = plain(label or "")
-    parts = [words] if words else []
-    if words.casefold() != name.casefold():
-        parts.append(symbol(name))
+    if words.casefold() == name.casefold():
+        parts = [symbol(name) if len(name) == 1 or name in _GREEK else words]
+    else:
+        parts = [words, symbol(name)] if words else [symbol(name)]
     if unit and unit.strip():
         parts.append(f"({plain(unit)})")
     return " ".join(parts)

@@ -66,5 +66,7 @@ def test_axis_labels() -> None:
     assert axis_text("n", "stock", "kt") == "stock $n$ (kt)"
     assert axis_text("growth", "growth") == "growth"
     assert axis_text("x") == "$x$"
+    assert axis_text("r", "r") == "$r$"
+    assert axis_text("beta", "beta", "1/a") == r"$\beta$ (1/a)"
     assert axis_text("p", "price in $", "$/t") == r"price in \$ $p$ (\$/t)"
     assert plain("two\nlines") == "two lines"
