@@ -49,6 +49,11 @@ class Strip:
         """Number of the column after the last one."""
         return self.first + len(self.counts)
 
+    @property
+    def numbers(self) -> NDArray[np.uint64]:
+        """The per-column arrays as rows of one, in the order of ``PER_COLUMN``, shape (6, columns)."""
+        return np.stack([getattr(self, name) for name in PER_COLUMN])
+
     def check(self) -> None:
         """Check the shapes, the types and that nothing was dropped.
 
@@ -66,13 +71,31 @@ class Strip:
             array = getattr(self, name)
             if array.dtype != np.uint64 or array.shape != (columns,):
                 raise AssertionError(f"{name} is {array.dtype}{array.shape}, not uint64({columns},)")
-        total = self.counts.sum(axis=1, dtype=np.uint64)
-        total = total + self.below + self.above + self.escaped + self.unsettled
-        if not np.array_equal(total, self.exposure):
-            wrong = int(np.flatnonzero(total != self.exposure)[0])
-            raise AssertionError(
-                f"column {self.first + wrong} accounts for {total[wrong]} of {self.exposure[wrong]} samples"
-            )
+        check_sums(self.first, self.counts.sum(axis=1, dtype=np.uint64), self.numbers)
+
+
+def check_sums(first: int, inside: NDArray[np.uint64], numbers: NDArray[np.uint64]) -> None:
+    """Check that columns account for all their samples.
+
+    Parameters
+    ----------
+    first : int
+        Number of the first column, for the message.
+    inside : ndarray of uint64, shape (columns,)
+        Samples counted in the cells.
+    numbers : ndarray of uint64, shape (6, columns)
+        As :attr:`Strip.numbers`.
+
+    Raises
+    ------
+    AssertionError
+        When ``inside + below + above + escaped + unsettled`` differs from the exposure.
+    """
+    total = inside + numbers[1:5].sum(axis=0)
+    wrong = np.flatnonzero(total != numbers[0])
+    if wrong.size:
+        at = int(wrong[0])
+        raise AssertionError(f"column {first + at} accounts for {total[at]} of {numbers[0, at]} samples")
 
 
 def join(strips: Sequence[Strip]) -> Strip:
