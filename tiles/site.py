@@ -1,0 +1,212 @@
+"""The static folder of a tile set: a picture of every tile that is not empty, the page, its description."""
+
+from __future__ import annotations
+
+import json
+import os
+import shutil
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+from functools import partial
+from importlib import resources
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from tiles import png
+from tiles.errors import IndexRefused
+from tiles.grid import TILE, Address, Pair
+from tiles.index import Index
+from tiles.meta import LAYER, meta, runs_where, script
+from tiles.pyramid import Counts
+from tiles.shading import Fit, colour_table, shade_counts
+from tiles.store import Readers, written
+from tiles.strip import PER_COLUMN
+from tiles.tasks import Run, serially
+
+_PAGE_FILES = (".html", ".css", ".js")
+_SHORT_COUNTS = 1 << 16
+
+
+def build_site(
+    index_path: Path,
+    out_dir: Path,
+    *,
+    shading: str = "equalised",
+    palette: str = "blue",
+    background: str | None = None,
+    missing: str | None = None,
+    run: Run = serially,
+    unfinished: Path | None = None,
+) -> None:
+    """Write the folder of a finished index: ``index.html`` opens from any host, or from the disk.
+
+    The folder appears under its name when it is complete; one that is there already is replaced then. A
+    second call with the same arguments goes on from the tile columns that an interrupted one had finished.
+
+    Parameters
+    ----------
+    index_path : Path
+    out_dir : Path
+        The folder.
+    shading : str
+        Its fit is taken from the index, or fitted to the middle level pair.
+    palette, background, missing : str
+        See :func:`tiles.shading.colour_table`.
+    run : callable
+        Scheduler of the tasks; each writes one tile column of a level pair.
+    unfinished : Path, optional
+        Where the folder grows, on the same file system; default ``.parts/`` beside ``out_dir``.
+
+    Raises
+    ------
+    IndexRefused
+        When there is no finished index.
+    OutputFailed
+        When the disk is full or the folder is closed.
+    """
+    unfinished = out_dir.parent / ".parts" / out_dir.name if unfinished is None else unfinished
+    table = colour_table(palette, background=background, missing=missing)
+    with Index.open(index_path) as index:
+        fit = index.fit(shading) or index.fit_from(shading=shading)
+        present = {pair: index.present(pair) for pair in index.pairs}
+        shades = {up: Shades(fit, index.view.up.cell_size(TILE << up)) for _, up in index.pairs}
+        with written(unfinished):
+            _continue(
+                unfinished, {"counts": index.counts_digest(), "fit": fit.to_json(), "table": table.tolist()}
+            )
+            _write_page(unfinished, index, present, fit, table)
+    with Readers(Index, index_path) as readers:
+        tasks = (
+            partial(_write_column, readers, unfinished, shades[pair[1]], table, pair, column)
+            for pair, columns in present.items()
+            for column in columns
+        )
+        run(tasks, lambda _: None)
+    with written(out_dir):
+        _replace(unfinished, out_dir)
+
+
+def pixels(index: Index, fit: Fit, table: NDArray[np.uint8], address: Address) -> NDArray[np.uint8]:
+    """Return the picture of a tile.
+
+    Returns
+    -------
+    ndarray of uint8, shape (256, 256, 3)
+        Red, green and blue; line 0 is the top, that is the highest row of cells. All background where the
+        tile is empty.
+    """
+    shades = Shades(fit, index.view.up.cell_size(TILE << address.up_level))
+    return np.take(table, shades.lines(index, address), axis=0)
+
+
+@dataclass
+class Shades:
+    """Shades tiles of one up level: a table look-up where all columns of a tile had the same exposure.
+
+    Attributes
+    ----------
+    fit : Fit
+    cell_height : float
+        Of the up level, in units of the axis.
+    """
+
+    fit: Fit
+    cell_height: float
+    _tables: dict[int, NDArray[np.uint8]] = field(default_factory=dict)
+
+    def lines(self, index: Index, address: Address) -> NDArray[np.uint8]:
+        """Return the palette indices of a tile, shape (256, 256), line 0 at the top; 0 where it is empty."""
+        counts = index.get_narrow(address)
+        numbers = index.column_numbers(address.across_level, address.column)
+        if counts is None or numbers is None:
+            return np.zeros((TILE, TILE), np.uint8)
+        return self.shade(counts, numbers[0]).T[::-1]
+
+    def shade(self, counts: Counts, exposure: NDArray[np.uint64]) -> NDArray[np.uint8]:
+        """Return ``tiles.shading.shade_counts(counts, exposure, cell_height, fit)``."""
+        if counts.dtype.itemsize > 2 or exposure.min() != exposure.max():
+            return shade_counts(counts, exposure, self.cell_height, self.fit)
+        return np.take(self._table(int(exposure[0])), counts)
+
+    def _table(self, exposure: int) -> NDArray[np.uint8]:
+        if exposure not in self._tables:
+            counts = np.arange(_SHORT_COUNTS, dtype=np.uint32)[None]
+            shades = shade_counts(counts, np.array([exposure], np.uint64), self.cell_height, self.fit)
+            self._tables[exposure] = shades[0]
+        return self._tables[exposure]
+
+
+def _write_column(
+    readers: Readers[Index],
+    site: Path,
+    shades: Shades,
+    table: NDArray[np.uint8],
+    pair: Pair,
+    column: int,
+) -> None:
+    """Write the pictures of one tile column; their folder gets its name when all are there."""
+    folder = site / "tiles" / LAYER / str(pair[0]) / str(pair[1]) / str(column)
+    if folder.is_dir():
+        return
+    growing = folder.with_name(f".{column}")
+    with readers.one() as index, written(site):
+        growing.mkdir(parents=True, exist_ok=True)
+        exposure = _exposure(index, pair[0], column)
+        for row, counts in index.tiles_of_column(pair, column):
+            picture = png.encode(shades.shade(counts, exposure).T[::-1], table)
+            with open(growing / f"{row}.png", "wb") as file:
+                file.write(picture)
+        growing.rename(folder)
+
+
+def _exposure(index: Index, across_level: int, column: int) -> NDArray[np.uint64]:
+    numbers = index.column_numbers(across_level, column)
+    if numbers is None:
+        raise IndexRefused(
+            f"{index.path}: tile column {column} at level {across_level} is missing; build it again"
+        )
+    exposure: NDArray[np.uint64] = numbers[PER_COLUMN.index("exposure")]
+    return exposure
+
+
+def _continue(site: Path, made_from: dict[str, Any]) -> None:
+    """Keep an unfinished folder that was made from the same counts and colours, else start a new one."""
+    stamp, text = site / ".made-from", json.dumps(made_from, sort_keys=True)
+    if not stamp.is_file() or stamp.read_text("ascii") != text:
+        if site.exists():
+            shutil.rmtree(site)
+        site.mkdir(parents=True)
+        stamp.write_text(text, "ascii")
+
+
+def _write_page(
+    site: Path, index: Index, present: dict[Pair, Any], fit: Fit, table: NDArray[np.uint8]
+) -> None:
+    for file in resources.files("tiles.page").iterdir():
+        if file.name.endswith(_PAGE_FILES):
+            (site / file.name).write_bytes(file.read_bytes())
+    level = index.pairs[-1][0]
+    marks = level, runs_where(_unsettled(index, level))
+    found = meta(index.header, index.view, present, fit, table, marks=marks, certificate=index.certificate)
+    (site / "meta.js").write_text(script(found), "ascii")
+
+
+def _unsettled(index: Index, level: int) -> Iterator[tuple[int, NDArray[np.bool_]]]:
+    for column, numbers in index.built_columns(level):
+        yield column * TILE, numbers[PER_COLUMN.index("unsettled")] > 0
+
+
+def _replace(site: Path, out_dir: Path) -> None:
+    """Give a complete folder its name; the folder that had it before goes."""
+    (site / ".made-from").unlink()
+    out_dir.parent.mkdir(parents=True, exist_ok=True)
+    old = site.with_name(f"{site.name}.old")
+    if old.exists():
+        shutil.rmtree(old)
+    if out_dir.exists():
+        os.replace(out_dir, old)
+    os.replace(site, out_dir)
+    shutil.rmtree(old, ignore_errors=True)
