@@ -14,6 +14,9 @@ from atlas.step import StepSource
 CHUNK = 16
 """Steps between two escape tests, counted from the start of a stage."""
 
+PART = 8
+"""Steps between two visits to the histogram; a divisor of CHUNK."""
+
 ADVANCE = '''
 @compiled
 def advance(x, c, key, order, before, steps, bound, outcome):
@@ -127,8 +130,8 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
     lh = np.empty(LANES)
     lb = np.empty(LANES, np.int32)
     lk = np.empty(LANES, np.uint64)
-    seen = np.empty((CHUNK, LANES))
-    cell = np.empty((CHUNK, LANES), np.int32)
+    seen = np.empty((PART, LANES))
+    cell = np.empty((PART, LANES), np.int32)
     flat = cell.reshape(-1)
     for first in range(0, order.size, LANES):
         lanes = min(LANES, order.size - first)
@@ -146,10 +149,9 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
         n = before
         done = 0
         while done < steps:
-            now = min(CHUNK, steps - done)
-            if now == CHUNK:
-                for part in range(CHUNK // UNROLL):
-                    at = part * UNROLL
+            now = min(PART, steps - done)
+            if now == PART:
+                for at in range(0, PART, UNROLL):
                     for l in range(LANES):
                         LOAD
                         h = lh[l]
@@ -186,12 +188,13 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
                     for l in range(LANES):
                         cell[k, l] = lb[l] + np.int32(cell_of(seen[k, l], axis, edges) - 1)
             for j in range(now * LANES):
-                counts[flat[j]] += np.uint32(1)
-            for l in range(LANES):
-                LOAD
-                lg[l] = lg[l] | OUTSIDE
+                counts[np.uint32(flat[j])] += np.uint32(1)
             done += now
             n += now
+            if done % CHUNK == 0 or done == steps:
+                for l in range(LANES):
+                    LOAD
+                    lg[l] = lg[l] | OUTSIDE
         for l in range(lanes):
             m = order[first + l]
             if lg[l]:
@@ -391,6 +394,7 @@ def kernel_source(source: StepSource, up: int, *, log: bool, lanes: int) -> str:
         "NC": str(max(source.coefficients, 1)),
         "LANES": str(lanes),
         "CHUNK": str(CHUNK),
+        "PART": str(PART),
         "UNROLL": "1" if source.slow_calls else "4",
         "SCALED": "log" if log else "",
         "UP": f"x{up}",

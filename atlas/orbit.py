@@ -17,8 +17,10 @@ How an orbit is treated, always by its own step numbers:
 
 from __future__ import annotations
 
+import copy
+import threading
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from pathlib import Path
 from types import ModuleType
@@ -31,12 +33,14 @@ import atlas.arithmetic.functions as functions
 from atlas.families import Family
 from atlas.kernels import AGAIN, FILLED, GONE, READY, SLOW, kernel_source
 from atlas.step import StepSource, load_module, step_source
+from tiles.errors import Failure
 from tiles.number import Exact
 from tiles.strip import Strip
 from tiles.window import View
 
 LANES = 64
 ROUND = 512
+MOST_VALUES_KEPT = 1 << 20
 LOOK_AHEAD = 4
 
 
@@ -64,6 +68,10 @@ class Rules:
     values_per_column: int = 4
     longest_period: int = 64
     repeats: bool = True
+
+
+class Stopped(Failure):
+    """Another thread asked the counting to end; there is no result."""
 
 
 @dataclass(frozen=True)
@@ -121,6 +129,7 @@ class OrbitCounter:
         self.rows = rows
         self.rules = rules
         self.lanes = lanes
+        self._local = threading.local()
         self.fixed = {one.name: float(one.default) for one in family.parameters}
         self.fixed |= {name: float(value) for name, value in (set or {}).items()}
         self.starts = np.array(
@@ -168,6 +177,19 @@ class OrbitCounter:
         slack = 1e-15 * (self.rows + 2.0 * max(abs(low), abs(high)) * inverse)
         return low, inverse, 4.0 * slack
 
+    def at(self, columns: int, rows: int, rules: Rules) -> OrbitCounter:
+        """Return a counter of the same orbits at another resolution and under other rules."""
+        other = copy.copy(self)
+        for cached in ("edges", "cell_axis", "half_cell", "_all_values"):
+            other.__dict__.pop(cached, None)
+        other.columns, other.rows, other.rules = columns, rows, rules
+        other._local = threading.local()
+        return other
+
+    def with_samples(self, samples: int) -> OrbitCounter:
+        """Return a counter that counts another number of states of each orbit."""
+        return self.at(self.columns, self.rows, replace(self.rules, samples=samples))
+
     def warm(self) -> None:
         """Compile the kernels, so that a later timing or progress bar does not include it."""
         few = OrbitCounter(
@@ -195,16 +217,23 @@ class OrbitCounter:
         out : ndarray of uint32, shape (last - first, rows), optional
             Where the counts are written; a new array without it.
         stop : ndarray of uint8, shape (1,), optional
-            When another thread sets it, the kernel returns early and the result is void.
+            When another thread sets it, the work ends early.
 
         Returns
         -------
         Counted
+
+        Raises
+        ------
+        Stopped
+            When ``stop`` was set.
         """
         width, rules = last - first, self.rules
         stride = self.rows + 2
-        counts = np.zeros((width + 1) * stride, np.uint32)
+        counts = self._scratch((width + 1) * stride)
         block = self._run(first, last, counts, np.zeros(1, np.uint8) if stop is None else stop)
+        if stop is not None and stop[0]:
+            raise Stopped("the work was interrupted")
         table = counts[: width * stride].reshape(width, stride)
         if out is None:
             out = np.empty((width, self.rows), np.uint32)
@@ -225,6 +254,15 @@ class OrbitCounter:
             collapsed=block.again.reshape(outcomes.shape).sum(axis=1, dtype=np.uint64),
         )
         return Counted(strip, int(block.filled.sum()), int(block.on_repelling[0]))
+
+    def _scratch(self, size: int) -> NDArray[np.uint32]:
+        """Return zeros that this thread uses again for its next strip."""
+        kept = getattr(self._local, "counts", None)
+        if kept is None or kept.size < size:
+            kept = self._local.counts = np.empty(size, np.uint32)
+        counts: NDArray[np.uint32] = kept[:size]
+        counts[:] = 0
+        return counts
 
     def _run(self, first: int, last: int, counts: NDArray[np.uint32], stop: NDArray[np.uint8]) -> _Block:
         start, parameters = self._orbits(first, last)
@@ -249,12 +287,22 @@ class OrbitCounter:
 
     def _orbits(self, first: int, last: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         rules, starts = self.rules, self.starts
-        values = self.view.across.values(self.columns, rules.values_per_column, first, last).reshape(-1)
+        values = self._values(first, last)
         x = np.tile(starts.T, values.size)
         parameters = np.empty((len(self.fixed), values.size * len(starts)))
         for row, (name, value) in zip(parameters, self.fixed.items(), strict=True):
             row[:] = np.repeat(values, len(starts)) if name == self.view.across.name else value
         return np.ascontiguousarray(x), parameters
+
+    def _values(self, first: int, last: int) -> NDArray[np.float64]:
+        across, each = self.view.across, self.rules.values_per_column
+        if self.columns * each > MOST_VALUES_KEPT:
+            return across.values(self.columns, each, first, last).reshape(-1)
+        return self._all_values[first * each : last * each]
+
+    @cached_property
+    def _all_values(self) -> NDArray[np.float64]:
+        return self.view.across.values(self.columns, self.rules.values_per_column).reshape(-1)
 
     def _keys(self, first: int, last: int) -> NDArray[np.uint64]:
         columns = np.arange(first, last, dtype=np.uint64)[:, None, None]

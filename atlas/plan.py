@@ -1,0 +1,135 @@
+"""Every refusal that needs arithmetic, made before any work: what a job needs in samples, time and memory."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+from atlas.errors import PlanRefused
+from atlas.orbit import OrbitCounter
+from tiles.errors import TooLarge
+from tiles.window import Axis
+
+DEFAULT_MEMORY = 2 << 30
+LEAST_MEMORY = 1 << 30
+EPSILON = 2.0**-53
+_UNITS = {"": 1, "B": 1, "KiB": 1 << 10, "MiB": 1 << 20, "GiB": 1 << 30, "TiB": 1 << 40}
+_UNITS |= {"kB": 10**3, "MB": 10**6, "GB": 10**9, "TB": 10**12}
+
+
+def parse_memory(given: str | int | None) -> int:
+    """Read a memory budget such as ``2GiB`` or ``1500MB``; the default is 2 GiB.
+
+    Raises
+    ------
+    PlanRefused
+        For a text that is no size, and for less than 1 GiB.
+    """
+    if given is None:
+        return DEFAULT_MEMORY
+    text = str(given).strip()
+    found = re.fullmatch(r"(\d{1,12}(?:\.\d{1,6})?)\s*([A-Za-z]*)", text)
+    if not found or found[2] not in _UNITS:
+        raise PlanRefused(f"--memory: '{text[:40]}' is no amount of memory; write for example 2GiB or 1500MB")
+    size = int(float(found[1]) * _UNITS[found[2]])
+    if size < LEAST_MEMORY:
+        raise PlanRefused(f"--memory: {text} is too little; this program needs 1GiB at least")
+    return size
+
+
+def size_text(size: float) -> str:
+    """Return an amount of memory or disk for people, such as ``1.4 GiB``."""
+    for unit in ("B", "KiB", "MiB", "GiB", "TiB"):
+        if size < 1024 or unit == "TiB":
+            return f"{size:.0f} {unit}" if unit in ("B", "KiB") else f"{size:.1f} {unit}"
+        size /= 1024
+    raise AssertionError(size)
+
+
+def check_counter(counter: OrbitCounter, where: str = "") -> None:
+    """Refuse what the kernels cannot count: too many states, too many samples, too deep a zoom.
+
+    Raises
+    ------
+    PlanRefused
+    """
+    lead = f"{where}: " if where else ""
+    family = counter.family
+    if len(family.states) > 1:
+        raise PlanRefused(
+            f"{lead}the family '{family.name}' has {len(family.states)} state variables; "
+            "this version draws families of one"
+        )
+    if counter.exposure >= 1 << 32:
+        most = ((1 << 32) - 1) // counter.orbits_per_column
+        raise PlanRefused(
+            f"{lead}{counter.exposure} samples a column are more than a count can hold; use at most {most} samples"
+        )
+    _check_depth(counter.view.across, counter.columns * counter.rules.values_per_column, 2.0, lead)
+    _check_depth(counter.view.up, counter.rows, 8.0, lead)
+    low, high = float(counter.view.across.low), float(counter.view.across.high)
+    needed = 5.0 * counter.rows * EPSILON * max(abs(low), abs(high))
+    if high - low < needed:
+        raise PlanRefused(
+            f"{lead}the axis '{counter.view.across.name}' is {high - low:.1e} wide, finer than float64 can resolve "
+            f"on {counter.rows} rows; make it at least {needed:.1e} wide"
+        )
+
+
+def _check_depth(axis: Axis, cells: int, steps: float, lead: str) -> None:
+    low, high = float(axis.low), float(axis.high)
+    largest = max(abs(low), abs(high))
+    cell = axis.cell_size(cells) * (min(abs(low), abs(high)) if axis.scale == "log" else 1.0)
+    needed = steps * 2.0 * EPSILON * (min(abs(low), abs(high)) if axis.scale == "log" else largest)
+    if cell < needed:
+        raise PlanRefused(
+            f"{lead}a cell of the axis '{axis.name}' would be {cell:.1e}, finer than float64 can resolve there; "
+            f"widen the interval or use fewer cells, {needed:.1e} each at least"
+        )
+
+
+@dataclass(frozen=True)
+class Need:
+    """What an output needs.
+
+    Attributes
+    ----------
+    pixels : (int, int)
+        Of the sheet, or of the deepest level of a tile set.
+    samples : int
+        Counted samples in all, at least.
+    seconds : float
+        Estimated time.
+    memory : int
+        Estimated peak memory of the process in bytes.
+    """
+
+    pixels: tuple[int, int]
+    samples: int
+    seconds: float
+    memory: int
+
+
+def check_memory(needed: int, budget: int, what: str, remedy: str) -> None:
+    """Refuse what does not fit into the memory budget, with the figure it would need.
+
+    Raises
+    ------
+    TooLarge
+    """
+    if needed > budget:
+        raise TooLarge(
+            f"{what} would need {size_text(needed)} of memory and the budget is {size_text(budget)}; {remedy}"
+        )
+
+
+def check_arrays(size: tuple[int, int], budget: int) -> None:
+    """Refuse a Dataset of counts and densities that does not fit into the memory budget."""
+    columns, rows = size
+    if min(size) < 1:
+        raise PlanRefused(f"size: {columns} x {rows} cells is no size; both must be 1 at least")
+    needed = BASE_MEMORY + 28 * columns * rows
+    check_memory(needed, budget, f"a Dataset of {columns} x {rows} cells", "ask for fewer cells or raise memory")
+
+
+BASE_MEMORY = 300 << 20

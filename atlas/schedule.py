@@ -1,0 +1,87 @@
+"""Runs independent pieces of work on threads, through dask, with bounded results in flight."""
+
+from __future__ import annotations
+
+import itertools
+import os
+from collections.abc import Callable, Iterable, Iterator
+from concurrent.futures import ThreadPoolExecutor
+from contextlib import contextmanager
+from typing import TypeVar
+
+import dask
+import numpy as np
+from dask.delayed import delayed
+from numpy.typing import NDArray
+
+T = TypeVar("T")
+BATCH = 8
+"""Tasks a worker gets in one batch; only so many results wait for their turn."""
+
+
+def default_workers() -> int:
+    """Return how many processors this process may use."""
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+class Schedule:
+    """Worker threads and the flag that stops them.
+
+    Use :func:`schedule` to open one. Kernels release the interpreter's lock, so threads run side by side.
+
+    Attributes
+    ----------
+    workers : int
+    stop : ndarray of uint8, shape (1,)
+        Becomes 1 when the work is interrupted; kernels look at it and return early.
+    """
+
+    def __init__(self, workers: int) -> None:
+        self.workers = workers
+        self.stop: NDArray[np.uint8] = np.zeros(1, np.uint8)
+        self._pool = ThreadPoolExecutor(workers)
+
+    def run(self, tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
+        """Run tasks and hand over their results.
+
+        Parameters
+        ----------
+        tasks : iterable of callables without arguments
+            Consumed lazily, a batch at a time.
+        done : callable of a result
+            Called in the calling thread, in the order of the tasks.
+        """
+        for batch in _batches(tasks, BATCH * self.workers):
+            lazy = [delayed(task, pure=False)() for task in batch]
+            for result in dask.compute(*lazy, scheduler="threads", pool=self._pool, optimize_graph=False):
+                done(result)
+
+    def close(self, *, interrupted: bool) -> None:
+        """Wait for the threads; make running kernels return early where the work was interrupted."""
+        if interrupted:
+            self.stop[0] = 1
+        self._pool.shutdown(wait=True, cancel_futures=interrupted)
+
+
+@contextmanager
+def schedule(workers: int | None = None) -> Iterator[Schedule]:
+    """Open worker threads for the time of a block.
+
+    Parameters
+    ----------
+    workers : int, optional
+        Number of threads; the default is :func:`default_workers`.
+    """
+    opened = Schedule(workers or default_workers())
+    try:
+        yield opened
+    except BaseException:
+        opened.close(interrupted=True)
+        raise
+    opened.close(interrupted=False)
+
+
+def _batches(tasks: Iterable[Callable[[], T]], size: int) -> Iterator[list[Callable[[], T]]]:
+    waiting = iter(tasks)
+    while batch := list(itertools.islice(waiting, size)):
+        yield batch
