@@ -1,0 +1,51 @@
+"""Bifurcation plates and zoomable tile sets of iterated maps, from formulas in a YAML file.
+
+Everything that the commands do is a call. Modules are imported when a name is first used, so that importing
+the package costs nothing.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from atlas.axes_image import draw_axes as draw_axes
+    from atlas.batch import render as render
+    from atlas.catalogue import family as family
+    from atlas.certificate import read as read_certificate
+    from atlas.config import load as load
+    from atlas.config import parse_config as parse_config
+    from atlas.config import plate_from_parts as plate
+    from atlas.counts import orbit_counts as orbit_counts
+    from atlas.points import bin_points as bin_points
+    from atlas.printing import draw_plate as draw_plate
+    from tiles.window import Axis as Axis
+    from tiles.window import View as View
+
+_HOMES = {
+    "Axis": ("tiles.window", "Axis"),
+    "View": ("tiles.window", "View"),
+    "bin_points": ("atlas.points", "bin_points"),
+    "draw_axes": ("atlas.axes_image", "draw_axes"),
+    "draw_plate": ("atlas.printing", "draw_plate"),
+    "family": ("atlas.catalogue", "family"),
+    "load": ("atlas.config", "load"),
+    "orbit_counts": ("atlas.counts", "orbit_counts"),
+    "parse_config": ("atlas.config", "parse_config"),
+    "plate": ("atlas.config", "plate_from_parts"),
+    "read_certificate": ("atlas.certificate", "read"),
+    "render": ("atlas.batch", "render"),
+}
+__all__ = sorted(_HOMES)
+
+
+def __getattr__(name: str) -> Any:
+    if name not in _HOMES:
+        raise AttributeError(f"module 'atlas' has no attribute '{name}'")
+    module, attribute = _HOMES[name]
+    return getattr(import_module(module), attribute)
+
+
+def __dir__() -> list[str]:
+    return __all__

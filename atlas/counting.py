@@ -23,12 +23,8 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     samples = job.samples
     if not isinstance(samples, int):
         samples = whole_height(rows, job.values_per_column * len(job.starts), counts_per_cell(job))
-    rules = Rules(
-        job.transient, job.transient_limit, samples, job.values_per_column, job.longest_period
-    )
-    counter = OrbitCounter(
-        job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts
-    )
+    rules = Rules(job.transient, job.transient_limit, samples, job.values_per_column, job.longest_period)
+    counter = OrbitCounter(job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts)
     check_counter(counter, job.name)
     return counter
 

@@ -67,10 +67,11 @@ def orbit_counts(
     Returns
     -------
     xarray.Dataset
-        ``counts`` (uint32) and ``density`` (float64, counts / (exposure * cell size), per unit of the state or,
-        on a log axis, of its natural logarithm) on both axes, up first; ``exposure``, ``below``, ``above``,
-        ``escaped``, ``unsettled`` (samples) and ``collapsed`` (orbits) on the across axis. Coordinates are cell
-        centres, ascending. In every column inside + below + above + escaped + unsettled = exposure.
+        ``counts`` (uint32) and ``density`` (float64, counts / (exposure * cell size), per unit of the state
+        or, on a log axis, of its natural logarithm) on both axes, up first; ``exposure``, ``below``,
+        ``above``, ``escaped``, ``unsettled`` (samples) and ``collapsed`` (orbits) on the across axis.
+        Coordinates are cell centres, ascending. In every column
+        inside + below + above + escaped + unsettled = exposure.
 
     Raises
     ------
@@ -146,7 +147,7 @@ def dataset(histogram: Histogram, counter: OrbitCounter) -> Any:
         },
     )
     for axis in (view.across, view.up):
-        label, unit = _label_and_unit(counter.family, axis.name)
+        label, unit = counter.family.label_and_unit(axis.name)
         made[axis.name].attrs = {
             "long_name": axis.label or label or axis.name,
             "units": unit,
@@ -155,10 +156,3 @@ def dataset(histogram: Histogram, counter: OrbitCounter) -> Any:
             "high": str(axis.high),
         }
     return made
-
-
-def _label_and_unit(family: Family, name: str) -> tuple[str, str]:
-    for entry in (*family.states, *family.parameters):
-        if entry.name == name:
-            return entry.label, entry.unit
-    return "", ""

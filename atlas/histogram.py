@@ -65,9 +65,7 @@ def block_width(counter: OrbitCounter) -> int:
     return max(1, lanes_full, min(256, BLOCK_BYTES // (4 * (counter.rows + 2))))
 
 
-def count_histogram(
-    counter: OrbitCounter, schedule: Schedule, progress: Progress | None = None
-) -> Histogram:
+def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progress | None = None) -> Histogram:
     """Count every column of a view.
 
     Parameters

@@ -1,8 +1,9 @@
 """Source of the orbit kernels: lanes of neighbouring orbits, advanced and counted together.
 
 A line that reads ``LOAD``, ``STEP``, ``STORE`` or ``LOAD_ORBIT`` is expanded for the number of state
-variables and coefficients of the family. Every decision is made per orbit from the orbit's own step numbers, so the
-result does not depend on which orbits share a group. ``tests/reference/orbits.py`` holds the slow twin.
+variables and coefficients of the family. Every decision is made per orbit from the orbit's own step
+numbers, so the result does not depend on which orbits share a group. ``tests/reference/orbits.py`` holds
+the slow twin.
 """
 
 from __future__ import annotations

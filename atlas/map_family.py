@@ -107,6 +107,16 @@ class Family:
         """The names of the parameters."""
         return tuple(parameter.name for parameter in self.parameters)
 
+    def label_and_unit(self, name: str) -> tuple[str, str]:
+        """Return what figures print beside the symbol of a state variable or parameter."""
+        for state in self.states:
+            if state.name == name:
+                return state.label, state.unit
+        for parameter in self.parameters:
+            if parameter.name == name:
+                return parameter.label, parameter.unit
+        return "", ""
+
     def inlined_step(self) -> tuple[Node, ...]:
         """Return the step formulas with every helper written out."""
         written: dict[str, Node] = {}

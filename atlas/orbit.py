@@ -241,7 +241,8 @@ class OrbitCounter:
         outcomes = block.outcome.reshape(width, self.orbits_per_column)
 
         def samples_of(flags: NDArray[np.bool_]) -> NDArray[np.uint64]:
-            return flags.sum(axis=1, dtype=np.uint64) * np.uint64(rules.samples)
+            orbits: NDArray[np.uint64] = flags.sum(axis=1, dtype=np.uint64)
+            return orbits * np.uint64(rules.samples)
 
         strip = Strip(
             first,
@@ -286,7 +287,7 @@ class OrbitCounter:
         return 0.5 * self.view.up.cell_size(self.rows)
 
     def _orbits(self, first: int, last: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-        rules, starts = self.rules, self.starts
+        starts = self.starts
         values = self._values(first, last)
         x = np.tile(starts.T, values.size)
         parameters = np.empty((len(self.fixed), values.size * len(starts)))
@@ -298,7 +299,8 @@ class OrbitCounter:
         across, each = self.view.across, self.rules.values_per_column
         if self.columns * each > MOST_VALUES_KEPT:
             return across.values(self.columns, each, first, last).reshape(-1)
-        return self._all_values[first * each : last * each]
+        kept: NDArray[np.float64] = self._all_values[first * each : last * each]
+        return kept
 
     @cached_property
     def _all_values(self) -> NDArray[np.float64]:

@@ -63,7 +63,8 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
     if counter.exposure >= 1 << 32:
         most = ((1 << 32) - 1) // counter.orbits_per_column
         raise PlanRefused(
-            f"{lead}{counter.exposure} samples a column are more than a count can hold; use at most {most} samples"
+            f"{lead}{counter.exposure} samples a column are more than a count can hold; "
+            f"use at most {most} samples"
         )
     _check_depth(counter.view.across, counter.columns * counter.rules.values_per_column, 2.0, lead)
     _check_depth(counter.view.up, counter.rows, 8.0, lead)
@@ -71,8 +72,8 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
     needed = 5.0 * counter.rows * EPSILON * max(abs(low), abs(high))
     if high - low < needed:
         raise PlanRefused(
-            f"{lead}the axis '{counter.view.across.name}' is {high - low:.1e} wide, finer than float64 can resolve "
-            f"on {counter.rows} rows; make it at least {needed:.1e} wide"
+            f"{lead}the axis '{counter.view.across.name}' is {high - low:.1e} wide, finer than float64 "
+            f"can resolve on {counter.rows} rows; make it at least {needed:.1e} wide"
         )
 
 
@@ -83,8 +84,8 @@ def _check_depth(axis: Axis, cells: int, steps: float, lead: str) -> None:
     needed = steps * 2.0 * EPSILON * (min(abs(low), abs(high)) if axis.scale == "log" else largest)
     if cell < needed:
         raise PlanRefused(
-            f"{lead}a cell of the axis '{axis.name}' would be {cell:.1e}, finer than float64 can resolve there; "
-            f"widen the interval or use fewer cells, {needed:.1e} each at least"
+            f"{lead}a cell of the axis '{axis.name}' would be {cell:.1e}, finer than float64 can resolve "
+            f"there; widen the interval or use fewer cells, {needed:.1e} each at least"
         )
 
 
@@ -129,7 +130,9 @@ def check_arrays(size: tuple[int, int], budget: int) -> None:
     if min(size) < 1:
         raise PlanRefused(f"size: {columns} x {rows} cells is no size; both must be 1 at least")
     needed = BASE_MEMORY + 28 * columns * rows
-    check_memory(needed, budget, f"a Dataset of {columns} x {rows} cells", "ask for fewer cells or raise memory")
+    check_memory(
+        needed, budget, f"a Dataset of {columns} x {rows} cells", "ask for fewer cells or raise memory"
+    )
 
 
 BASE_MEMORY = 300 << 20

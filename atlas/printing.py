@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -12,18 +13,25 @@ from atlas.boxes import Layout
 from atlas.certificate import certificate
 from atlas.counting import Sampled, counter_of, resolved
 from atlas.digests import normalised
+from atlas.errors import PlanRefused
+from atlas.folders import check_folder
 from atlas.histogram import Histogram, count_histogram
-from atlas.jobs import Figure, Job, Plate
+from atlas.jobs import Figure, Plate
 from atlas.keys import FORMATS
 from atlas.layout import layout
 from atlas.lettering import axis_text, plain
 from atlas.orbit import OrbitCounter
 from atlas.panels import request_of
 from atlas.pieces import PanelText, Raster
-from atlas.reporter import Reporter
-from atlas.schedule import Schedule
+from atlas.plan import BASE_MEMORY, check_memory, parse_memory
+from atlas.reporter import Reporter, Silence
+from atlas.schedule import Schedule, schedule
+from tiles.errors import nearest
 from tiles.shading import Fit, colour_table, fit_counts, key_labels, shade_counts
 from tiles.window import Axis
+
+BYTES_PER_CELL, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, VECTOR_BYTES_PER_CELL = 6, 2, 8, 2
+"""What is alive at the peak, measured: counts and shades of a raster, then the page and its encoder."""
 
 
 @dataclass(frozen=True)
@@ -55,6 +63,15 @@ class Sheet:
     record: Plate | Figure
     page: Layout
     views: tuple[View, ...]
+
+    @property
+    def memory(self) -> int:
+        """Estimated peak memory of the process in bytes while it is made."""
+        width, height = self.record.pixels
+        cells = [view.columns * view.rows for view in self.views]
+        vector = VECTOR_BYTES_PER_CELL * sum(cells) if {"pdf", "svg"} & set(self.record.formats) else 0
+        sheet = (TIFF_BYTES_PER_PIXEL if "tiff" in self.record.formats else BYTES_PER_PIXEL) * width * height
+        return BASE_MEMORY + BYTES_PER_CELL * max(cells) + sum(cells) + sheet + vector
 
     def files(self, out: Path) -> dict[str, Path]:
         """Return the file of each format in an output folder."""
@@ -141,9 +158,7 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
 
 def sampled_of(counter: OrbitCounter, histogram: Histogram) -> Sampled:
     """Return what the certificate says of the samples."""
-    return Sampled(
-        counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled
-    )
+    return Sampled(counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled)
 
 
 def shaded(plate: Plate, counter: OrbitCounter, histogram: Histogram) -> tuple[Fit, Raster]:
@@ -158,7 +173,7 @@ def shaded(plate: Plate, counter: OrbitCounter, histogram: Histogram) -> tuple[F
 
 def panel_text(plate: Plate, fit: Fit) -> PanelText:
     """Return what is written around a panel: labels from the family, the key's numbers and caption."""
-    unit = unit_of(plate, plate.up.name)
+    _, unit = plate.family.label_and_unit(plate.up.name)
     per = f" per {unit}" if unit else ""
     log = " of the logarithm" if plate.up.scale == "log" else ""
     return PanelText(
@@ -173,12 +188,65 @@ def label_of(plate: Plate, axis: Axis) -> str:
     """Return an axis' label: the config's own, else the family's label, symbol and unit."""
     if axis.label:
         return plain(axis.label)
-    for entry in (*plate.family.states, *plate.family.parameters):
-        if entry.name == axis.name:
-            return axis_text(entry.name, entry.label, entry.unit)
-    return axis_text(axis.name)
+    return axis_text(axis.name, *plate.family.label_and_unit(axis.name))
 
 
-def unit_of(job: Job, name: str) -> str:
-    """Return the unit of a state variable or parameter, empty without one."""
-    return next((one.unit for one in (*job.family.states, *job.family.parameters) if one.name == name), "")
+def draw_plate(
+    plate: Plate,
+    out: Sequence[Path | str],
+    *,
+    workers: int | None = None,
+    memory: str | int | None = None,
+    reporter: Reporter | None = None,
+) -> Made:
+    """Make one plate and write it to files; the suffix of each decides its format.
+
+    Parameters
+    ----------
+    plate : Plate
+        From `atlas.plate` or a config.
+    out : sequence of path
+        Files that end in .png, .tif, .tiff, .pdf or .svg, each format once.
+    workers : int, optional
+        Threads.
+    memory : str or int, optional
+        Budget of the process, ``"2GiB"`` by default.
+    reporter : Reporter, optional
+        Hears of the progress.
+
+    Raises
+    ------
+    Refusal
+        When the request is wrong; nothing is written then.
+    OutputFailed
+        When a file cannot be written.
+    """
+    files = files_by_format([Path(path) for path in out])
+    sheet = sheet_of(replace(plate, formats=tuple(files)))
+    check_memory(sheet.memory, parse_memory(memory), plate.name, "make it smaller or raise --memory")
+    for path in files.values():
+        check_folder(path.parent)
+    with schedule(workers) as opened:
+        return make_sheet(sheet, files, opened, reporter or Silence())
+
+
+def files_by_format(paths: Sequence[Path]) -> dict[str, Path]:
+    """Return files by the format that their suffix names.
+
+    Raises
+    ------
+    PlanRefused
+        For another suffix, and for a format given twice.
+    """
+    formats = {suffix: form for form, suffix in FORMATS.items()} | {".tiff": "tiff"}
+    files: dict[str, Path] = {}
+    for path in paths:
+        form = formats.get(path.suffix.lower())
+        if form is None:
+            raise PlanRefused(
+                f"--out: '{path}' has no suffix of a picture{nearest(path.suffix.lower(), formats)}"
+            )
+        if form in files:
+            raise PlanRefused(f"--out: '{files[form]}' and '{path}' are both {form}; give each format once")
+        files[form] = path
+    return files

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, TypeVar
@@ -16,9 +16,9 @@ from atlas.digests import counting_digest, normalised
 from atlas.histogram import block_width
 from atlas.jobs import TileSet
 from atlas.orbit import OrbitCounter
-from atlas.printing import Made, unit_of
-from atlas.reporter import Reporter
-from atlas.schedule import Schedule
+from atlas.printing import Made
+from atlas.reporter import Reporter, Silence
+from atlas.schedule import Schedule, schedule
 from tiles.build import build
 from tiles.index import Index
 from tiles.site import build_site
@@ -78,7 +78,7 @@ def tile_counter(job: TileSet) -> OrbitCounter:
     return counter_of(job, *job.cells)
 
 
-def make_tile_set(job: TileSet, places: Places, schedule: Schedule, reporter: Reporter) -> Made:
+def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Reporter) -> Made:
     """Count a tile set, build its index and its static folder; an interrupted run is continued.
 
     Raises
@@ -88,7 +88,7 @@ def make_tile_set(job: TileSet, places: Places, schedule: Schedule, reporter: Re
     """
     counter = resolved(job, tile_counter(job))
     counter.warm()
-    source = StripSource(counter, schedule, reporter)
+    source = StripSource(counter, opened, reporter)
     header = _header(job, counter)
     made: list[Made] = []
 
@@ -106,38 +106,36 @@ def make_tile_set(job: TileSet, places: Places, schedule: Schedule, reporter: Re
         pairs=job.pairs,
         source=source,
         header=header,
-        run=schedule.run,
+        run=opened.run,
         cells_per_strip=CELLS_PER_STRIP,
         unfinished=places.growing_index,
         finish=finish,
     )
-    make_site(places.index, places.site, job, schedule, reporter, places.growing_site)
+    colours = {key: getattr(job, key) for key in ("shading", "palette", "background", "missing")}
+    make_site(places.index, places.site, colours, opened, reporter, places.growing_site)
     return made[0]
 
 
 def make_site(
-    index: Path, site: Path, job: TileSet, schedule: Schedule, reporter: Reporter, growing: Path | None = None
+    index: Path,
+    site: Path,
+    colours: Mapping[str, str | None],
+    opened: Schedule,
+    reporter: Reporter,
+    growing: Path | None = None,
 ) -> None:
-    """Write the static folder of an index in the colours of a job."""
-    reporter.begin(job.name, "tiles", _tile_columns(index))
+    """Write the static folder of an index in given colours."""
+    reporter.begin(index.parent.name, "tiles", _tile_columns(index))
 
     def run(tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
         def told(result: T) -> None:
             done(result)
             reporter.advance(1)
 
-        schedule.run(tasks, told)
+        opened.run(tasks, told)
 
-    build_site(
-        index,
-        site,
-        shading=job.shading,
-        palette=job.palette,
-        background=job.background,
-        missing=job.missing,
-        run=run,
-        unfinished=growing,
-    )
+    chosen = {key: value for key, value in colours.items() if value is not None}
+    build_site(index, site, run=run, unfinished=growing, **chosen)
 
 
 def _tile_columns(path: Path) -> int:
@@ -156,7 +154,7 @@ def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
         "family": job.family.title,
         "formula": job.family.formula_lines(),
         "note": job.family.note,
-        "units": {name: unit_of(job, name) for name in (job.across.name, job.up.name)},
+        "units": {name: job.family.label_and_unit(name)[1] for name in (job.across.name, job.up.name)},
         "plate": settings,
         "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
     }
@@ -176,3 +174,42 @@ def _made(job: TileSet, counter: OrbitCounter, index: Index, filled: int) -> Mad
     return Made(sampled.total, record)
 
 
+def rebuild_site(
+    index: Path,
+    site: Path,
+    *,
+    shading: str | None = None,
+    palette: str | None = None,
+    background: str | None = None,
+    workers: int | None = None,
+    reporter: Reporter | None = None,
+) -> None:
+    """Write the static folder of a finished index again, by default in the colours that it was made with.
+
+    Parameters
+    ----------
+    index, site : Path
+        The index file, and the folder to write.
+    shading, palette, background : str, optional
+    workers : int, optional
+        Threads.
+    reporter : Reporter, optional
+        Hears of the progress.
+
+    Raises
+    ------
+    IndexRefused
+        When there is no finished index.
+    OutputFailed
+        When the disk is full or the folder is closed.
+    """
+    with Index.open(index) as opened_index:
+        plate = opened_index.header.get("plate") or {}
+    colours = {
+        "shading": shading or plate.get("shading", "equalised"),
+        "palette": palette or plate.get("palette", "blue"),
+        "background": background or plate.get("background"),
+        "missing": plate.get("missing"),
+    }
+    with schedule(workers) as opened:
+        make_site(index, site, colours, opened, reporter or Silence())

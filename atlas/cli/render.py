@@ -1,0 +1,39 @@
+"""``atlas render``: every output of a config."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from atlas.cli.options import workers_and_memory
+
+
+@click.command()
+@click.argument("config", type=click.Path(path_type=Path))
+@click.option("--only", multiple=True, metavar="NAME", help="Only this output; may be given several times.")
+@click.option("--out", type=click.Path(path_type=Path), default=Path("out"), show_default=True)
+@workers_and_memory
+@click.option("--force", is_flag=True, help="Make again what is unchanged.")
+def command(
+    config: Path, only: tuple[str, ...], out: Path, workers: int | None, memory: str | None, force: bool
+) -> int:
+    """Render every plate, figure and tile set of CONFIG.
+
+    Finished outputs whose request and files are unchanged are skipped. One failing output does not stop the
+    others. Exit code: 0 done, 1 an output failed, 2 the request is wrong, 130 interrupted.
+    """
+    from atlas.batch import render
+    from atlas.cli.progress import Bar
+    from atlas.cli.tables import outcome_table
+    from atlas.config import load
+
+    with Bar() as bar:
+        outcomes = render(
+            load(config), out, only=only, workers=workers, memory=memory, force=force, reporter=bar
+        )
+    click.echo(outcome_table(outcomes))
+    for outcome in outcomes:
+        if outcome.status == "failed":
+            click.echo(f"atlas: {outcome.message}", err=True)
+    return 1 if any(outcome.status == "failed" for outcome in outcomes) else 0

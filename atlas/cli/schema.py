@@ -1,0 +1,15 @@
+"""``atlas schema``: the JSON Schema of the config."""
+
+from __future__ import annotations
+
+import json
+
+import click
+
+
+@click.command()
+def command() -> None:
+    """Print the JSON Schema of the config, for editors that complete and check YAML."""
+    from atlas.schema import schema
+
+    click.echo(json.dumps(schema(), indent=2))

@@ -1,0 +1,33 @@
+"""``atlas site``: the static folder of an index."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+
+@click.command()
+@click.argument("index", type=click.Path(path_type=Path))
+@click.option("--out", type=click.Path(path_type=Path), required=True, help="The folder to write.")
+@click.option("--shading", metavar="NAME", help="How density becomes shade; by default as it was built.")
+@click.option("--palette", metavar="NAME", help="Colours; by default as it was built.")
+@click.option("--background", metavar="#RRGGBB", help="Colour of empty cells.")
+@click.option("--workers", type=click.IntRange(1, 1024), help="Threads; by default one a processor.")
+def command(
+    index: Path,
+    out: Path,
+    shading: str | None,
+    palette: str | None,
+    background: str | None,
+    workers: int | None,
+) -> None:
+    """Rebuild the static folder of a tile set from INDEX, in other colours if you like; no orbit is run."""
+    from atlas.cli.progress import Bar
+    from atlas.tileset import rebuild_site
+
+    with Bar() as bar:
+        rebuild_site(
+            index, out, shading=shading, palette=palette, background=background, workers=workers, reporter=bar
+        )
+    click.echo(f"{out / 'index.html'}")
