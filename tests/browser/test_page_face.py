@@ -30,7 +30,7 @@ def tick_values(found: dict[str, Any]) -> list[Fraction]:
     texts = [major["text"].translate(RAISED) for major in found["major"]]
     if not found["offset"]:
         return [Fraction(text) for text in texts]
-    base, _, power = found["offset"].translate(RAISED).rpartition("tick · 10")
+    base, _, power = found["offset"].translate(RAISED).rpartition("tick × 10")
     shared = Fraction(base.removesuffix(" + ") or 0)
     return [shared + int(text) * Fraction(10) ** int(power) for text in texts]
 
@@ -57,7 +57,7 @@ def test_ticks_of_log_axes_and_of_pi(curved_site: Site, open_page: Open) -> None
     found = opened.page.evaluate(TICKS, ["across", 4, 900, "1.8125,0.8", 9])
     assert [each["text"] for each in found["major"]] == ["0.001", "0.01", "0.1", "1", "10", "100"]
     narrow = opened.page.evaluate(TICKS, ["across", 44, 900, "40,0.8", 9])
-    assert "tick · 10⁻" in narrow["offset"]
+    assert "tick × 10⁻" in narrow["offset"]
     for each, value in zip(narrow["major"], tick_values(narrow), strict=True):
         share = Fraction(narrow["start"]) + each["pixel"] * Fraction(narrow["pixel"])
         assert float(value) == pytest.approx(1e-3 * 500_000 ** float(share), rel=1e-12)

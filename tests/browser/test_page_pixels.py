@@ -6,6 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from PIL import Image
 
 from tests.browser.conftest import Open
 from tests.browser.opened import Opened
@@ -106,6 +107,23 @@ def test_no_seams_between_whole_levels(tmp_path: Path, open_page: Open, ratio: f
         kinds.add(opened.call("shown")["kind"])
         assert not opened.plot().any(axis=2)[2:-2, 2:-2].any(), (across, up)
     assert kinds == {"shrunk", "stretched"}
+
+
+def test_shrinking_leaves_no_gaps_in_a_thin_branch(tmp_path: Path, open_page: Open) -> None:
+    folder = SyntheticSite.whole([(0, 0), (2, 2)], plain=(0, 0, 0)).write(tmp_path / "site")
+    line = np.zeros((256, 256), np.uint8)
+    np.fill_diagonal(line, 255)
+    for file in folder.glob("tiles/density/2/*/*/*.png"):
+        Image.fromarray(line).convert("RGB").save(file)
+    opened = open_page(folder)
+    for across, up in [("1.5", "1.703125"), ("1.546875", "0.3125"), ("0.3125", "0.296875")]:
+        opened.go(f"{across},0.8", f"{up},0.8")
+        assert opened.call("shown")["pair"] == [2, 2]
+        picture = opened.plot()[..., 0].astype(int)
+        inside = np.flatnonzero((opened.plot() != OUTSIDE).any(axis=2).any(axis=0))[3:-3]
+        rows = np.flatnonzero((opened.plot() != OUTSIDE).any(axis=2).any(axis=1))
+        assert inside.size > 250
+        assert picture[rows[0] : rows[-1] + 1, inside].max(axis=0).min() > 15
 
 
 def test_columns_with_an_unsettled_share_are_marked(diagonal_site: Site, open_page: Open) -> None:

@@ -177,6 +177,11 @@ class Axis {
     return [from / size, exact.ceilDiv(to, size) - 1n];
   }
 
+  /** How often the pixels of a level are to be averaged in pairs to come within a factor 2 of the window's. */
+  halvings(level) {
+    return Math.max(0, Math.floor(level - this.level));
+  }
+
   /** Pieces [first tile pixel, number of them, from, to] that lay one tile out on device pixels from … to. */
   pieces(level, index) {
     const fine = level + 8;

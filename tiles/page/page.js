@@ -227,8 +227,7 @@ class Page {
     for (const [key, words] of KEYS) list.append(make("dt", key), make("dd", words));
     showDialog(title, [
       ...(note ? [make("p", note)] : []),
-      make("h3", `Formula: ${family}`),
-      make("pre", formula.join("\n")),
+      ...(formula.length ? [make("h3", `Formula: ${family}`), make("pre", formula.join("\n"))] : []),
       make("h3", "Keys"),
       list,
       make("h3", "Certificate"),

@@ -38,7 +38,7 @@ const ticks = (() => {
     if (full.every((text) => text.length <= LONGEST)) return { texts: full.map(minus), offset: "" };
     const base = exact.floorDiv(numbers[0], 1000n) * 1000n;
     const shared = base ? `${minus(exact.text(times(base, e)))} + ` : "";
-    const offset = `${shared}tick · ${power(e)}`;
+    const offset = `${shared}tick × ${power(e)}`;
     return { texts: numbers.map((k) => minus(String(k - base))), offset: ofPi ? `(${offset}) π` : offset };
   }
 
@@ -71,7 +71,7 @@ const ticks = (() => {
           if (every === 1 || m === 1) minor.push(pixel);
         } else {
           const short = plain(BigInt(m), e);
-          major.push({ pixel, text: short.length <= 6 ? short : m === 1 ? power(e) : `${m}·${power(e)}` });
+          major.push({ pixel, text: short.length <= 6 ? short : m === 1 ? power(e) : `${m}×${power(e)}` });
         }
       }
     }

@@ -62,7 +62,6 @@ class Tiles {
   /** Draw the visible tiles of the chosen pair into a plot box {left, top, width, height}. */
   draw(context, plot) {
     const { pair, kind } = this.choose();
-    context.imageSmoothingQuality = "high";
     this.wanted.clear();
     const [a, u] = pair || [0, 0];
     if (!pair) return this.forget();
@@ -72,7 +71,8 @@ class Tiles {
         const tile = this.fetch(a, u, column, row);
         if (tile.state === "ready") {
           context.imageSmoothingEnabled = kind === "shrunk";
-          this.place(context, plot, tile.image, this.across.pieces(a, column), this.up.pieces(u, row));
+          const image = kind === "shrunk" ? halved(tile, this.across.halvings(a), this.up.halvings(u)) : tile.image;
+          this.place(context, plot, image, this.across.pieces(a, column), this.up.pieces(u, row));
         } else {
           this.standIn(context, plot, a, u, column, row);
         }
@@ -81,11 +81,13 @@ class Tiles {
     this.forget();
   }
 
+  /** Draw pieces of an image that shows a whole tile, perhaps in fewer than 256 pixels. */
   place(context, plot, image, acrossPieces, upPieces) {
+    const [columnSize, rowSize] = [image.width / 256, image.height / 256];
     for (const [x, columns, left, right] of acrossPieces) {
       for (const [y, rows, low, high] of upPieces) {
         context.drawImage(
-          image, x, 256 - y - rows, columns, rows,
+          image, x * columnSize, (256 - y - rows) * rowSize, columns * columnSize, rows * rowSize,
           plot.left + left, plot.top + plot.height - high, right - left, high - low,
         );
       }
@@ -145,6 +147,18 @@ class Tiles {
       this.held.delete(url);
     }
   }
+}
+
+/** A tile's image with its columns and rows averaged in pairs, so that a further shrinking, to more than half,
+    takes a share of every pixel and leaves no gaps in a thin branch. */
+function halved(tile, across, up) {
+  if (!across && !up) return tile.image;
+  const [width, height] = [256 >> across, 256 >> up];
+  if (tile.halved?.width === width && tile.halved?.height === height) return tile.halved;
+  const finer = across ? halved(tile, across - 1, up) : halved(tile, 0, up - 1);
+  tile.halved = Object.assign(document.createElement("canvas"), { width, height });
+  tile.halved.getContext("2d").drawImage(finer, 0, 0, width, height);
+  return tile.halved;
 }
 
 /** "3-5,9" as [[3n, 5n], [9n, 9n]]; nothing as []. */
