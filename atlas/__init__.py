@@ -10,16 +10,16 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from atlas.axes_image import draw_axes as draw_axes
-    from atlas.batch import render as render
-    from atlas.catalogue import family as family
-    from atlas.certificate import read as read_certificate
-    from atlas.config import load as load
-    from atlas.config import parse_config as parse_config
-    from atlas.config import plate_from_parts as plate
-    from atlas.counts import orbit_counts as orbit_counts
+    from atlas.config.load import load as load
+    from atlas.config.load import parse_config as parse_config
+    from atlas.config.load import plate_from_parts as plate
+    from atlas.families.catalogue import family as family
+    from atlas.figure.axes_image import draw_axes as draw_axes
+    from atlas.orbits.counts import orbit_counts as orbit_counts
+    from atlas.output.batch import render as render
+    from atlas.output.certificate import read as read_certificate
+    from atlas.output.printing import draw_plate as draw_plate
     from atlas.points import bin_points as bin_points
-    from atlas.printing import draw_plate as draw_plate
     from tiles.window import Axis as Axis
     from tiles.window import View as View
 
@@ -27,15 +27,15 @@ _HOMES = {
     "Axis": ("tiles.window", "Axis"),
     "View": ("tiles.window", "View"),
     "bin_points": ("atlas.points", "bin_points"),
-    "draw_axes": ("atlas.axes_image", "draw_axes"),
-    "draw_plate": ("atlas.printing", "draw_plate"),
-    "family": ("atlas.catalogue", "family"),
-    "load": ("atlas.config", "load"),
-    "orbit_counts": ("atlas.counts", "orbit_counts"),
-    "parse_config": ("atlas.config", "parse_config"),
-    "plate": ("atlas.config", "plate_from_parts"),
-    "read_certificate": ("atlas.certificate", "read"),
-    "render": ("atlas.batch", "render"),
+    "draw_axes": ("atlas.figure.axes_image", "draw_axes"),
+    "draw_plate": ("atlas.output.printing", "draw_plate"),
+    "family": ("atlas.families.catalogue", "family"),
+    "load": ("atlas.config.load", "load"),
+    "orbit_counts": ("atlas.orbits.counts", "orbit_counts"),
+    "parse_config": ("atlas.config.load", "parse_config"),
+    "plate": ("atlas.config.load", "plate_from_parts"),
+    "read_certificate": ("atlas.output.certificate", "read"),
+    "render": ("atlas.output.batch", "render"),
 }
 __all__ = sorted(_HOMES)
 

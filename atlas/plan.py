@@ -6,7 +6,7 @@ import re
 from dataclasses import dataclass
 
 from atlas.errors import PlanRefused
-from atlas.orbit import OrbitCounter
+from atlas.orbits.orbit import OrbitCounter
 from tiles.errors import TooLarge
 from tiles.window import Axis
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 
-from atlas.tree import (
+from atlas.formula.tree import (
     Binary,
     Call,
     Compare,

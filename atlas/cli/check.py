@@ -17,13 +17,13 @@ def command(config: Path, workers: int | None, memory: str | None) -> None:
 
     With samples: auto, a zoom into a part of the attractor may take more samples than printed.
     """
-    from atlas.batch import check_need, select
     from atlas.cli.tables import need_table
-    from atlas.config import load
-    from atlas.digests import normalised
-    from atlas.forecast import need_of
+    from atlas.config.digests import normalised
+    from atlas.config.load import load
+    from atlas.orbits.schedule import default_workers
+    from atlas.output.batch import check_need, select
+    from atlas.output.forecast import need_of
     from atlas.plan import parse_memory
-    from atlas.schedule import default_workers
 
     budget = parse_memory(memory)
     needs = []

@@ -36,7 +36,7 @@ def command(family: str, out: tuple[Path, ...], **given: Any) -> None:
     """
     from atlas.cli.progress import Bar
     from atlas.cli.requests import drawn_family, plate_of
-    from atlas.printing import draw_plate
+    from atlas.output.printing import draw_plate
 
     workers, memory = given.pop("workers"), given.pop("memory")
     given["set"] = settings_of(given.pop("set_"), "--set")

@@ -9,9 +9,9 @@ import click
 @click.argument("name", required=False)
 def command(name: str | None) -> None:
     """List the families of the catalogue, or show one: formula, parameters, domain, source."""
-    from atlas.catalogue import NAMES, family
     from atlas.cli.family_text import family_text
     from atlas.cli.tables import table
+    from atlas.families.catalogue import NAMES, family
 
     if name is not None:
         click.echo(family_text(family(name)))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import textwrap
 
-from atlas.families import Family
+from atlas.families.reader import Family
 
 
 def family_text(family: Family) -> str:

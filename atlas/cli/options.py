@@ -10,7 +10,7 @@ import click
 F = TypeVar("F", bound=Callable[..., Any])
 
 
-class Interval(click.ParamType):
+class Interval(click.ParamType[Any]):
     """``name=low:high``, for instance ``r=2.8:4``; the axis form of the command line."""
 
     name = "NAME=LOW:HIGH"
@@ -25,7 +25,7 @@ class Interval(click.ParamType):
         return (name.strip(), low.strip(), high.strip())
 
 
-class Setting(click.ParamType):
+class Setting(click.ParamType[Any]):
     """``name=value``."""
 
     name = "NAME=VALUE"

@@ -23,10 +23,10 @@ def command(
     Finished outputs whose request and files are unchanged are skipped. One failing output does not stop the
     others. Exit code: 0 done, 1 an output failed, 2 the request is wrong, 130 interrupted.
     """
-    from atlas.batch import render
     from atlas.cli.progress import Bar
     from atlas.cli.tables import outcome_table
-    from atlas.config import load
+    from atlas.config.load import load
+    from atlas.output.batch import render
 
     with Bar() as bar:
         outcomes = render(

@@ -7,9 +7,9 @@ from typing import Any
 
 import click
 
-from atlas.catalogue import family as catalogued
-from atlas.config import Plate, load, plate_from_parts
-from atlas.families import Family
+from atlas.config.load import Plate, load, plate_from_parts
+from atlas.families.catalogue import family as catalogued
+from atlas.families.reader import Family
 
 
 def drawn_family(given: str) -> Family:
@@ -31,11 +31,10 @@ def plate_of(
     start: tuple[tuple[str, str], ...],
     **options: Any,
 ) -> Plate:
-    """Return the plate that the options of ``atlas draw`` ask for; the family's own view fills what is left out."""
-    for name, axis, own in (("--across", across, family.across), ("--up", up, family.up)):
-        if axis is None and own is None:
-            raise click.UsageError(f"{name}: the family '{family.name}' has no view of its own; give one")
+    """Return the plate that ``atlas draw`` is asked for; the family's own view fills what is left out."""
+    left, right = across or family.across, up or family.up
+    if left is None or right is None:
+        missing = "--across" if left is None else "--up"
+        raise click.UsageError(f"{missing}: the family '{family.name}' has no view of its own; give one")
     starts = [{name: value} for name, value in start] or None
-    return plate_from_parts(
-        family, across or family.across, up or family.up, starts=starts, name=family.name, **options
-    )  # type: ignore[arg-type]
+    return plate_from_parts(family, left, right, starts=starts, name=family.name, **options)

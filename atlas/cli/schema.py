@@ -10,6 +10,6 @@ import click
 @click.command()
 def command() -> None:
     """Print the JSON Schema of the config, for editors that complete and check YAML."""
-    from atlas.schema import schema
+    from atlas.config.schema import schema
 
     click.echo(json.dumps(schema(), indent=2))

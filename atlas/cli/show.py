@@ -15,6 +15,6 @@ def command(file: Path) -> None:
 
     FILE is a plate (PNG, TIFF, PDF, SVG), the index of a tile set, or a saved Dataset (NetCDF).
     """
-    from atlas.certificate import read
+    from atlas.output.certificate import read
 
     click.echo(json.dumps(read(file), indent=2, ensure_ascii=False))

@@ -24,7 +24,7 @@ def command(
 ) -> None:
     """Rebuild the static folder of a tile set from INDEX, in other colours if you like; no orbit is run."""
     from atlas.cli.progress import Bar
-    from atlas.tileset import rebuild_site
+    from atlas.output.tileset import rebuild_site
 
     with Bar() as bar:
         rebuild_site(

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from atlas.batch import Outcome
+from atlas.output.batch import Outcome
 from atlas.plan import Need, size_text
 
 

@@ -10,10 +10,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from atlas.boxes import Layout
-from atlas.layout import FigureRequest, PlateRequest, layout
-from atlas.lettering import axis_text
-from atlas.plate import PanelText, Raster, files
+from atlas.figure.boxes import Layout
+from atlas.figure.layout import FigureRequest, PlateRequest, layout
+from atlas.figure.lettering import axis_text
+from atlas.figure.plate import PanelText, Raster, files
 from tiles.shading import LEVELS, colour_table
 from tiles.window import View
 

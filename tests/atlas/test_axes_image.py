@@ -8,7 +8,7 @@ import xarray
 from matplotlib.backends.backend_agg import FigureCanvasAgg
 from matplotlib.figure import Figure
 
-from atlas.plate import draw_axes
+from atlas.figure.plate import draw_axes
 from tiles.shading import colour_table, fit_counts, shade_counts
 
 

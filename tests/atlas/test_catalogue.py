@@ -10,10 +10,10 @@ import mpmath
 import numpy as np
 import pytest
 
-from atlas.catalogue import NAMES, ROWS, family
 from atlas.errors import FamilyRefused
-from atlas.expression import evaluate, parse, to_mathtext
-from atlas.families import family_from_config
+from atlas.families.catalogue import NAMES, ROWS, family
+from atlas.families.reader import family_from_config
+from atlas.formula.expression import evaluate, parse, to_mathtext
 from tests.reference.formulas import slope, value
 
 BY_HAND = {
@@ -122,7 +122,7 @@ class TestDerivatives:
 
     def test_the_same_text_in_every_process(self):
         program = (
-            "from atlas.catalogue import *; from atlas.expression import unparse;"
+            "from atlas.families.catalogue import *; from atlas.formula.expression import unparse;"
             "print([unparse(family(name).jacobian()[0][0]) for name in NAMES])"
         )
         told = {

@@ -10,10 +10,10 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from atlas.certificate import as_text, certificate, read, versions
-from atlas.certificate_reader import KEY
 from atlas.errors import CertificateRefused
-from atlas.plate import FORMATS, files
+from atlas.figure.plate import FORMATS, files
+from atlas.output.certificate import as_text, certificate, read, versions
+from atlas.output.certificate_reader import KEY
 from tests.atlas.plates import RECORD, filled, request
 from tiles.index import Index
 

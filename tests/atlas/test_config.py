@@ -11,12 +11,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.config import Config, load, parse_config, plate_from_parts
+from atlas.config.load import Config, load, parse_config, plate_from_parts
 from atlas.errors import ConfigRefused
-from atlas.place import Place
-from atlas.sheet import Size
-from atlas.view_kinds import Levels
-from atlas.yaml_text import LARGEST_FILE, read_yaml
+from atlas.reading.place import Place
+from atlas.reading.sheet import Size
+from atlas.reading.view_kinds import Levels
+from atlas.reading.yaml_text import LARGEST_FILE, read_yaml
 from tiles.errors import Refusal
 from tiles.number import exact
 from tiles.window import View

@@ -9,8 +9,8 @@ from typing import Any
 
 import pytest
 
-from atlas.config import parse_config, plate_from_parts
-from atlas.yaml_text import read_yaml
+from atlas.config.load import parse_config, plate_from_parts
+from atlas.reading.yaml_text import read_yaml
 from tiles.errors import Refusal
 
 SOUND = Path(__file__).with_name("sound.yaml").read_text(encoding="utf-8")

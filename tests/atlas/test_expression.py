@@ -14,7 +14,7 @@ from hypothesis import strategies as st
 
 import atlas
 from atlas.errors import FormulaRefused
-from atlas.expression import (
+from atlas.formula.expression import (
     Binary,
     Call,
     Compare,

@@ -11,8 +11,8 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from atlas.expression import evaluate, parse, unparse
-from atlas.families import Family, family_from_config
+from atlas.families.reader import Family, family_from_config
+from atlas.formula.expression import evaluate, parse, unparse
 from tiles.errors import Refusal
 from tiles.number import Exact, exact
 from tiles.window import Axis

@@ -12,11 +12,11 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.config import counting_digest, digest, normalised, parse_config, plate_from_parts
+from atlas.config.keys import FORMATS, SECTIONS
+from atlas.config.load import counting_digest, digest, normalised, parse_config, plate_from_parts
+from atlas.config.remake import from_normalised
 from atlas.errors import ConfigRefused
-from atlas.keys import FORMATS, SECTIONS
-from atlas.remake import from_normalised
-from atlas.yaml_text import read_yaml
+from atlas.reading.yaml_text import read_yaml
 from tiles.palette import PALETTES
 
 SOUND = Path(__file__).with_name("sound.yaml").read_text(encoding="utf-8")

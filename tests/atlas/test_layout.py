@@ -10,9 +10,9 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.boxes import Box
-from atlas.config import parse_config
-from atlas.layout import (
+from atlas.config.load import parse_config
+from atlas.figure.boxes import Box
+from atlas.figure.layout import (
     FigureRequest,
     Layout,
     LayoutRefused,
@@ -20,8 +20,8 @@ from atlas.layout import (
     default_font_size,
     layout,
 )
-from atlas.panels import request_of
-from atlas.sheet import Inset, Size
+from atlas.figure.panels import request_of
+from atlas.reading.sheet import Inset, Size
 from tiles.window import View
 
 VIEW = View(across=("r", "2.8", 4), up=("x", 0, 1))

@@ -6,7 +6,7 @@ from fractions import Fraction
 
 import pytest
 
-from atlas.lettering import (
+from atlas.figure.lettering import (
     MM_PER_POINT,
     axis_text,
     decimal_text,

@@ -7,8 +7,8 @@ import pytest
 from numba import njit
 
 from atlas.arithmetic import functions
-from atlas.catalogue import family
-from atlas.orbit import OrbitCounter, Rules
+from atlas.families.catalogue import family
+from atlas.orbits.orbit import OrbitCounter, Rules
 from tests.reference.orbits import Twin
 from tiles.number import exact
 from tiles.window import View

@@ -16,12 +16,12 @@ from xml.etree import ElementTree
 import numpy as np
 import pytest
 
-from atlas.drawing import GREY_MARK, MARK, pieces
-from atlas.layout import FigureRequest, PlateRequest
-from atlas.pieces import Words
-from atlas.plate import draw, files
-from atlas.sheet import Inset
-from atlas.typeset import LetteringRefused, Typesetter, settings
+from atlas.figure.drawing import GREY_MARK, MARK, pieces
+from atlas.figure.layout import FigureRequest, PlateRequest
+from atlas.figure.pieces import Words
+from atlas.figure.plate import draw, files
+from atlas.figure.typeset import LetteringRefused, Typesetter, settings
+from atlas.reading.sheet import Inset
 from tests.atlas.plates import RECORD, VIEW, filled, made, opened, pdf_images, pdf_objects, request
 from tiles.errors import OutputFailed, Refusal
 from tiles.window import View
@@ -268,7 +268,7 @@ def test_no_words_touch_others_or_leave_the_page(asked: PlateRequest | FigureReq
 
 def filled_without_pixels(asked: PlateRequest | FigureRequest):  # type: ignore[no-untyped-def]
     """Return a filled page whose rasters take no memory."""
-    from atlas.layout import layout
+    from atlas.figure.layout import layout
     from tests.atlas import plates
 
     page = layout(asked)
@@ -323,7 +323,10 @@ def test_unknown_formats_are_refused() -> None:
 
 
 def test_nothing_heavy_is_imported_before_something_is_drawn(tmp_path: Path) -> None:
-    code = "import sys, atlas.plate; print(sorted({'matplotlib', 'PIL', 'datashader'} & set(sys.modules)))"
+    code = (
+        "import sys, atlas.figure.plate; "
+        "print(sorted({'matplotlib', 'PIL', 'datashader'} & set(sys.modules)))"
+    )
     root = Path(__file__).parents[2]
     done = subprocess.run(
         [sys.executable, "-c", code],

@@ -13,12 +13,12 @@ import yaml
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.config import load, normalised, parse_config
-from atlas.family_keys import FAMILY_KEYS
-from atlas.keys import CONFIG_KEYS, SECTIONS
-from atlas.remake import from_normalised
-from atlas.schema import key_rows, schema
-from atlas.yaml_text import read_yaml
+from atlas.config.keys import CONFIG_KEYS, SECTIONS
+from atlas.config.load import load, normalised, parse_config
+from atlas.config.remake import from_normalised
+from atlas.config.schema import key_rows, schema
+from atlas.families.keys import FAMILY_KEYS
+from atlas.reading.yaml_text import read_yaml
 from tiles.errors import Refusal
 
 HERE = Path(__file__).parent

@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.sheet import Size
+from atlas.reading.sheet import Size
 from tiles.errors import Refusal
 
 

@@ -11,8 +11,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.lettering import MM_PER_POINT, text_width
-from atlas.ticks import Along, Ticks, position, ticks
+from atlas.figure.lettering import MM_PER_POINT, text_width
+from atlas.figure.ticks import Along, Ticks, position, ticks
 from tiles.number import Exact, exact
 from tiles.window import Axis
 

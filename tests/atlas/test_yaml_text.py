@@ -7,7 +7,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from atlas.errors import ConfigRefused
-from atlas.yaml_text import DEEPEST, LARGEST_FILE, read_yaml
+from atlas.reading.yaml_text import DEEPEST, LARGEST_FILE, read_yaml
 
 LAUGHS = "a0: &a0 [x, x, x, x, x, x, x, x, x, x]\n" + "".join(
     f"a{n}: &a{n} [{', '.join([f'*a{n - 1}'] * 10)}]\n" for n in range(1, 12)
@@ -95,7 +95,7 @@ def test_hostile_documents_are_refused_in_one_sentence(document: str | bytes, wo
 
 
 def test_the_bound_on_expanded_values_is_exact(monkeypatch: pytest.MonkeyPatch):
-    monkeypatch.setattr("atlas.yaml_text.MOST_NODES", 30)
+    monkeypatch.setattr("atlas.reading.yaml_text.MOST_NODES", 30)
     # The mapping and its 3 keys are 4 values, the anchored list is 6, its two aliases 1 + 12, the filling 7.
     head = "a: &a [1, 2, 3, 4, 5]\nb: [*a, *a]\n"
     assert len(read_yaml(f"{head}c: [1, 2, 3, 4, 5, 6]\n", "file.yaml")) == 3

@@ -1,0 +1,1 @@
+"""The config: its keys, its records, its reader and schema."""

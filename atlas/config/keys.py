@@ -1,0 +1,179 @@
+"""The table of keys: what a plate, a tile set and a figure may hold, with type, default and meaning.
+
+The reader, the ``defaults`` section, the editor schema and the documentation all come from these rows.
+"""
+
+from __future__ import annotations
+
+from fractions import Fraction
+from typing import Any
+
+from atlas.reading.kinds import Colour, Measure, OrWord, Text, Truth, Whole, Word, Words
+from atlas.reading.section import Key
+from atlas.reading.sheet import Size
+from atlas.reading.sheet_kinds import InsetKind, PanelsKind, SizeKind
+from atlas.reading.view_kinds import AxisKind, Levels, LevelsKind, NumbersKind, PairsKind, StartsKind
+from tiles.grid import PAIRS
+from tiles.palette import PALETTES
+from tiles.shading import SHADINGS
+
+FORMATS = {"png": ".png", "tiff": ".tif", "pdf": ".pdf", "svg": ".svg"}
+SHARED_AXES = ("across", "up")
+MOST_SAMPLES = 10**12
+TRANSIENT_LIMIT = 1_000_000
+
+_TITLE = Key("title", Text(), None, "Title of the picture or of the page.")
+_SIZE = Key(
+    "size",
+    SizeKind(),
+    Size(Fraction(180), Fraction(110)),
+    "Size of the whole sheet: millimetres (180x110) or pixels (1200x800px).",
+    shared=True,
+)
+_DPI = Key("dpi", Whole(10, 100_000), 300, "Pixels per inch of the printed sheet.", shared=True)
+_FORMATS = Key(
+    "formats", Words(tuple(FORMATS)), ("png",), "Files to be written: png, tiff, pdf, svg.", shared=True
+)
+_FONT = Key("font_size", Measure(3, 72), 8.0, "Size of the lettering in points.", shared=True)
+
+JOB_KEYS: tuple[Key[Any], ...] = (
+    Key(
+        "family",
+        Text(what="the name of a family"),
+        None,
+        "A family of this file or of the catalogue.",
+        True,
+        counts=True,
+    ),
+    Key("across", AxisKind(), None, "Horizontal axis: a parameter with its interval.", True, counts=True),
+    Key("up", AxisKind(), None, "Vertical axis: a state variable with its interval.", True, counts=True),
+    Key("set", NumbersKind("parameters"), {}, "Values of parameters that run along no axis.", counts=True),
+    Key("starts", StartsKind(), None, "States that every column is run from.", counts=True),
+    _TITLE,
+    Key(
+        "transient",
+        Whole(0, 10**12),
+        1000,
+        "Steps of each orbit that are left out before sampling.",
+        shared=True,
+        counts=True,
+    ),
+    Key(
+        "transient_limit",
+        Whole(0, 10**12),
+        TRANSIENT_LIMIT,
+        "Steps up to which the transient of an orbit that has not settled is extended.",
+        shared=True,
+        counts=True,
+    ),
+    Key(
+        "samples",
+        OrWord("auto", Whole(1, MOST_SAMPLES)),
+        "auto",
+        "Samples of each orbit; auto gives a mean of at least 8 counts in each cell of the occupied range.",
+        shared=True,
+        counts=True,
+    ),
+    Key(
+        "values_per_column",
+        Whole(1, 4096),
+        4,
+        "Parameter values, evenly spread, that each column of pixels averages over.",
+        shared=True,
+        counts=True,
+    ),
+    Key(
+        "longest_period",
+        Whole(1, 4096),
+        64,
+        "Longest cycle that is looked for to tell whether an orbit has settled.",
+        shared=True,
+        counts=True,
+    ),
+    Key(
+        "shading",
+        Word(SHADINGS),
+        "equalised",
+        f"How density becomes shade: {', '.join(SHADINGS)}.",
+        shared=True,
+    ),
+    Key("palette", Word(tuple(PALETTES)), "blue", "Colours of the shades, light to dark.", shared=True),
+    Key("background", Colour(), None, "Colour of empty cells; by default the palette's.", shared=True),
+    Key(
+        "missing",
+        Colour(),
+        None,
+        "Colour where nothing was sampled; by default the palette's.",
+        shared=True,
+    ),
+)
+
+PLATE_KEYS: tuple[Key[Any], ...] = (
+    *JOB_KEYS,
+    _SIZE,
+    _DPI,
+    _FORMATS,
+    _FONT,
+    Key("key", Truth(), False, "Whether a colour key stands beside the picture.", shared=True),
+    Key("letter", Text(3), None, "Panel letter at the upper left corner."),
+    Key("inset", InsetKind(), None, "A part of the window, magnified and drawn over a corner."),
+)
+
+TILE_SET_KEYS: tuple[Key[Any], ...] = (
+    *JOB_KEYS,
+    Key(
+        "levels",
+        LevelsKind(),
+        Levels(4, 4),
+        "Deepest level; level k has 2**k tiles an axis.",
+        shared=True,
+    ),
+    Key(
+        "pairs",
+        PairsKind(PAIRS),
+        "diagonal",
+        "Level pairs that are built: diagonal, all, or a list.",
+        shared=True,
+    ),
+)
+
+FIGURE_KEYS: tuple[Key[Any], ...] = (
+    Key(
+        "panels",
+        PanelsKind(),
+        None,
+        "Plates: one row, or rows from the top down.",
+        required=True,
+    ),
+    Key(
+        "share",
+        Words(SHARED_AXES, fewest=0),
+        (),
+        "Axes whose labels stand once: across for panels above each other, up for panels side by side.",
+    ),
+    Key("letters", Truth(), True, "Whether the panels carry the letters a, b, c.", shared=True),
+    _TITLE,
+    _SIZE,
+    _DPI,
+    _FORMATS,
+    _FONT,
+)
+
+SECTIONS: dict[str, tuple[Key[Any], ...]] = {
+    "plates": PLATE_KEYS,
+    "tile_sets": TILE_SET_KEYS,
+    "figures": FIGURE_KEYS,
+}
+
+DEFAULT_KEYS: tuple[Key[Any], ...] = tuple(
+    {key.name: key for keys in SECTIONS.values() for key in keys if key.shared}.values()
+)
+
+CONFIG_KEYS: dict[str, str] = {
+    "title": "Title of the whole file; tile sets without a title of their own carry it.",
+    "families": "Families of your own; those of the catalogue need no entry.",
+    "defaults": "Values for every plate, tile set and figure below that does not give its own.",
+    "plates": "Figures at a print size, by name.",
+    "tile_sets": "Zoomable tile sets, by name.",
+    "figures": "Several plates as panels of one sheet, by name.",
+}

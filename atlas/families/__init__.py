@@ -1,0 +1,1 @@
+"""Map families: records, their reader, the catalogue."""

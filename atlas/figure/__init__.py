@@ -1,0 +1,1 @@
+"""Figures: ticks, layout and the files of plates."""

@@ -1,0 +1,1 @@
+"""The formula language: checked trees, their text, their derivatives."""

@@ -1,0 +1,1 @@
+"""Orbits: the compiled map, the kernels, whole histograms, the Dataset."""

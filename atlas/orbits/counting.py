@@ -1,0 +1,67 @@
+"""From a job of a config to the counter of its orbits."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from atlas.config.jobs import Job, TileSet
+from atlas.orbits.orbit import OrbitCounter, Rules
+from atlas.orbits.sampling import IN_TILES, ON_PLATES, automatic, whole_height
+from atlas.plan import check_counter
+
+
+def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
+    """Return the counter of a job's orbits at a resolution, refused where float64 or a count cannot hold it.
+
+    With ``samples: auto`` it has the samples that suffice where the attractor lies inside the view;
+    :func:`resolved` looks closer.
+
+    Raises
+    ------
+    PlanRefused
+    """
+    samples = job.samples
+    if not isinstance(samples, int):
+        samples = whole_height(rows, job.values_per_column * len(job.starts), counts_per_cell(job))
+    rules = Rules(job.transient, job.transient_limit, samples, job.values_per_column, job.longest_period)
+    counter = OrbitCounter(job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts)
+    check_counter(counter, job.name)
+    return counter
+
+
+def resolved(job: Job, counter: OrbitCounter) -> OrbitCounter:
+    """Return the counter with the samples that a pilot found for ``samples: auto``."""
+    if isinstance(job.samples, int):
+        return counter
+    return counter.with_samples(automatic(counter, counts_per_cell(job)))
+
+
+def counts_per_cell(job: Job) -> int:
+    """Return the mean counts that ``samples: auto`` aims at: fewer in tiles, whose cells are so many more."""
+    return IN_TILES if isinstance(job, TileSet) else ON_PLATES
+
+
+@dataclass(frozen=True)
+class Sampled:
+    """What the certificate says of the samples of one view."""
+
+    columns: int
+    rows: int
+    samples_of_each_orbit: int
+    exposure: int
+    filled_by_repeats: int
+
+    @property
+    def total(self) -> int:
+        """Samples of all columns."""
+        return self.columns * self.exposure
+
+    def record(self) -> dict[str, int]:
+        """Return the numbers by name."""
+        return {
+            "columns": self.columns,
+            "rows": self.rows,
+            "of_each_orbit": self.samples_of_each_orbit,
+            "of_each_column": self.exposure,
+            "filled_by_repeats": self.filled_by_repeats,
+        }

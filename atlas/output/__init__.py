@@ -1,0 +1,1 @@
+"""Outputs: plates, figures and tile sets made from records, with their certificates."""

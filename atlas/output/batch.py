@@ -1,0 +1,183 @@
+"""Rendering a whole config: every output planned first, then made, skipped or failed one by one."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from atlas.config.digests import digest
+from atlas.config.jobs import Figure, Plate, TileSet
+from atlas.config.load import Config
+from atlas.errors import ConfigRefused
+from atlas.orbits.schedule import Schedule, default_workers, schedule
+from atlas.output.folders import check_folder
+from atlas.output.forecast import need_of
+from atlas.output.ledger import Ledger
+from atlas.output.printing import Made, make_sheet, sheet_of
+from atlas.output.reporter import Reporter, Silence
+from atlas.output.tileset import Places, make_tile_set, tile_counter
+from atlas.plan import Need, check_memory, parse_memory
+from tiles.errors import Failure, OutputFailed, nearest
+
+Record = Plate | TileSet | Figure
+Make = Callable[[Schedule, Reporter], Made]
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """What became of one output of a batch.
+
+    Attributes
+    ----------
+    name, kind : str
+    status : {"made", "skipped", "failed"}
+    seconds : float
+    samples : int
+        Counted for it in this run.
+    message : str
+        Why it failed.
+    """
+
+    name: str
+    kind: str
+    status: str
+    seconds: float = 0.0
+    samples: int = 0
+    message: str = ""
+
+
+@dataclass(frozen=True)
+class _Planned:
+    name: str
+    kind: str
+    request: str
+    files: tuple[Path, ...]
+    make: Make
+
+
+def render(
+    config: Config,
+    out: Path | str = "out",
+    *,
+    only: Sequence[str] = (),
+    workers: int | None = None,
+    memory: str | int | None = None,
+    force: bool = False,
+    reporter: Reporter | None = None,
+) -> list[Outcome]:
+    """Render the outputs of a config into a folder.
+
+    Parameters
+    ----------
+    config : Config
+        From `atlas.load`.
+    out : path
+        The folder; made if it is not there.
+    only : sequence of str
+        Names of outputs; all without it.
+    workers : int, optional
+        Threads; the results do not depend on it.
+    memory : str or int, optional
+        Budget of the process, ``"2GiB"`` by default.
+    force : bool
+        Make again what is unchanged.
+    reporter : Reporter, optional
+        Hears of the progress.
+
+    Returns
+    -------
+    list of Outcome
+        In the order of the config. An output that fails at run time does not stop the others.
+
+    Raises
+    ------
+    Refusal
+        When the request is wrong; then nothing was rendered.
+    """
+    out = Path(out)
+    reporter = reporter or Silence()
+    planned = _plan(config, out, only, workers or default_workers(), parse_memory(memory))
+    check_folder(out)
+    ledger = Ledger(out)
+    outcomes = []
+    with schedule(workers) as opened:
+        for one in planned:
+            if not force and ledger.unchanged(one.name, one.request, one.files):
+                outcomes.append(Outcome(one.name, one.kind, "skipped"))
+            else:
+                outcomes.append(_make(one, ledger, opened, reporter))
+    return outcomes
+
+
+def select(config: Config, only: Sequence[str]) -> dict[str, Record]:
+    """Return the outputs of a config by name, or those that were asked for.
+
+    Raises
+    ------
+    ConfigRefused
+        For a name that the config does not have, and for a config without outputs.
+    """
+    outputs = config.outputs()
+    where = config.path or "config"
+    if not outputs:
+        raise ConfigRefused(f"{where}: there is nothing to render; add a plate under plates:")
+    for name in only:
+        if name not in outputs:
+            raise ConfigRefused(f"--only: {where} has no output '{name}'{nearest(name, outputs)}")
+    return {name: record for name, record in outputs.items() if not only or name in only}
+
+
+def _plan(config: Config, out: Path, only: Sequence[str], workers: int, budget: int) -> list[_Planned]:
+    planned = []
+    for name, record in select(config, only).items():
+        check_need(name, need_of(record, workers), budget)
+        planned.append(_planned(record, out))
+    return planned
+
+
+def check_need(name: str, need: Need, budget: int) -> None:
+    """Refuse an output that does not fit into the memory budget."""
+    check_memory(need.memory, budget, name, "make it smaller or raise --memory")
+
+
+def _planned(record: Record, out: Path) -> _Planned:
+    request = digest(record)
+    if isinstance(record, TileSet):
+        places, tile_set = Places.of(out, record.name), record
+        tile_counter(record)
+        return _Planned(
+            record.name,
+            "tile set",
+            request,
+            (places.index, places.site),
+            lambda opened, reporter: make_tile_set(tile_set, places, opened, reporter),
+        )
+    sheet = sheet_of(record)
+    files = sheet.files(out)
+    for view in sheet.views:
+        view.counter()
+    return _Planned(
+        record.name,
+        "figure" if isinstance(record, Figure) else "plate",
+        request,
+        tuple(files.values()),
+        lambda opened, reporter: make_sheet(sheet, files, opened, reporter),
+    )
+
+
+def _make(one: _Planned, ledger: Ledger, opened: Schedule, reporter: Reporter) -> Outcome:
+    begin = time.monotonic()
+    try:
+        made = one.make(opened, reporter)
+        ledger.note(one.name, one.request, one.files)
+    except Failure as problem:
+        message = str(problem)
+    except MemoryError:
+        message = f"{one.name}: memory ran out; make it smaller or close other programs"
+    except OSError as problem:
+        message = str(OutputFailed(f"{one.name}: {problem.strerror or problem}; free some space or memory"))
+    else:
+        return Outcome(one.name, one.kind, "made", time.monotonic() - begin, made.samples)
+    return Outcome(one.name, one.kind, "failed", time.monotonic() - begin, 0, message)

@@ -1,0 +1,252 @@
+"""Making plates and figures: every panel counted at its own pixels, shaded, set and written."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from atlas.config.digests import normalised
+from atlas.config.jobs import Figure, Plate
+from atlas.config.keys import FORMATS
+from atlas.errors import PlanRefused
+from atlas.figure.boxes import Layout
+from atlas.figure.layout import layout
+from atlas.figure.lettering import axis_text, plain
+from atlas.figure.panels import request_of
+from atlas.figure.pieces import PanelText, Raster
+from atlas.orbits.counting import Sampled, counter_of, resolved
+from atlas.orbits.histogram import Histogram, count_histogram
+from atlas.orbits.orbit import OrbitCounter
+from atlas.orbits.schedule import Schedule, schedule
+from atlas.output.certificate import certificate
+from atlas.output.folders import check_folder
+from atlas.output.reporter import Reporter, Silence
+from atlas.plan import BASE_MEMORY, check_memory, parse_memory
+from tiles.errors import nearest
+from tiles.shading import Fit, colour_table, fit_counts, key_labels, shade_counts
+from tiles.window import Axis
+
+BYTES_PER_CELL, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, VECTOR_BYTES_PER_CELL = 6, 2, 8, 2
+"""What is alive at the peak, measured: counts and shades of a raster, then the page and its encoder."""
+
+
+@dataclass(frozen=True)
+class View:
+    """One raster to be counted: its name on the page, its plate, its pixels."""
+
+    name: str
+    plate: Plate
+    columns: int
+    rows: int
+
+    def counter(self) -> OrbitCounter:
+        """Return the counter of its orbits."""
+        return counter_of(self.plate, self.columns, self.rows)
+
+
+@dataclass(frozen=True)
+class Sheet:
+    """A plate or figure laid out: what must be counted for it and where it goes.
+
+    Attributes
+    ----------
+    record : Plate or Figure
+    page : Layout
+    views : tuple of View
+        Panels in reading order, each followed by its inset.
+    """
+
+    record: Plate | Figure
+    page: Layout
+    views: tuple[View, ...]
+
+    @property
+    def memory(self) -> int:
+        """Estimated peak memory of the process in bytes while it is made."""
+        width, height = self.record.pixels
+        cells = [view.columns * view.rows for view in self.views]
+        vector = VECTOR_BYTES_PER_CELL * sum(cells) if {"pdf", "svg"} & set(self.record.formats) else 0
+        sheet = (TIFF_BYTES_PER_PIXEL if "tiff" in self.record.formats else BYTES_PER_PIXEL) * width * height
+        return BASE_MEMORY + BYTES_PER_CELL * max(cells) + sum(cells) + sheet + vector
+
+    def files(self, out: Path) -> dict[str, Path]:
+        """Return the file of each format in an output folder."""
+        return {form: out / f"{self.record.name}{FORMATS[form]}" for form in self.record.formats}
+
+
+@dataclass(frozen=True)
+class Made:
+    """What became of an output: its samples and its certificate."""
+
+    samples: int
+    record: dict[str, Any]
+
+
+def sheet_of(record: Plate | Figure) -> Sheet:
+    """Lay a plate or a figure out.
+
+    Raises
+    ------
+    Refusal
+        When its size leaves no room for a raster.
+    """
+    page = layout(request_of(record))
+    plates = record.plates if isinstance(record, Figure) else {record.name: record}
+    views = []
+    for panel in page.panels:
+        plate = plates[panel.name]
+        views.append(View(panel.name, plate, panel.width, panel.height))
+        inset = plate.inset_plate()
+        if inset is not None and panel.inset is not None:
+            box = panel.inset.raster
+            views.append(View(f"{panel.name}/inset", inset, box.width, box.height))
+    return Sheet(record, page, tuple(views))
+
+
+def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporter: Reporter) -> Made:
+    """Count, shade, set and write a plate or a figure.
+
+    Parameters
+    ----------
+    sheet : Sheet
+    files : dict of str to Path
+        Where each format goes.
+    schedule : Schedule
+    reporter : Reporter
+
+    Returns
+    -------
+    Made
+
+    Raises
+    ------
+    OutputFailed
+        When a file cannot be written.
+    """
+    rasters: dict[str, Raster] = {}
+    texts: dict[str, PanelText] = {}
+    shares, samples, digests = {}, {}, {}
+    total = 0
+    for view in sheet.views:
+        counter = resolved(view.plate, view.counter())
+        reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
+        histogram = count_histogram(counter, schedule, reporter.advance)
+        sampled = sampled_of(counter, histogram)
+        total += sampled.total
+        shares[view.name], samples[view.name] = histogram.shares(), sampled.record()
+        digests[view.name] = histogram.digest()
+        fit, rasters[view.name] = shaded(view.plate, counter, histogram)
+        texts[view.name] = panel_text(view.plate, fit)
+    record = certificate(
+        "figure" if isinstance(sheet.record, Figure) else "plate",
+        sheet.record.name,
+        normalised(sheet.record),
+        "+".join(digests.values()),
+        shares,
+        samples,
+    )
+    from atlas.figure.plate import draw
+
+    reporter.begin(sheet.record.name, "drawing", 0)
+    draw(sheet.page, rasters, texts, files, record)
+    return Made(total, record)
+
+
+def sampled_of(counter: OrbitCounter, histogram: Histogram) -> Sampled:
+    """Return what the certificate says of the samples."""
+    return Sampled(counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled)
+
+
+def shaded(plate: Plate, counter: OrbitCounter, histogram: Histogram) -> tuple[Fit, Raster]:
+    """Shade a histogram with a fit of its own; return the fit and the raster, top line first."""
+    strip, height = histogram.strip, counter.view.up.cell_size(counter.rows)
+    fit = fit_counts(strip.counts, strip.exposure, height, plate.shading)
+    shades = shade_counts(strip.counts, strip.exposure, height, fit)
+    table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
+    lines = np.ascontiguousarray(shades.T[::-1])
+    return fit, Raster(lines, table, counter.view, strip.unsettled > 0)
+
+
+def panel_text(plate: Plate, fit: Fit) -> PanelText:
+    """Return what is written around a panel: labels from the family, the key's numbers and caption."""
+    _, unit = plate.family.label_and_unit(plate.up.name)
+    per = f" per {unit}" if unit else ""
+    log = " of the logarithm" if plate.up.scale == "log" else ""
+    return PanelText(
+        label_of(plate, plate.across),
+        label_of(plate, plate.up),
+        key_labels(fit) if plate.key else (),
+        f"density{per}{log}" if plate.key else "",
+    )
+
+
+def label_of(plate: Plate, axis: Axis) -> str:
+    """Return an axis' label: the config's own, else the family's label, symbol and unit."""
+    if axis.label:
+        return plain(axis.label)
+    return axis_text(axis.name, *plate.family.label_and_unit(axis.name))
+
+
+def draw_plate(
+    plate: Plate,
+    out: Sequence[Path | str],
+    *,
+    workers: int | None = None,
+    memory: str | int | None = None,
+    reporter: Reporter | None = None,
+) -> Made:
+    """Make one plate and write it to files; the suffix of each decides its format.
+
+    Parameters
+    ----------
+    plate : Plate
+        From `atlas.figure.plate` or a config.
+    out : sequence of path
+        Files that end in .png, .tif, .tiff, .pdf or .svg, each format once.
+    workers : int, optional
+        Threads.
+    memory : str or int, optional
+        Budget of the process, ``"2GiB"`` by default.
+    reporter : Reporter, optional
+        Hears of the progress.
+
+    Raises
+    ------
+    Refusal
+        When the request is wrong; nothing is written then.
+    OutputFailed
+        When a file cannot be written.
+    """
+    files = files_by_format([Path(path) for path in out])
+    sheet = sheet_of(replace(plate, formats=tuple(files)))
+    check_memory(sheet.memory, parse_memory(memory), plate.name, "make it smaller or raise --memory")
+    for path in files.values():
+        check_folder(path.parent)
+    with schedule(workers) as opened:
+        return make_sheet(sheet, files, opened, reporter or Silence())
+
+
+def files_by_format(paths: Sequence[Path]) -> dict[str, Path]:
+    """Return files by the format that their suffix names.
+
+    Raises
+    ------
+    PlanRefused
+        For another suffix, and for a format given twice.
+    """
+    formats = {suffix: form for form, suffix in FORMATS.items()} | {".tiff": "tiff"}
+    files: dict[str, Path] = {}
+    for path in paths:
+        form = formats.get(path.suffix.lower())
+        if form is None:
+            raise PlanRefused(
+                f"--out: '{path}' has no suffix of a picture{nearest(path.suffix.lower(), formats)}"
+            )
+        if form in files:
+            raise PlanRefused(f"--out: '{files[form]}' and '{path}' are both {form}; give each format once")
+        files[form] = path
+    return files

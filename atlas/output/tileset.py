@@ -1,0 +1,215 @@
+"""Making tile sets: the index from strips of counted columns, then the static folder."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from atlas.config.digests import counting_digest, normalised
+from atlas.config.jobs import TileSet
+from atlas.orbits.counting import Sampled, counter_of, resolved
+from atlas.orbits.histogram import block_width
+from atlas.orbits.orbit import OrbitCounter
+from atlas.orbits.schedule import Schedule, schedule
+from atlas.output.certificate import certificate
+from atlas.output.printing import Made
+from atlas.output.reporter import Reporter, Silence
+from tiles.build import build
+from tiles.index import Index
+from tiles.site import build_site
+from tiles.strip import PER_COLUMN, Strip
+
+T = TypeVar("T")
+CELLS_PER_STRIP = 1 << 22
+
+
+@dataclass(frozen=True)
+class Places:
+    """Where the parts of a tile set go."""
+
+    index: Path
+    site: Path
+    growing_index: Path
+    growing_site: Path
+
+    @classmethod
+    def of(cls, out: Path, name: str) -> Places:
+        """Return the places in an output folder."""
+        parts = out / ".parts"
+        return cls(
+            out / name / "index.sqlite", out / name / "site", parts / f"{name}.sqlite", parts / f"{name}.site"
+        )
+
+
+class StripSource:
+    """Counts the columns of a tile set's deepest level pair when the index asks for them."""
+
+    def __init__(self, counter: OrbitCounter, schedule: Schedule, reporter: Reporter) -> None:
+        self.counter, self.schedule, self.reporter = counter, schedule, reporter
+        self.width = block_width(counter)
+        self.filled = 0
+        self.on_repelling = 0
+
+    def __call__(self, first: int, last: int) -> Strip:
+        """Return the strip of columns ``first … last - 1``; called in worker threads."""
+        counts = np.empty((last - first, self.counter.rows), np.uint32)
+        numbers: dict[str, NDArray[np.uint64]] = {
+            name: np.empty(last - first, np.uint64) for name in PER_COLUMN
+        }
+        for begin in range(first, last, self.width):
+            end = min(begin + self.width, last)
+            at = slice(begin - first, end - first)
+            counted = self.counter.count(begin, end, out=counts[at], stop=self.schedule.stop)
+            for name, array in numbers.items():
+                array[at] = getattr(counted.strip, name)
+            self.filled += counted.filled
+            self.on_repelling += counted.on_repelling
+            self.reporter.advance((end - begin) * self.counter.exposure)
+        return Strip(first, counts, **numbers)
+
+
+def tile_counter(job: TileSet) -> OrbitCounter:
+    """Return the counter of a tile set's deepest level pair."""
+    return counter_of(job, *job.cells)
+
+
+def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Reporter) -> Made:
+    """Count a tile set, build its index and its static folder; an interrupted run is continued.
+
+    Raises
+    ------
+    OutputFailed
+        When the disk is full or the folder is closed.
+    """
+    counter = resolved(job, tile_counter(job))
+    counter.warm()
+    source = StripSource(counter, opened, reporter)
+    header = _header(job, counter)
+    made: list[Made] = []
+
+    def finish(index: Index) -> None:
+        index.put_fit(index.fit_from(shading=job.shading))
+        made.append(_made(job, counter, index, source.filled))
+        index.put_certificate(made[0].record)
+
+    reporter.begin(job.name, "counting", counter.columns * counter.exposure)
+    build(
+        places.index,
+        job.view,
+        across_level=job.levels.across,
+        up_level=job.levels.up,
+        pairs=job.pairs,
+        source=source,
+        header=header,
+        run=opened.run,
+        cells_per_strip=CELLS_PER_STRIP,
+        unfinished=places.growing_index,
+        finish=finish,
+    )
+    colours = {key: getattr(job, key) for key in ("shading", "palette", "background", "missing")}
+    make_site(places.index, places.site, colours, opened, reporter, places.growing_site)
+    return made[0]
+
+
+def make_site(
+    index: Path,
+    site: Path,
+    colours: Mapping[str, str | None],
+    opened: Schedule,
+    reporter: Reporter,
+    growing: Path | None = None,
+) -> None:
+    """Write the static folder of an index in given colours."""
+    reporter.begin(index.parent.name, "tiles", _tile_columns(index))
+
+    def run(tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
+        def told(result: T) -> None:
+            done(result)
+            reporter.advance(1)
+
+        opened.run(tasks, told)
+
+    chosen = {key: value for key, value in colours.items() if value is not None}
+    build_site(index, site, run=run, unfinished=growing, **chosen)
+
+
+def _tile_columns(path: Path) -> int:
+    with Index.open(path) as index:
+        return sum(len(index.present(pair)) for pair in index.pairs)
+
+
+def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
+    settings = {
+        key: value
+        for key, value in normalised(job)["settings"].items()
+        if key not in ("across", "up", "levels", "pairs", "title") and value not in (None, {}, [])
+    }
+    return {
+        "title": job.title or f"{job.family.title}: {job.up.name} across {job.across.name}",
+        "family": job.family.title,
+        "formula": job.family.formula_lines(),
+        "note": job.family.note,
+        "units": {name: job.family.label_and_unit(name)[1] for name in (job.across.name, job.up.name)},
+        "plate": settings,
+        "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
+    }
+
+
+def _made(job: TileSet, counter: OrbitCounter, index: Index, filled: int) -> Made:
+    totals = index.totals()
+    exposure = totals["exposure"]
+    shares: dict[str, Any] = {
+        name: totals[name] / exposure for name in ("below", "above", "escaped", "unsettled")
+    }
+    shares["collapsed_orbits"] = totals["collapsed"]
+    sampled = Sampled(counter.columns, counter.rows, counter.rules.samples, counter.exposure, filled)
+    record = certificate(
+        "tile set", job.name, normalised(job), index.counts_digest(), shares, sampled.record()
+    )
+    return Made(sampled.total, record)
+
+
+def rebuild_site(
+    index: Path,
+    site: Path,
+    *,
+    shading: str | None = None,
+    palette: str | None = None,
+    background: str | None = None,
+    workers: int | None = None,
+    reporter: Reporter | None = None,
+) -> None:
+    """Write the static folder of a finished index again, by default in the colours that it was made with.
+
+    Parameters
+    ----------
+    index, site : Path
+        The index file, and the folder to write.
+    shading, palette, background : str, optional
+    workers : int, optional
+        Threads.
+    reporter : Reporter, optional
+        Hears of the progress.
+
+    Raises
+    ------
+    IndexRefused
+        When there is no finished index.
+    OutputFailed
+        When the disk is full or the folder is closed.
+    """
+    with Index.open(index) as opened_index:
+        plate = opened_index.header.get("plate") or {}
+    colours = {
+        "shading": shading or plate.get("shading", "equalised"),
+        "palette": palette or plate.get("palette", "blue"),
+        "background": background or plate.get("background"),
+        "missing": plate.get("missing"),
+    }
+    with schedule(workers) as opened:
+        make_site(index, site, colours, opened, reporter or Silence())

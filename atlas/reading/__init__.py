@@ -1,0 +1,1 @@
+"""Reading YAML and kinds of values, with refusals that name the place."""

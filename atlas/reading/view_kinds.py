@@ -1,0 +1,181 @@
+"""Kinds of value that say what is computed: axes, settings of parameters, starts, levels of a tile set."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Any, NamedTuple
+
+from atlas.reading.kinds import NUMBER_SCHEMA, Kind, Number, Schema, Text, Whole, Word
+from atlas.reading.place import Place, shown
+from atlas.reading.section import Key, read_section, section_schema, text_keys
+from tiles.errors import WindowRefused
+from tiles.number import Exact
+from tiles.window import Axis
+
+MOST_STARTS = 4096
+DEEPEST_LEVEL = 200
+NUMBER = Number()
+
+AXIS_KEYS: tuple[Key[Any], ...] = (
+    Key(
+        "name",
+        Text(what="a name"),
+        None,
+        "The parameter or state variable that runs along the axis.",
+        required=True,
+    ),
+    Key("low", NUMBER, None, "Lower end.", required=True),
+    Key("high", NUMBER, None, "Upper end.", required=True),
+    Key("scale", Word(("linear", "log")), "linear", "Cells equal in the value or in its logarithm."),
+    Key("label", Text(), None, "What the figure prints instead of the label that the family gives."),
+)
+
+
+@dataclass(frozen=True)
+class AxisKind(Kind[Axis]):
+    """``[name, low, high]``, or a mapping with these keys and more."""
+
+    keys: tuple[Key[Any], ...] = AXIS_KEYS
+
+    @property
+    def allowed(self) -> str:
+        return "[name, low, high]"
+
+    def read(self, given: Any, place: Place) -> Axis:
+        if isinstance(given, Axis):
+            given = {name: getattr(given, name) for name in ("name", "low", "high", "scale", "label")}
+            given = {name: value for name, value in given.items() if value is not None}
+        if not isinstance(given, Mapping):
+            if not isinstance(given, list | tuple) or len(given) != 3:
+                raise place.refusal(f"{shown(given)} is not an axis; write {self.allowed}")
+            given = dict(zip(("name", "low", "high"), given, strict=True))
+        values = read_section(self.keys, given, place)
+        try:
+            return Axis(**values)
+        except WindowRefused as problem:
+            raise place.refusal(str(problem)) from None
+
+    def schema(self) -> Schema:
+        entries = [{"type": ["string", "boolean"]}, dict(NUMBER_SCHEMA), dict(NUMBER_SCHEMA)]
+        three = {"type": "array", "prefixItems": entries, "minItems": 3, "maxItems": 3}
+        return {"anyOf": [three, section_schema(self.keys)]}
+
+    def write(self, value: Axis) -> Any:
+        written = {key.name: key.write(getattr(value, key.name)) for key in self.keys}
+        return {name: text for name, text in written.items() if text is not None}
+
+
+@dataclass(frozen=True)
+class NumbersKind(Kind[dict[str, Exact]]):
+    """A mapping of names to numbers."""
+
+    of: str
+
+    @property
+    def allowed(self) -> str:
+        return f"a mapping of {self.of} to numbers"
+
+    def read(self, given: Any, place: Place) -> dict[str, Exact]:
+        return {name: NUMBER.read(given[name], place.at(name)) for name in text_keys(given, place)}
+
+    def schema(self) -> Schema:
+        return {"type": "object", "additionalProperties": dict(NUMBER_SCHEMA)}
+
+    def write(self, value: dict[str, Exact]) -> Any:
+        return {name: NUMBER.write(number) for name, number in sorted(value.items())}
+
+
+@dataclass(frozen=True)
+class StartsKind(Kind[tuple[dict[str, Exact], ...]]):
+    """A list of states."""
+
+    @property
+    def allowed(self) -> str:
+        return "a list of states such as [{x: 0.3}, {x: 0.7}]"
+
+    def read(self, given: Any, place: Place) -> tuple[dict[str, Exact], ...]:
+        if not isinstance(given, list | tuple) or not given:
+            raise place.refusal(f"{shown(given)} is not {self.allowed}")
+        if len(given) > MOST_STARTS:
+            raise place.refusal(f"{len(given)} starts are too many; at most {MOST_STARTS} are allowed")
+        one = NumbersKind("state variables")
+        return tuple(one.read(entry, place.at(number)) for number, entry in enumerate(given, 1))
+
+    def schema(self) -> Schema:
+        one = NumbersKind("state variables").schema()
+        return {"type": "array", "items": one, "minItems": 1, "maxItems": MOST_STARTS}
+
+    def write(self, value: tuple[dict[str, Exact], ...]) -> Any:
+        return [NumbersKind("state variables").write(start) for start in value]
+
+
+class Levels(NamedTuple):
+    """The deepest level of a tile set along each axis."""
+
+    across: int
+    up: int
+
+
+_LEVEL = Whole(0, DEEPEST_LEVEL)
+LEVEL_KEYS: tuple[Key[Any], ...] = (
+    Key("across", _LEVEL, None, "Deepest level across: 2**level tiles of 256 cells.", required=True),
+    Key("up", _LEVEL, None, "Deepest level up: 2**level tiles of 256 cells.", required=True),
+)
+
+
+@dataclass(frozen=True)
+class LevelsKind(Kind[Levels]):
+    """One whole number for both axes, or one an axis."""
+
+    @property
+    def allowed(self) -> str:
+        return f"{_LEVEL.allowed}, or a mapping with across and up"
+
+    def read(self, given: Any, place: Place) -> Levels:
+        if isinstance(given, Mapping):
+            return Levels(**read_section(LEVEL_KEYS, given, place))
+        level = _LEVEL.read(given, place)
+        return Levels(level, level)
+
+    def schema(self) -> Schema:
+        return {"anyOf": [_LEVEL.schema(), section_schema(LEVEL_KEYS)]}
+
+    def write(self, value: Levels) -> Any:
+        return value._asdict()
+
+
+Pairs = tuple[tuple[int, int], ...]
+
+
+@dataclass(frozen=True)
+class PairsKind(Kind[str | Pairs]):
+    """``diagonal``, ``all``, or a list of level pairs."""
+
+    words: tuple[str, ...]
+
+    @property
+    def allowed(self) -> str:
+        return f"{', '.join(self.words)} or a list of level pairs such as [[0, 0], [2, 4]]"
+
+    def read(self, given: Any, place: Place) -> str | Pairs:
+        if isinstance(given, str):
+            return Word(self.words).read(given, place)
+        if not isinstance(given, list | tuple) or not given:
+            raise place.refusal(f"{shown(given)} is not {self.allowed}")
+        pairs = tuple(self._pair(entry, place.at(number)) for number, entry in enumerate(given, 1))
+        if len(set(pairs)) < len(pairs):
+            raise place.refusal("a level pair is listed twice; list each pair once")
+        return tuple(sorted(pairs))
+
+    def _pair(self, given: Any, place: Place) -> tuple[int, int]:
+        if not isinstance(given, list | tuple) or len(given) != 2:
+            raise place.refusal(f"{shown(given)} is not a level pair; write [level across, level up]")
+        return _LEVEL.read(given[0], place.at(1)), _LEVEL.read(given[1], place.at(2))
+
+    def schema(self) -> Schema:
+        pair = {"type": "array", "items": _LEVEL.schema(), "minItems": 2, "maxItems": 2}
+        return {"anyOf": [{"enum": list(self.words)}, {"type": "array", "items": pair, "minItems": 1}]}
+
+    def write(self, value: str | Pairs) -> Any:
+        return value if isinstance(value, str) else [list(pair) for pair in value]
