@@ -37,23 +37,28 @@ def advance(x, c, key, order, before, steps, bound, outcome):
             lg[l] = False
             lk[l] = key[m]
         n = before
-        for chunk in range(steps // CHUNK):
-            for part in range(CHUNK // UNROLL):
+        done = 0
+        while done < steps:
+            now = min(CHUNK, steps - done)
+            for part in range(now // UNROLL):
                 for l in range(LANES):
                     LOAD
                     for k in range(UNROLL):
                         STEP n + k + 1
                     STORE
                 n += UNROLL
+            BEGIN_REST
+            for part in range(now % UNROLL):
+                for l in range(LANES):
+                    LOAD
+                    STEP n + 1
+                    STORE
+                n += 1
+            END_REST
             for l in range(LANES):
                 LOAD
                 lg[l] = lg[l] | OUTSIDE
-        for rest in range(steps % CHUNK):
-            for l in range(LANES):
-                LOAD
-                STEP n + 1
-                STORE
-            n += 1
+            done += now
         for l in range(lanes):
             LOAD
             m = order[first + l]
@@ -88,28 +93,20 @@ def returns(x, c, order, longest, window, repeat, period, gap, size):
             lr[l] = 0.0
             lp[l] = 0.0
             lg[l] = np.inf
-        for n in range(1, longest + 1):
-            step_number = float(n)
+        for n in range(1, window + 1):
+            number = float(n)
+            beyond = 0.0 if n <= longest else np.inf
             for l in range(LANES):
                 LOAD
                 STEP 0
                 STORE
                 d = DISTANCE
-                nearer = d < lg[l]
+                lr[l] = number if (d == 0.0) & (lr[l] == 0.0) else lr[l]
+                nearer = d + beyond < lg[l]
                 lg[l] = d if nearer else lg[l]
-                lp[l] = step_number if nearer else lp[l]
+                lp[l] = number if nearer else lp[l]
                 largest = LARGEST
-                ls[l] = largest if largest > ls[l] else ls[l]
-        for l in range(LANES):
-            lr[l] = lp[l] if lg[l] == 0.0 else 0.0
-        for n in range(longest + 1, window + 1):
-            step_number = float(n)
-            for l in range(LANES):
-                LOAD
-                STEP 0
-                STORE
-                d = DISTANCE
-                lr[l] = step_number if (d == 0.0) & (lr[l] == 0.0) else lr[l]
+                ls[l] = largest if largest - beyond > ls[l] else ls[l]
         for l in range(lanes):
             m = order[first + l]
             repeat[m] = int(lr[l])
@@ -151,29 +148,30 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
         done = 0
         while done < steps:
             now = min(PART, steps - done)
-            if now == PART:
-                for at in range(0, PART, UNROLL):
-                    for l in range(LANES):
-                        LOAD
-                        h = lh[l]
-                        for k in range(UNROLL):
-                            STEP n + at + k + 1
-                            seen[at + k, l] = UP
-                            number = float(done + at + k + 1)
-                            number = number if SAME else np.inf
-                            h = number if number < h else h
-                        STORE
-                        lh[l] = h
-            else:
-                for k in range(now):
-                    for l in range(LANES):
-                        LOAD
-                        STEP n + k + 1
-                        STORE
-                        seen[k, l] = UP
-                        number = float(done + k + 1)
+            for part in range(now // UNROLL):
+                at = part * UNROLL
+                for l in range(LANES):
+                    LOAD
+                    h = lh[l]
+                    for k in range(UNROLL):
+                        STEP n + at + k + 1
+                        seen[at + k, l] = UP
+                        number = float(done + at + k + 1)
                         number = number if SAME else np.inf
-                        lh[l] = number if number < lh[l] else lh[l]
+                        h = number if number < h else h
+                    STORE
+                    lh[l] = h
+            BEGIN_REST
+            for k in range(now - now % UNROLL, now):
+                for l in range(LANES):
+                    LOAD
+                    STEP n + k + 1
+                    STORE
+                    seen[k, l] = UP
+                    number = float(done + k + 1)
+                    number = number if SAME else np.inf
+                    lh[l] = number if number < lh[l] else lh[l]
+            END_REST
             near = False
             for k in range(now):
                 for l in range(LANES):
@@ -386,10 +384,15 @@ def kernel_source(source: StepSource, up: int, *, log: bool, lanes: int) -> str:
     str
     """
     disturbed = [
-        _expand(text.replace(f"def {name}(", f"def {name}_disturbed("), source, disturb=True)
-        for name, text in (("advance", ADVANCE), ("sample", SAMPLE), ("replay", REPLAY))
+        _expand(text.replace(f"def {name}(", f"def {name}_disturbed("), source, step=step, disturb=True)
+        for name, text, step in (
+            ("advance", ADVANCE, "step"),
+            ("sample", SAMPLE, "step"),
+            ("replay", REPLAY, "one_step"),
+        )
     ]
-    parts = [_expand(text, source) for text in (ONE_ORBIT, ADVANCE, RETURNS, SAMPLE, REPLAY)]
+    many = [_expand(text, source) for text in (ADVANCE, RETURNS, SAMPLE)]
+    single = [_expand(text, source, step="one_step") for text in (ONE_ORBIT, REPLAY)]
     constants = {
         "NX": str(source.states),
         "NC": str(max(source.coefficients, 1)),
@@ -405,20 +408,35 @@ def kernel_source(source: StepSource, up: int, *, log: bool, lanes: int) -> str:
         "SLOW": str(SLOW),
         "GONE": str(GONE),
     }
-    text = "\n".join([source.text, *parts, *disturbed, DECIDE])
+    text = "\n".join([source.text, _one_step(source), *single, *many, *disturbed, DECIDE])
     return re.sub(r"\b(" + "|".join(constants) + r")\b", lambda match: constants[match[0]], text)
 
 
-def _expand(text: str, source: StepSource, *, disturb: bool = False) -> str:
+def _arguments(source: StepSource) -> str:
+    return f"({', '.join([*source.state_names, *source.coefficient_names])})"
+
+
+def _one_step(source: StepSource) -> str:
+    """Write step and slope as functions of their own, for code that follows one orbit: compiled only once."""
+    call = _arguments(source)
+    return "\n".join(
+        f"@compiled\ndef one_{name}{call}:\n    return {name}{call}\n" for name in ("step", "slope")
+    )
+
+
+def _expand(text: str, source: StepSource, *, step: str = "step", disturb: bool = False) -> str:
     states, coefficients = source.state_names, source.coefficient_names
-    call = f"({', '.join([*states, *coefficients])})"
+    call = _arguments(source)
+    if source.slow_calls:
+        text = re.sub(r" *BEGIN_REST\n.*?END_REST\n", "", text, flags=re.DOTALL)
+    text = re.sub(r" *(BEGIN|END)_REST\n", "", text)
     every = {
         "OUTSIDE": "(not (" + " and ".join(f"abs({name}) < bound" for name in states) + "))",
         "SAME": "(" + " & ".join(f"({name} == rx[{k}, l])" for k, name in enumerate(states)) + ")",
         "DISTANCE": _largest([f"abs({name} - rx[{k}, l])" for k, name in enumerate(states)]),
         "LARGEST": _largest([f"abs({name})" for name in states]),
         "STATE": f"({', '.join(states)},)",
-        "SLOPE": f"slope{call}",
+        "SLOPE": f"one_slope{call}",
     }
     blocks = {
         "LOAD": [f"{name} = lx[{k}, l]" for k, name in enumerate(states)]
@@ -426,7 +444,7 @@ def _expand(text: str, source: StepSource, *, disturb: bool = False) -> str:
         "LOAD_ORBIT": [f"{name} = x[{k}, m]" for k, name in enumerate(states)]
         + [f"{name} = c[{k}, m]" for k, name in enumerate(coefficients)],
         "STORE": [f"lx[{k}, l] = {name}" for k, name in enumerate(states)],
-        "STEP": [f"{', '.join(states)} = step{call}"],
+        "STEP": [f"{', '.join(states)} = {step}{call}"],
     }
     if disturb:
         blocks["STEP"] += [*DISTURB, *(f"{name} = {name} * factor" for name in states)]
