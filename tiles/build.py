@@ -64,7 +64,7 @@ def build(
     header : mapping
         JSON-able; kept in the index, see INDEX.md. An unfinished index with another header is not continued.
     run : callable
-        Scheduler of the tasks. Each holds one strip, and returns compressed tiles.
+        Scheduler of the tasks. Each holds one strip and compressed tiles, and stores its tiles.
     cells_per_strip : int
         At most so many cells (of 4 bytes) are asked of the source at once, but at least one column.
     unfinished : Path, optional
@@ -105,7 +105,7 @@ def build(
 
 @dataclass
 class _Harvest:
-    """What a task returns: encoded tiles and per-column numbers."""
+    """What a task makes: encoded tiles and per-column numbers."""
 
     tiles: list[tuple[Address, Encoded]] = field(default_factory=list)
     columns: list[tuple[int, int, NDArray[np.uint64]]] = field(default_factory=list)
@@ -113,21 +113,22 @@ class _Harvest:
 
 def _run_stage(stage: Stage, index: Index, run: Run, leaf: Leaf) -> None:
     built = {column for column, _ in index.built_columns(stage.top)}
-
-    def keep(harvest: _Harvest) -> None:
-        with written(index.path), index.transaction():
-            index.put_encoded(harvest.tiles)
-            for level, column, numbers in harvest.columns:
-                index.put_columns(level, column, numbers)
-
     missing = (column for column in range(2**stage.top) if column not in built)
-    run((partial(_harvest, stage, leaf, column) for column in missing), keep)
+    run((partial(_build_column, stage, index, leaf, column) for column in missing), lambda _: None)
 
 
-def _harvest(stage: Stage, leaf: Leaf, column: int) -> _Harvest:
+def _build_column(stage: Stage, index: Index, leaf: Leaf, column: int) -> None:
+    """Build one tile column of the coarsest level of a stage, and store it with all finer ones in it.
+
+    The tiles are stored here and not by the caller of the scheduler: what is finished is safe at once, and
+    no results wait in memory.
+    """
     harvest = _Harvest()
     _grow(stage, leaf, stage.top, column, harvest)
-    return harvest
+    with written(index.path), index.transaction():
+        index.put_encoded(harvest.tiles)
+        for level, at, numbers in harvest.columns:
+            index.put_columns(level, at, numbers)
 
 
 def _grow(

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import tempfile
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -132,7 +131,6 @@ class _Pieces:
                 self._file.write(piece.data)
                 self._found.setdefault(row, []).append((left, len(piece), piece.dtype, self._size))
                 self._size += piece.nbytes
-        self._file.flush()
 
     def tile(self, row: int) -> Counts | None:
         """Return the tile of a row."""
@@ -140,6 +138,7 @@ class _Pieces:
             return None
         tile = np.zeros((TILE, TILE), np.uint32)
         for left, columns, kind, offset in self._found[row]:
-            raw = os.pread(self._file.fileno(), columns * TILE * kind.itemsize, offset)
+            self._file.seek(offset)
+            raw = self._file.read(columns * TILE * kind.itemsize)
             tile[left : left + columns] = np.frombuffer(raw, kind).reshape(columns, TILE)
         return tile

@@ -130,9 +130,9 @@ class Index(Store):
     def counts_digest(self) -> str:
         """Return a digest of all counts of the deepest level pair, 64 hexadecimal digits.
 
-        It depends on the counts and their addresses only: BLAKE2b over the tiles' keys and digests in order.
+        It depends on the counts and their addresses only: SHA-256 over the tiles' keys and digests in order.
         """
-        digest = hashlib.blake2b(digest_size=32)
+        digest = hashlib.sha256()
         for blobs in self._db.execute(f"SELECT tile_column, tile_row, digest {_IN_ORDER}", self.pairs[-1]):
             digest.update(b"".join(blobs))
         return digest.hexdigest()

@@ -66,11 +66,15 @@ def join_up(lower: Counts | None, upper: Counts | None) -> Counts | None:
 
 
 def tile_rows(counts: Counts) -> Rows:
-    """Return a function that cuts a tile column, shape (256, 256 * n), into tiles; None for an empty one."""
+    """Return a function that cuts a tile column, shape (256, 256 * n), into tiles; None for an empty one.
+
+    The tiles are copies: rows of a column that lie a power of two apart share few places in a processor's
+    cache, so each further pass over them in place would come from memory.
+    """
+    occupied = counts.reshape(TILE, -1, TILE).max(axis=2).any(axis=0)
 
     def cut(row: int) -> Counts | None:
-        tile = counts[:, row * TILE : (row + 1) * TILE]
-        return tile if tile.max() else None
+        return counts[:, row * TILE : (row + 1) * TILE].copy() if occupied[row] else None
 
     return cut
 

@@ -21,13 +21,13 @@ from tiles.grid import TILE, Address, Pair
 from tiles.index import Index
 from tiles.meta import LAYER, meta, runs_where, script
 from tiles.pyramid import Counts
-from tiles.shading import Fit, colour_table, shade_counts
+from tiles.shading import LEVELS, Fit, colour_table, shade_counts
 from tiles.store import Readers, written
 from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
 _PAGE_FILES = (".html", ".css", ".js")
-_SHORT_COUNTS = 1 << 16
+_TABLE_SIZES = (1 << 16, 1 << 20)
 
 
 def build_site(
@@ -104,7 +104,7 @@ def pixels(index: Index, fit: Fit, table: NDArray[np.uint8], address: Address) -
 
 @dataclass
 class Shades:
-    """Shades tiles of one up level: a table look-up where all columns of a tile had the same exposure.
+    """Shades tiles of one up level, by a table look-up where all columns of a tile had the same exposure.
 
     Attributes
     ----------
@@ -127,15 +127,23 @@ class Shades:
 
     def shade(self, counts: Counts, exposure: NDArray[np.uint64]) -> NDArray[np.uint8]:
         """Return ``tiles.shading.shade_counts(counts, exposure, cell_height, fit)``."""
-        if counts.dtype.itemsize > 2 or exposure.min() != exposure.max():
-            return shade_counts(counts, exposure, self.cell_height, self.fit)
-        return np.take(self._table(int(exposure[0])), counts)
+        if exposure.min() == exposure.max():
+            table = self._table(int(exposure[0]))
+            if counts.dtype.itemsize <= 2:
+                return np.take(table, counts)
+            if table[-1] == LEVELS:  # and so has every larger count
+                return np.take(table, np.minimum(counts, table.size - 1))
+        return shade_counts(counts, exposure, self.cell_height, self.fit)
 
     def _table(self, exposure: int) -> NDArray[np.uint8]:
+        """Return the shades of counts from 0: of all that fit 2 bytes, or up to the highest shade."""
         if exposure not in self._tables:
-            counts = np.arange(_SHORT_COUNTS, dtype=np.uint32)[None]
-            shades = shade_counts(counts, np.array([exposure], np.uint64), self.cell_height, self.fit)
-            self._tables[exposure] = shades[0]
+            for size in _TABLE_SIZES:
+                counts = np.arange(size, dtype=np.uint32)[None]
+                table = shade_counts(counts, [exposure], self.cell_height, self.fit)[0]
+                if table[-1] == LEVELS:
+                    break
+            self._tables[exposure] = table
         return self._tables[exposure]
 
 
@@ -157,7 +165,7 @@ def _write_column(
         exposure = _exposure(index, pair[0], column)
         for row, counts in index.tiles_of_column(pair, column):
             picture = png.encode(shades.shade(counts, exposure).T[::-1], table)
-            with open(growing / f"{row}.png", "wb") as file:
+            with open(f"{growing}/{row}.png", "wb", buffering=0) as file:
                 file.write(picture)
         growing.rename(folder)
 

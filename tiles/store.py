@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import sqlite3
+import threading
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from functools import partial
@@ -17,7 +18,7 @@ from tiles.errors import IndexRefused, OutputFailed
 S = TypeVar("S", bound="Store")
 VERSION = 1
 _APPLICATION = 0x74696C65
-_PAGES_BEFORE_CHECKPOINT = 8192
+_PAGES_BEFORE_CHECKPOINT = 4096
 _SCHEMA = """
 CREATE TABLE tiles (across_level INTEGER NOT NULL, up_level INTEGER NOT NULL, tile_column BLOB NOT NULL,
     tile_row BLOB NOT NULL, digest BLOB NOT NULL, counts BLOB NOT NULL,
@@ -31,12 +32,13 @@ CREATE TABLE records (name TEXT PRIMARY KEY, json TEXT NOT NULL) WITHOUT ROWID;
 class Store:
     """An open file. Make one with :meth:`create` or :meth:`open`; it is a context manager.
 
-    One connection serves one thread at a time; several may read one file while one writes it.
+    One connection serves one thread at a time; transactions of several threads wait for one another.
     """
 
     def __init__(self, path: Path, connection: sqlite3.Connection) -> None:
         self.path = path
         self._db = connection
+        self._turn = threading.RLock()
 
     @classmethod
     def create(cls, path: Path, header: Mapping[str, Any]) -> Self:
@@ -57,7 +59,7 @@ class Store:
         """
         with written(path):
             connection = sqlite3.connect(path, isolation_level=None, check_same_thread=False)
-            connection.execute("PRAGMA page_size = 4096")
+            connection.execute("PRAGMA page_size = 8192")
             connection.execute(f"PRAGMA application_id = {_APPLICATION}")
             connection.execute(f"PRAGMA user_version = {VERSION}")
             store = cls(path, connection)
@@ -100,8 +102,9 @@ class Store:
         return store
 
     def close(self) -> None:
-        """Close the file."""
-        self._db.close()
+        """Close the file, once a transaction that is under way has ended."""
+        with self._turn:
+            self._db.close()
 
     def __enter__(self) -> Self:
         return self
@@ -114,13 +117,14 @@ class Store:
     @contextmanager
     def transaction(self) -> Iterator[None]:
         """Make what is written inside appear whole or not at all."""
-        self._db.execute("BEGIN IMMEDIATE")
-        try:
-            yield
-        except BaseException:
-            self._db.rollback()
-            raise
-        self._db.execute("COMMIT")
+        with self._turn:
+            self._db.execute("BEGIN IMMEDIATE")
+            try:
+                yield
+            except BaseException:
+                self._db.rollback()
+                raise
+            self._db.execute("COMMIT")
 
     @contextmanager
     def reading(self) -> Iterator[None]:

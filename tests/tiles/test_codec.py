@@ -52,8 +52,40 @@ def test_one_count_changes_the_digest():
     assert encode(counts).digest != encode(other).digest
 
 
-def test_a_stream_of_another_size_is_no_tile():
-    with pytest.raises(ValueError, match="not 3"):
-        decode(zlib.compress(bytes(3 * TILE * TILE)))
-    with pytest.raises(ValueError, match="reshape"):
-        decode(zlib.compress(bytes(100)))
+def sparse(cells, largest, seed=0):
+    rng = np.random.default_rng(seed)
+    counts = np.zeros(TILE * TILE, np.uint64)
+    counts[rng.choice(TILE * TILE, cells, replace=False)] = rng.integers(
+        1, largest, cells, dtype=np.uint64, endpoint=True
+    )
+    return counts.reshape(TILE, TILE)
+
+
+@pytest.mark.parametrize("cells", [1, 700, 8191, 8192, 8193, 20_000])
+@pytest.mark.parametrize("largest", [1, 255, 70_000, 2**40])
+def test_tiles_with_few_occupied_cells(cells, largest):
+    counts = sparse(cells, largest)
+    assert np.array_equal(decode(encode(counts).blob), counts)
+
+
+def test_few_large_counts_among_many_small_ones():
+    counts = sparse(30_000, 200) + sparse(50, 2**30, seed=1)
+    assert np.array_equal(decode(encode(counts).blob), counts)
+
+
+def test_a_plane_of_few_bytes_is_listed():
+    raw = zlib.decompress(encode(sparse(8192, 255)).blob)
+    assert len(raw) == 1 + 4 + 3 * 8192
+    raw = zlib.decompress(encode(sparse(8193, 255)).blob)
+    assert len(raw) == 1 + 4 + TILE * TILE
+    counts = np.zeros((TILE, TILE), np.uint32)
+    counts[3, 7], counts[200, 255] = 258, 2
+    assert zlib.decompress(encode(counts).blob) == bytes(
+        [2, 2, 0, 0, 0, 3, 200, 7, 255, 2, 2, 1, 0, 0, 0, 3, 7, 1]
+    )
+
+
+@pytest.mark.parametrize("raw", [b"", b"\x03", b"\x01\x05\x00\x00\x00abc", b"\x01\x00\x00\x01\x00short"])
+def test_other_streams_are_no_tiles(raw):
+    with pytest.raises(ValueError, match=r"starts with|buffer"):
+        decode(zlib.compress(raw))
