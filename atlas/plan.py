@@ -124,6 +124,17 @@ def check_memory(needed: int, budget: int, what: str, remedy: str) -> None:
         )
 
 
+def check_fits(where: str, pixels: tuple[int, int], needed: int, budget: int) -> None:
+    """Refuse an output that does not fit into the memory budget, with the figure it would need.
+
+    Raises
+    ------
+    TooLarge
+    """
+    what = f"{where}: {pixels[0]} x {pixels[1]} pixels"
+    check_memory(needed, budget, what, "make it smaller or raise --memory")
+
+
 def check_arrays(size: tuple[int, int], budget: int) -> None:
     """Refuse a Dataset of counts and densities that does not fit into the memory budget."""
     columns, rows = size

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import contextlib
+import os
 import sys
 from importlib import import_module
-from typing import Any
+from typing import Any, NoReturn
 
 import click
 
-from tiles.errors import Failure
+from atlas.cli.sentences import no_command, sentence, unknown_command
+from atlas.errors import shown
+from tiles.errors import Failure, Refusal
 
 INTERRUPTED = 130
 
@@ -39,10 +43,8 @@ class _Commands(click.Group):
     def resolve_command(
         self, ctx: click.Context, args: list[str]
     ) -> tuple[str | None, click.Command | None, list[str]]:
-        if args and args[0] not in COMMANDS and not args[0].startswith("-"):
-            from tiles.errors import nearest
-
-            ctx.fail(f"there is no command '{args[0]}'{nearest(args[0], COMMANDS)}")
+        if args and args[0] not in COMMANDS:
+            raise Refusal(unknown_command(args[0], COMMANDS))
         return super().resolve_command(ctx, args)
 
     def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
@@ -50,31 +52,54 @@ class _Commands(click.Group):
             formatter.write_dl(list(COMMANDS.items()))
 
 
-@click.command(cls=_Commands, context_settings={"help_option_names": ["-h", "--help"]})
+@click.command(
+    cls=_Commands,
+    invoke_without_command=True,
+    no_args_is_help=False,
+    context_settings={"help_option_names": ["-h", "--help"]},
+)
 @click.version_option(package_name="iterated-map-atlas", prog_name="atlas")
-def atlas() -> None:
+@click.pass_context
+def atlas(ctx: click.Context) -> None:
     """Bifurcation plates and zoomable tile sets of iterated maps, from formulas in a YAML file."""
+    if ctx.invoked_subcommand is None:
+        raise Refusal(no_command(COMMANDS))
 
 
-def main(arguments: list[str] | None = None) -> Any:
+def main(arguments: list[str] | None = None) -> NoReturn:
     """Run the command line; every failure becomes one sentence and an exit code."""
+    sys.exit(_run(arguments))
+
+
+def _run(arguments: list[str] | None) -> int:
+    for stream in (sys.stdout, sys.stderr):
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="backslashreplace")  # names of files need not be text
     try:
-        code = atlas.main(arguments, standalone_mode=False)
-    except click.exceptions.Exit as end:
-        code = end.exit_code
+        code: Any = atlas.main(arguments, prog_name="atlas", standalone_mode=False)
+        sys.stdout.flush()
+        return code if isinstance(code, int) else 0
     except click.ClickException as problem:
-        problem.show()
-        code = problem.exit_code
+        return _told(sentence(problem), problem.exit_code)
     except Failure as problem:
-        click.echo(f"atlas: {problem}", err=True)
-        code = problem.exit_code
+        return _told(str(problem), problem.exit_code)
     except MemoryError:
-        click.echo("atlas: memory ran out; ask for less or close other programs", err=True)
-        code = 1
+        return _told("memory ran out; ask for less or close other programs", 1)
     except (KeyboardInterrupt, click.Abort):
-        click.echo("atlas: interrupted; finished outputs are kept, a new run goes on from there", err=True)
-        code = INTERRUPTED
-    except BrokenPipeError:
-        sys.stderr.close()
-        code = 0
-    sys.exit(code if isinstance(code, int) else 0)
+        return _told("interrupted; finished outputs are kept, a new run goes on from there", INTERRUPTED)
+    except OSError as problem:
+        _forget_output()
+        place = shown(problem.filename) if problem.filename else "standard output"
+        return _told(f"{place} cannot be used ({problem.strerror or problem})", 1)
+
+
+def _told(message: str, code: int) -> int:
+    with contextlib.suppress(OSError):
+        click.echo(f"atlas: {message}", err=True)
+    return code
+
+
+def _forget_output() -> None:
+    """Let what is still buffered for a closed or full standard output go nowhere."""
+    with contextlib.suppress(OSError, ValueError):
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())

@@ -6,10 +6,10 @@ from pathlib import Path
 
 import click
 
-from atlas.cli.options import workers_and_memory
+from atlas.cli.options import Command, workers_and_memory
 
 
-@click.command()
+@click.command(cls=Command)
 @click.argument("config", type=click.Path(path_type=Path))
 @workers_and_memory
 def command(config: Path, workers: int | None, memory: str | None) -> None:
@@ -20,15 +20,10 @@ def command(config: Path, workers: int | None, memory: str | None) -> None:
     from atlas.cli.tables import need_table
     from atlas.config.digests import normalised
     from atlas.config.load import load
-    from atlas.orbits.schedule import default_workers
-    from atlas.output.batch import check_need, select
-    from atlas.output.forecast import need_of
-    from atlas.plan import parse_memory
+    from atlas.output.batch import needs
 
-    budget = parse_memory(memory)
-    needs = []
-    for name, record in select(load(config), ()).items():
-        need = need_of(record, workers or default_workers())
-        check_need(name, need, budget)
-        needs.append((name, str(normalised(record)["kind"]), need))
-    click.echo(need_table(needs))
+    rows = [
+        (record.name, str(normalised(record)["kind"]), need)
+        for record, need in needs(load(config), workers=workers, memory=memory)
+    ]
+    click.echo(need_table(rows))

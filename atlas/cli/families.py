@@ -4,8 +4,10 @@ from __future__ import annotations
 
 import click
 
+from atlas.cli.options import Command
 
-@click.command()
+
+@click.command(cls=Command)
 @click.argument("name", required=False)
 def command(name: str | None) -> None:
     """List the families of the catalogue, or show one: formula, parameters, domain, source."""

@@ -7,7 +7,21 @@ from typing import Any, TypeVar
 
 import click
 
+from atlas.errors import ConfigRefused, shown
+
+MOST_WORKERS = 1024
 F = TypeVar("F", bound=Callable[..., Any])
+
+
+class Command(click.Command):
+    """A command whose parser says in which command a word was wrong."""
+
+    def parse_args(self, ctx: click.Context, args: list[str]) -> list[str]:
+        try:
+            return super().parse_args(ctx, args)
+        except click.UsageError as problem:
+            problem.ctx = problem.ctx or ctx
+            raise
 
 
 class Interval(click.ParamType[Any]):
@@ -21,7 +35,7 @@ class Interval(click.ParamType[Any]):
         name, equals, ends = value.partition("=")
         low, colon, high = ends.partition(":")
         if not (name.strip() and equals and colon):
-            self.fail(f"'{value}' is no axis; write NAME=LOW:HIGH, for instance r=2.8:4", param, ctx)
+            self.fail(f"{shown(value)} is no axis; write NAME=LOW:HIGH, for instance r=2.8:4", param, ctx)
         return (name.strip(), low.strip(), high.strip())
 
 
@@ -35,19 +49,33 @@ class Setting(click.ParamType[Any]):
             return value
         name, equals, number = value.partition("=")
         if not (name.strip() and equals and number.strip()):
-            self.fail(f"'{value}' sets nothing; write NAME=VALUE, for instance beta=6", param, ctx)
+            self.fail(f"{shown(value)} sets nothing; write NAME=VALUE, for instance beta=6", param, ctx)
         return (name.strip(), number.strip())
+
+
+class Workers(click.ParamType[Any]):
+    """A number of threads."""
+
+    name = "N"
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> Any:
+        text = str(value).strip()
+        if not (text.isascii() and text.isdigit() and len(text) < 9 and 1 <= int(text) <= MOST_WORKERS):
+            self.fail(f"{shown(value)} is not a whole number from 1 to {MOST_WORKERS}", param, ctx)
+        return int(text)
+
+
+def workers_option(function: F) -> F:
+    """Add ``--workers``."""
+    return click.option("--workers", type=Workers(), help="Threads; by default one a processor.")(function)
 
 
 def workers_and_memory(function: F) -> F:
     """Add ``--workers`` and ``--memory``."""
-    workers = click.option(
-        "--workers", type=click.IntRange(1, 1024), help="Threads; by default one a processor."
-    )
     memory = click.option(
         "--memory", metavar="SIZE", help="Budget of the process, such as 2GiB (the default)."
     )
-    return workers(memory(function))
+    return workers_option(memory(function))
 
 
 def settings_of(pairs: tuple[tuple[str, str], ...], option: str) -> dict[str, str]:
@@ -55,6 +83,6 @@ def settings_of(pairs: tuple[tuple[str, str], ...], option: str) -> dict[str, st
     found: dict[str, str] = {}
     for name, value in pairs:
         if name in found:
-            raise click.UsageError(f"{option}: '{name}' is given twice; give it once")
+            raise ConfigRefused(f"{option}: {shown(name)} is given twice; give it once")
         found[name] = value
     return found

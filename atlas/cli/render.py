@@ -6,13 +6,16 @@ from pathlib import Path
 
 import click
 
-from atlas.cli.options import workers_and_memory
+from atlas.cli.options import Command, workers_and_memory
 
 
-@click.command()
+@click.command(cls=Command)
 @click.argument("config", type=click.Path(path_type=Path))
 @click.option("--only", multiple=True, metavar="NAME", help="Only this output; may be given several times.")
-@click.option("--out", type=click.Path(path_type=Path), default=Path("out"), show_default=True)
+@click.option(
+    "--out", type=click.Path(path_type=Path), metavar="DIR", default=Path("out"), show_default=True,
+    help="Folder of the outputs.",
+)  # fmt: skip
 @workers_and_memory
 @click.option("--force", is_flag=True, help="Make again what is unchanged.")
 def command(

@@ -5,9 +5,8 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Any
 
-import click
-
 from atlas.config.load import Plate, load, plate_from_parts
+from atlas.errors import ConfigRefused, shown
 from atlas.families.catalogue import family as catalogued
 from atlas.families.reader import Family
 
@@ -18,8 +17,8 @@ def drawn_family(given: str) -> Family:
         return catalogued(given)
     own = load(Path(given)).families
     if len(own) != 1:
-        raise click.UsageError(
-            f"{given} defines {len(own)} families; atlas draw needs a config with exactly one"
+        raise ConfigRefused(
+            f"{shown(given)[1:-1]} defines {len(own)} families; atlas draw needs a config with exactly one"
         )
     return next(iter(own.values()))
 
@@ -35,6 +34,6 @@ def plate_of(
     left, right = across or family.across, up or family.up
     if left is None or right is None:
         missing = "--across" if left is None else "--up"
-        raise click.UsageError(f"{missing}: the family '{family.name}' has no view of its own; give one")
+        raise ConfigRefused(f"{missing}: the family '{family.name}' has no view of its own; give one")
     starts = [{name: value} for name, value in start] or None
     return plate_from_parts(family, left, right, starts=starts, name=family.name, **options)

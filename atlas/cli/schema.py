@@ -6,8 +6,10 @@ import json
 
 import click
 
+from atlas.cli.options import Command
 
-@click.command()
+
+@click.command(cls=Command)
 def command() -> None:
     """Print the JSON Schema of the config, for editors that complete and check YAML."""
     from atlas.config.schema import schema

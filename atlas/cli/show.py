@@ -7,8 +7,10 @@ from pathlib import Path
 
 import click
 
+from atlas.cli.options import Command
 
-@click.command()
+
+@click.command(cls=Command)
 @click.argument("file", type=click.Path(path_type=Path))
 def command(file: Path) -> None:
     """Print the record of how FILE was made: config, versions, counts digest, shares.

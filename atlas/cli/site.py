@@ -6,14 +6,16 @@ from pathlib import Path
 
 import click
 
+from atlas.cli.options import Command, workers_option
 
-@click.command()
+
+@click.command(cls=Command)
 @click.argument("index", type=click.Path(path_type=Path))
-@click.option("--out", type=click.Path(path_type=Path), required=True, help="The folder to write.")
+@click.option("--out", type=click.Path(path_type=Path), metavar="DIR", required=True, help="Folder to write.")
 @click.option("--shading", metavar="NAME", help="How density becomes shade; by default as it was built.")
 @click.option("--palette", metavar="NAME", help="Colours; by default as it was built.")
 @click.option("--background", metavar="#RRGGBB", help="Colour of empty cells.")
-@click.option("--workers", type=click.IntRange(1, 1024), help="Threads; by default one a processor.")
+@workers_option
 def command(
     index: Path,
     out: Path,

@@ -49,7 +49,7 @@ class Sampled:
     rows: int
     samples_of_each_orbit: int
     exposure: int
-    filled_by_repeats: int
+    filled_by_repeats: int | None = None
 
     @property
     def total(self) -> int:
@@ -57,11 +57,13 @@ class Sampled:
         return self.columns * self.exposure
 
     def record(self) -> dict[str, int]:
-        """Return the numbers by name."""
-        return {
+        """Return the numbers by name; those that are not known are left out."""
+        numbers = {
             "columns": self.columns,
             "rows": self.rows,
             "of_each_orbit": self.samples_of_each_orbit,
             "of_each_column": self.exposure,
-            "filled_by_repeats": self.filled_by_repeats,
         }
+        if self.filled_by_repeats is not None:
+            numbers["filled_by_repeats"] = self.filled_by_repeats
+        return numbers

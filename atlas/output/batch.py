@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -12,14 +13,14 @@ from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.config.load import Config
 from atlas.errors import ConfigRefused
 from atlas.orbits.schedule import Schedule, default_workers, schedule
-from atlas.output.folders import check_folder
+from atlas.output.folders import check_files, check_folder, check_site
 from atlas.output.forecast import need_of
 from atlas.output.ledger import Ledger
-from atlas.output.printing import Made, make_sheet, sheet_of
+from atlas.output.printing import Made, check_lettering, make_sheet, sheet_of
 from atlas.output.reporter import Reporter, Silence
-from atlas.output.tileset import Places, make_tile_set, tile_counter
-from atlas.plan import Need, check_memory, parse_memory
-from tiles.errors import Failure, OutputFailed, nearest
+from atlas.output.tileset import Places, make_tile_set
+from atlas.plan import Need, check_fits, parse_memory
+from tiles.errors import Failure, OutputFailed, Refusal, nearest
 
 Record = Plate | TileSet | Figure
 Make = Callable[[Schedule, Reporter], Made]
@@ -129,24 +130,62 @@ def select(config: Config, only: Sequence[str]) -> dict[str, Record]:
     return {name: record for name, record in outputs.items() if not only or name in only}
 
 
+def needs(
+    config: Config, *, workers: int | None = None, memory: str | int | None = None
+) -> list[tuple[Record, Need]]:
+    """Return the outputs of a config and what each needs, without computing anything.
+
+    Parameters
+    ----------
+    config : Config
+    workers, memory
+        As for :func:`render`.
+
+    Raises
+    ------
+    Refusal
+        Where :func:`render` would refuse the config.
+    """
+    budget = parse_memory(memory)
+    found = []
+    for record in select(config, ()).values():
+        with _named(config):
+            found.append((record, _checked_need(record, workers or default_workers(), budget)))
+    return found
+
+
 def _plan(config: Config, out: Path, only: Sequence[str], workers: int, budget: int) -> list[_Planned]:
     planned = []
-    for name, record in select(config, only).items():
-        check_need(name, need_of(record, workers), budget)
+    for record in select(config, only).values():
+        with _named(config):
+            _checked_need(record, workers, budget)
         planned.append(_planned(record, out))
     return planned
 
 
-def check_need(name: str, need: Need, budget: int) -> None:
-    """Refuse an output that does not fit into the memory budget."""
-    check_memory(need.memory, budget, name, "make it smaller or raise --memory")
+@contextmanager
+def _named(config: Config) -> Iterator[None]:
+    """Put the file's name before a refusal that only knows the output's."""
+    try:
+        yield
+    except Refusal as problem:
+        raise type(problem)(f"{config.path}: {problem}" if config.path else str(problem)) from None
+
+
+def _checked_need(record: Record, workers: int, budget: int) -> Need:
+    need = need_of(record, workers)
+    check_fits(record.name, need.pixels, need.memory, budget)
+    if not isinstance(record, TileSet):
+        check_lettering(sheet_of(record))
+    return need
 
 
 def _planned(record: Record, out: Path) -> _Planned:
     request = digest(record)
     if isinstance(record, TileSet):
         places, tile_set = Places.of(out, record.name), record
-        tile_counter(record)
+        check_site(places.site)
+        check_files([places.index])
         return _Planned(
             record.name,
             "tile set",
@@ -156,8 +195,7 @@ def _planned(record: Record, out: Path) -> _Planned:
         )
     sheet = sheet_of(record)
     files = sheet.files(out)
-    for view in sheet.views:
-        view.counter()
+    check_files(files.values())
     return _Planned(
         record.name,
         "figure" if isinstance(record, Figure) else "plate",

@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 import tempfile
+from collections.abc import Iterable
 from pathlib import Path
 
-from atlas.errors import ConfigRefused
+from atlas.errors import ConfigRefused, shown
+
+PAGE = "meta.js"
 
 
 def check_folder(out: Path) -> None:
-    """Refuse an output folder that cannot be written to, before any work.
+    """Make an output folder, or refuse one that cannot be written to, before any work.
 
     Raises
     ------
@@ -19,8 +22,42 @@ def check_folder(out: Path) -> None:
         out.mkdir(parents=True, exist_ok=True)
         with tempfile.TemporaryFile(dir=out):
             pass
-    except OSError as problem:
-        reason = problem.strerror or str(problem)
+    except (OSError, ValueError) as problem:
+        reason = getattr(problem, "strerror", None) or str(problem)
         raise ConfigRefused(
-            f"--out: the folder '{out}' cannot be written to ({reason}); choose another one"
+            f"--out: the folder {shown(str(out))} cannot be written to ({reason}); choose another one"
         ) from problem
+
+
+def check_files(files: Iterable[Path]) -> None:
+    """Refuse files that cannot be replaced because folders have their names.
+
+    Raises
+    ------
+    ConfigRefused
+    """
+    for path in files:
+        if path.is_dir():
+            raise ConfigRefused(f"--out: {shown(str(path))} is a folder; choose another name for the file")
+
+
+def check_site(site: Path) -> None:
+    """Refuse a folder for a static site that holds anything else, which would be lost.
+
+    Raises
+    ------
+    ConfigRefused
+    """
+    try:
+        foreign = any(site.iterdir()) and not (site / PAGE).is_file()
+    except FileNotFoundError:
+        return
+    except OSError as problem:
+        raise ConfigRefused(
+            f"--out: {shown(str(site))} cannot be used ({problem.strerror}); choose another folder"
+        ) from problem
+    if foreign:
+        raise ConfigRefused(
+            f"--out: the folder {shown(str(site))} holds other files, which a site would replace; "
+            "name a new folder"
+        )

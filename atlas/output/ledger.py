@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 from collections.abc import Iterable, Mapping
 from hashlib import blake2b
 from pathlib import Path
@@ -51,16 +52,33 @@ class Ledger:
 
 
 def fingerprint(path: Path) -> str | None:
-    """Return a digest of a file's bytes, or of a folder's names and sizes; None where there is nothing."""
+    """Return a digest of a file's bytes, or of a folder's names and files; None where there is nothing."""
     state = blake2b(digest_size=16)
     try:
-        if path.is_dir():
-            for inner in sorted(path.rglob("*")):
-                state.update(f"{inner.relative_to(path)}\0{inner.stat().st_size}\n".encode())
-        else:
-            with path.open("rb") as file:
-                while block := file.read(1 << 20):
-                    state.update(block)
+        if not path.is_dir():
+            _add_file(state, path)
+        for folder, inner, names in os.walk(path, onerror=_refuse):
+            inner.sort()
+            state.update(_framed(os.path.relpath(folder, path)))
+            for name in sorted(names):
+                state.update(_framed(name))
+                _add_file(state, Path(folder, name))
     except OSError:
         return None
     return state.hexdigest()
+
+
+def _add_file(state: blake2b, path: Path) -> None:
+    with path.open("rb") as file:
+        state.update(os.fstat(file.fileno()).st_size.to_bytes(8, "little"))
+        while block := file.read(1 << 20):
+            state.update(block)
+
+
+def _framed(name: str) -> bytes:
+    encoded = os.fsencode(name)
+    return len(encoded).to_bytes(8, "little") + encoded
+
+
+def _refuse(problem: OSError) -> None:
+    raise problem

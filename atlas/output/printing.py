@@ -18,14 +18,15 @@ from atlas.figure.layout import layout
 from atlas.figure.lettering import axis_text, plain
 from atlas.figure.panels import request_of
 from atlas.figure.pieces import PanelText, Raster
+from atlas.figure.typeset import check_characters
 from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import Histogram, count_histogram
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
-from atlas.output.folders import check_folder
+from atlas.output.folders import check_files, check_folder
 from atlas.output.reporter import Reporter, Silence
-from atlas.plan import BASE_MEMORY, check_memory, parse_memory
+from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
 from tiles.shading import Fit, colour_table, fit_counts, key_labels, shade_counts
 from tiles.window import Axis
@@ -107,6 +108,22 @@ def sheet_of(record: Plate | Figure) -> Sheet:
     return Sheet(record, page, tuple(views))
 
 
+def check_lettering(sheet: Sheet) -> None:
+    """Refuse titles, letters, labels and units with characters that the font lacks.
+
+    Raises
+    ------
+    LetteringRefused
+    """
+    words = [sheet.page.title]
+    for panel in sheet.page.panels:
+        words += [panel.title, panel.letter]
+    for view in sheet.views:
+        plate = view.plate
+        words += [label_of(plate, plate.across), label_of(plate, plate.up), _unit(plate)]
+    check_characters(words)
+
+
 def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporter: Reporter) -> Made:
     """Count, shade, set and write a plate or a figure.
 
@@ -173,8 +190,7 @@ def shaded(plate: Plate, counter: OrbitCounter, histogram: Histogram) -> tuple[F
 
 def panel_text(plate: Plate, fit: Fit) -> PanelText:
     """Return what is written around a panel: labels from the family, the key's numbers and caption."""
-    _, unit = plate.family.label_and_unit(plate.up.name)
-    per = f" per {unit}" if unit else ""
+    per = f" per {_unit(plate)}" if _unit(plate) else ""
     log = " of the logarithm" if plate.up.scale == "log" else ""
     return PanelText(
         label_of(plate, plate.across),
@@ -182,6 +198,10 @@ def panel_text(plate: Plate, fit: Fit) -> PanelText:
         key_labels(fit) if plate.key else (),
         f"density{per}{log}" if plate.key else "",
     )
+
+
+def _unit(plate: Plate) -> str:
+    return plate.family.label_and_unit(plate.up.name)[1]
 
 
 def label_of(plate: Plate, axis: Axis) -> str:
@@ -223,9 +243,11 @@ def draw_plate(
     """
     files = files_by_format([Path(path) for path in out])
     sheet = sheet_of(replace(plate, formats=tuple(files)))
-    check_memory(sheet.memory, parse_memory(memory), plate.name, "make it smaller or raise --memory")
+    check_fits(sheet.record.name, sheet.record.pixels, sheet.memory, parse_memory(memory))
+    check_lettering(sheet)
     for path in files.values():
         check_folder(path.parent)
+    check_files(files.values())
     with schedule(workers) as opened:
         return make_sheet(sheet, files, opened, reporter or Silence())
 

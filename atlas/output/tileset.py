@@ -12,13 +12,16 @@ from numpy.typing import NDArray
 
 from atlas.config.digests import counting_digest, normalised
 from atlas.config.jobs import TileSet
+from atlas.config.keys import JOB_KEYS
 from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
+from atlas.output.folders import check_folder, check_site
 from atlas.output.printing import Made
 from atlas.output.reporter import Reporter, Silence
+from atlas.reading.place import COMMAND_LINE
 from tiles.build import build
 from tiles.index import Index
 from tiles.site import build_site
@@ -52,8 +55,6 @@ class StripSource:
     def __init__(self, counter: OrbitCounter, schedule: Schedule, reporter: Reporter) -> None:
         self.counter, self.schedule, self.reporter = counter, schedule, reporter
         self.width = block_width(counter)
-        self.filled = 0
-        self.on_repelling = 0
 
     def __call__(self, first: int, last: int) -> Strip:
         """Return the strip of columns ``first … last - 1``; called in worker threads."""
@@ -67,8 +68,6 @@ class StripSource:
             counted = self.counter.count(begin, end, out=counts[at], stop=self.schedule.stop)
             for name, array in numbers.items():
                 array[at] = getattr(counted.strip, name)
-            self.filled += counted.filled
-            self.on_repelling += counted.on_repelling
             self.reporter.advance((end - begin) * self.counter.exposure)
         return Strip(first, counts, **numbers)
 
@@ -94,7 +93,7 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
 
     def finish(index: Index) -> None:
         index.put_fit(index.fit_from(shading=job.shading))
-        made.append(_made(job, counter, index, source.filled))
+        made.append(_made(job, counter, index))
         index.put_certificate(made[0].record)
 
     reporter.begin(job.name, "counting", counter.columns * counter.exposure)
@@ -160,14 +159,14 @@ def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
     }
 
 
-def _made(job: TileSet, counter: OrbitCounter, index: Index, filled: int) -> Made:
+def _made(job: TileSet, counter: OrbitCounter, index: Index) -> Made:
     totals = index.totals()
     exposure = totals["exposure"]
     shares: dict[str, Any] = {
         name: totals[name] / exposure for name in ("below", "above", "escaped", "unsettled")
     }
     shares["collapsed_orbits"] = totals["collapsed"]
-    sampled = Sampled(counter.columns, counter.rows, counter.rules.samples, counter.exposure, filled)
+    sampled = Sampled(counter.columns, counter.rows, counter.rules.samples, counter.exposure)
     record = certificate(
         "tile set", job.name, normalised(job), index.counts_digest(), shares, sampled.record()
     )
@@ -200,16 +199,21 @@ def rebuild_site(
     ------
     IndexRefused
         When there is no finished index.
+    ConfigRefused
+        For a shading, a palette or a colour that does not exist, and for a folder that holds anything else.
     OutputFailed
         When the disk is full or the folder is closed.
     """
+    given = {"shading": shading, "palette": palette, "background": background, "missing": None}
+    chosen = {
+        key.name: key.read(given[key.name], COMMAND_LINE.at(key.name))
+        for key in JOB_KEYS
+        if given.get(key.name) is not None
+    }
+    check_site(site)
     with Index.open(index) as opened_index:
         plate = opened_index.header.get("plate") or {}
-    colours = {
-        "shading": shading or plate.get("shading", "equalised"),
-        "palette": palette or plate.get("palette", "blue"),
-        "background": background or plate.get("background"),
-        "missing": plate.get("missing"),
-    }
+    check_folder(site.parent)
+    colours = {name: chosen.get(name, plate.get(name)) for name in given}
     with schedule(workers) as opened:
         make_site(index, site, colours, opened, reporter or Silence())
