@@ -163,8 +163,8 @@ def exp(x):  # type: ignore[no-untyped-def]
     w = s * s
     tail = fma(fma(high, w, middle), w, low)
     value = (1.0 + fma(tail, s, r)) * float_from((bits_of(shifted) << 52) + ONE_BITS)
-    value = value if x > -708.39 else (0.0 if x <= -708.39 else x)
-    return value if not x > 709.78 else np.inf
+    value = 0.0 if x < -708.39 else value
+    return np.inf if x > 709.78 else value
 
 
 @inlined
