@@ -8,7 +8,8 @@ from pathlib import Path
 
 from atlas.errors import ConfigRefused, shown
 
-PAGE = "meta.js"
+OF_A_SITE = ("meta.js", "page.js")
+LONGEST_PATH = 4096
 
 
 def check_folder(out: Path) -> None:
@@ -25,7 +26,7 @@ def check_folder(out: Path) -> None:
     except (OSError, ValueError) as problem:
         reason = getattr(problem, "strerror", None) or str(problem)
         raise ConfigRefused(
-            f"--out: the folder {shown(str(out))} cannot be written to ({reason}); choose another one"
+            f"--out: the folder {_named(out)} cannot be written to ({reason}); choose another one"
         ) from problem
 
 
@@ -38,7 +39,7 @@ def check_files(files: Iterable[Path]) -> None:
     """
     for path in files:
         if path.is_dir():
-            raise ConfigRefused(f"--out: {shown(str(path))} is a folder; choose another name for the file")
+            raise ConfigRefused(f"--out: {_named(path)} is a folder; choose another name for the file")
 
 
 def check_site(site: Path) -> None:
@@ -49,15 +50,19 @@ def check_site(site: Path) -> None:
     ConfigRefused
     """
     try:
-        foreign = any(site.iterdir()) and not (site / PAGE).is_file()
+        foreign = any(site.iterdir()) and not any((site / name).is_file() for name in OF_A_SITE)
     except FileNotFoundError:
         return
     except OSError as problem:
         raise ConfigRefused(
-            f"--out: {shown(str(site))} cannot be used ({problem.strerror}); choose another folder"
+            f"--out: {_named(site)} cannot be used ({problem.strerror}); choose another folder"
         ) from problem
     if foreign:
         raise ConfigRefused(
-            f"--out: the folder {shown(str(site))} holds other files, which a site would replace; "
+            f"--out: the folder {_named(site)} holds other files, which a site would replace; "
             "name a new folder"
         )
+
+
+def _named(path: Path) -> str:
+    return shown(str(path), LONGEST_PATH)

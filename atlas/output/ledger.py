@@ -36,7 +36,8 @@ class Ledger:
         entry = self._entries.get(name)
         if not isinstance(entry, dict) or entry.get("request") != request:
             return False
-        return bool(entry.get("files") == self._digests(files))
+        found = self._digests(files)
+        return None not in found.values() and bool(entry.get("files") == found)
 
     def note(self, name: str, request: str, files: Iterable[Path]) -> None:
         """Enter a finished output."""
@@ -55,17 +56,22 @@ def fingerprint(path: Path) -> str | None:
     """Return a digest of a file's bytes, or of a folder's names and files; None where there is nothing."""
     state = blake2b(digest_size=16)
     try:
-        if not path.is_dir():
+        if path.is_dir():
+            _add_folder(state, path)
+        else:
             _add_file(state, path)
-        for folder, inner, names in os.walk(path, onerror=_refuse):
-            inner.sort()
-            state.update(_framed(os.path.relpath(folder, path)))
-            for name in sorted(names):
-                state.update(_framed(name))
-                _add_file(state, Path(folder, name))
     except OSError:
         return None
     return state.hexdigest()
+
+
+def _add_folder(state: blake2b, path: Path) -> None:
+    for folder, inner, names in os.walk(path, onerror=_refuse):
+        inner.sort()
+        state.update(_framed(os.path.relpath(folder, path)))
+        for name in sorted(names):
+            state.update(_framed(name))
+            _add_file(state, Path(folder, name))
 
 
 def _add_file(state: blake2b, path: Path) -> None:
