@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, TypeVar
 
+from atlas import errors
 from atlas.config.assembly import read_figure, read_plate, read_tile_set
 from atlas.config.digests import counting_digest, digest, normalised
 from atlas.config.jobs import COUNTING_VERSION, Figure, Job, Plate, TileSet
@@ -39,6 +40,7 @@ __all__ = [
     "plate_from_parts",
 ]
 
+LONGEST_PATH = 4096
 R = TypeVar("R")
 AxisLike = Axis | Sequence[Any] | Mapping[str, Any]
 
@@ -88,7 +90,7 @@ def load(path: str | os.PathLike[str]) -> Config:
     ConfigRefused, FamilyRefused, FormulaRefused
         With one sentence that names the file, the place, what was found and what is allowed.
     """
-    where = shown(os.fspath(path))[1:-1]
+    where = errors.shown(os.fspath(path), LONGEST_PATH)[1:-1]
     return parse_config(_file_content(Path(path), where), where, path=Path(path))
 
 

@@ -24,7 +24,7 @@ def check_folder(out: Path) -> None:
         with tempfile.TemporaryFile(dir=out):
             pass
     except (OSError, ValueError) as problem:
-        reason = getattr(problem, "strerror", None) or str(problem)
+        reason = "it is a file" if out.is_file() else getattr(problem, "strerror", None) or str(problem)
         raise ConfigRefused(
             f"--out: the folder {_named(out)} cannot be written to ({reason}); choose another one"
         ) from problem
@@ -49,10 +49,10 @@ def check_site(site: Path) -> None:
     ------
     ConfigRefused
     """
+    if not site.exists():
+        return
     try:
         foreign = any(site.iterdir()) and not any((site / name).is_file() for name in OF_A_SITE)
-    except FileNotFoundError:
-        return
     except OSError as problem:
         raise ConfigRefused(
             f"--out: {_named(site)} cannot be used ({problem.strerror}); choose another folder"
