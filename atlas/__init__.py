@@ -19,14 +19,14 @@ if TYPE_CHECKING:
     from atlas.output.batch import render as render
     from atlas.output.certificate import read as read_certificate
     from atlas.output.printing import draw_plate as draw_plate
-    from atlas.points import bin_points as bin_points
+    from atlas.points.binning import bin_points as bin_points
     from tiles.window import Axis as Axis
     from tiles.window import View as View
 
 _HOMES = {
     "Axis": ("tiles.window", "Axis"),
     "View": ("tiles.window", "View"),
-    "bin_points": ("atlas.points", "bin_points"),
+    "bin_points": ("atlas.points.binning", "bin_points"),
     "draw_axes": ("atlas.figure.axes_image", "draw_axes"),
     "draw_plate": ("atlas.output.printing", "draw_plate"),
     "family": ("atlas.families.catalogue", "family"),

@@ -25,30 +25,35 @@ TABLE = """
  5  tiles.build tiles.site
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
-10  atlas.output atlas.reading
+10  atlas.output atlas.points atlas.reading
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
 12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger
 13  atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation atlas.formula.symbolic
 13  atlas.arithmetic.float64 atlas.reading.kinds atlas.reading.yaml_text atlas.reading.sheet
-13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader
+13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader atlas.points.tables
 14  atlas.formula.differentiation atlas.reading.section atlas.figure.boxes
+14  atlas.points.files atlas.points.cells
 15  atlas.formula.expression atlas.reading.view_kinds atlas.figure.pieces atlas.figure.vector_files
+15  atlas.points.opening
 16  atlas.families.kinds atlas.families.map_family atlas.reading.sheet_kinds atlas.figure.painting
+16  atlas.points.intervals
 17  atlas.families.keys atlas.config.keys atlas.figure.raster_files atlas.figure.typeset
 18  atlas.families.reader atlas.config.names
 19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.schema
 20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
+21  atlas.points.jobs
 21  atlas.orbits.kernels atlas.config.load atlas.output.certificate atlas.figure.margins atlas.figure.insets
 22  atlas.orbits.orbit atlas.config.remake atlas.figure.layout atlas.figure.drawing
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate
-24  atlas.orbits.counting atlas.orbits.counts
-25  atlas.output.printing
-26  atlas.output.tileset
+24  atlas.orbits.counting atlas.orbits.counts atlas.points.counting
+25  atlas.output.printing atlas.points.record atlas.points.spool
+26  atlas.output.tileset atlas.points.binning atlas.points.plates
 27  atlas.output.forecast
-28  atlas.output.batch
+28  atlas.output.batch atlas.points.tile_sets
 
-30  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text atlas.cli.requests
+30  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
+30  atlas.cli.requests atlas.cli.point_requests
 31  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
 31  atlas.cli.show atlas.cli.site
 32  atlas.cli

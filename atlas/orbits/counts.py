@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -16,6 +16,7 @@ from atlas.orbits.schedule import schedule
 from atlas.plan import check_arrays, check_counter, parse_memory
 from atlas.reading.place import Place
 from tiles.number import Exact, exact
+from tiles.strip import PER_COLUMN, Strip
 from tiles.tally import density
 from tiles.window import View
 
@@ -117,37 +118,55 @@ def orbit_counts(
 
 def dataset(histogram: Histogram, counter: OrbitCounter) -> Any:
     """Return a histogram as an xarray Dataset, as `orbit_counts` describes it."""
-    import xarray
-
-    view, strip = counter.view, histogram.strip
-    across, up = view.across.name, view.up.name
-    cell = view.up.cell_size(counter.rows)
-    on_across = {
-        name: (across, getattr(strip, name))
-        for name in ("exposure", "below", "above", "escaped", "unsettled", "collapsed")
-    }
-    made = xarray.Dataset(
+    return labelled(
+        counter.view,
+        histogram.strip,
         {
-            "counts": ((up, across), np.ascontiguousarray(strip.counts.T)),
-            "density": ((up, across), np.ascontiguousarray(density(strip.counts, strip.exposure, cell).T)),
-            **on_across,
-        },
-        coords={
-            up: view.up.centres(counter.rows),
-            across: view.across.centres(counter.columns),
-        },
-        attrs={
             "family": counter.family.name,
             "formula": "; ".join(counter.family.formula_lines()),
             "samples": histogram.samples,
             "samples_filled_by_repeats": histogram.filled,
             "orbits_on_repelling_start": histogram.on_repelling,
             "counts_digest": histogram.digest(),
-            "cell_size": cell,
         },
+        counter.family.label_and_unit,
+    )
+
+
+def labelled(
+    view: View,
+    strip: Strip,
+    attributes: Mapping[str, Any],
+    label_and_unit: Callable[[str], tuple[str, str]],
+) -> Any:
+    """Return the counts of a whole view as an xarray Dataset.
+
+    Parameters
+    ----------
+    view : View
+    strip : Strip
+        All columns.
+    attributes : mapping
+        Of the Dataset; ``cell_size`` is added.
+    label_and_unit : callable
+        Returns label and unit of an axis by its name.
+    """
+    import xarray
+
+    columns, rows = strip.counts.shape
+    across, up = view.across.name, view.up.name
+    cell = view.up.cell_size(rows)
+    made = xarray.Dataset(
+        {
+            "counts": ((up, across), np.ascontiguousarray(strip.counts.T)),
+            "density": ((up, across), np.ascontiguousarray(density(strip.counts, strip.exposure, cell).T)),
+            **{name: (across, getattr(strip, name)) for name in PER_COLUMN},
+        },
+        coords={up: view.up.centres(rows), across: view.across.centres(columns)},
+        attrs={**attributes, "cell_size": cell},
     )
     for axis in (view.across, view.up):
-        label, unit = counter.family.label_and_unit(axis.name)
+        label, unit = label_and_unit(axis.name)
         made[axis.name].attrs = {
             "long_name": axis.label or label or axis.name,
             "units": unit,

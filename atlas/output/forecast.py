@@ -57,9 +57,22 @@ def _need_of_tile_set(record: TileSet, workers: int) -> Need:
         2 ** (across + up) for across, up in level_pairs(record.levels.across, record.levels.up, record.pairs)
     )
     seconds = _counting_seconds(counter) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
-    strip = 4 * max(CELLS_PER_STRIP, counter.rows)
-    memory = BASE_MEMORY + workers * (2 * strip + 8 * TILE * counter.rows)
+    memory = building_memory(counter.rows, workers)
     return Need(record.cells, counter.columns * counter.exposure, seconds / workers, memory)
+
+
+def building_memory(rows: int, workers: int) -> int:
+    """Return the estimated peak memory of the process in bytes while a tile set is built.
+
+    Parameters
+    ----------
+    rows : int
+        Cells along the up axis at the deepest level.
+    workers : int
+        Threads.
+    """
+    strip = 4 * max(CELLS_PER_STRIP, rows)
+    return BASE_MEMORY + workers * (2 * strip + 8 * TILE * rows)
 
 
 def _counting_seconds(counter: OrbitCounter) -> float:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 import numpy as np
 
@@ -29,10 +29,32 @@ from atlas.output.reporter import Reporter, Silence
 from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
 from tiles.shading import Fit, colour_table, fit_counts, key_labels, shade_counts
+from tiles.strip import Strip
 from tiles.window import Axis
+from tiles.window import View as Window
 
 BYTES_PER_CELL, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, VECTOR_BYTES_PER_CELL = 6, 2, 8, 2
 """What is alive at the peak, measured: counts and shades of a raster, then the page and its encoder."""
+
+
+class Colours(Protocol):
+    """How densities become colours."""
+
+    @property
+    def shading(self) -> str:
+        """One of `tiles.shading.SHADINGS`."""
+
+    @property
+    def palette(self) -> str:
+        """One of `tiles.palette.PALETTES`."""
+
+    @property
+    def background(self) -> str | None:
+        """Colour of empty cells."""
+
+    @property
+    def missing(self) -> str | None:
+        """Colour of cells without samples."""
 
 
 @dataclass(frozen=True)
@@ -68,11 +90,8 @@ class Sheet:
     @property
     def memory(self) -> int:
         """Estimated peak memory of the process in bytes while it is made."""
-        width, height = self.record.pixels
         cells = [view.columns * view.rows for view in self.views]
-        vector = VECTOR_BYTES_PER_CELL * sum(cells) if {"pdf", "svg"} & set(self.record.formats) else 0
-        sheet = (TIFF_BYTES_PER_PIXEL if "tiff" in self.record.formats else BYTES_PER_PIXEL) * width * height
-        return BASE_MEMORY + BYTES_PER_CELL * max(cells) + sum(cells) + sheet + vector
+        return sheet_memory(self.record.pixels, self.record.formats, cells)
 
     def files(self, out: Path) -> dict[str, Path]:
         """Return the file of each format in an output folder."""
@@ -120,8 +139,26 @@ def check_lettering(sheet: Sheet) -> None:
         words += [panel.title, panel.letter]
     for view in sheet.views:
         plate = view.plate
-        words += [label_of(plate, plate.across), label_of(plate, plate.up), _unit(plate)]
+        words += [label_of(plate, plate.across), label_of(plate, plate.up)]
+        words.append(plate.family.label_and_unit(plate.up.name)[1])
     check_characters(words)
+
+
+def sheet_memory(pixels: tuple[int, int], formats: Sequence[str], cells: Sequence[int]) -> int:
+    """Return the estimated peak memory of the process in bytes while a sheet is made.
+
+    Parameters
+    ----------
+    pixels : (int, int)
+        Width and height of the sheet.
+    formats : sequence of str
+        Files that are written.
+    cells : sequence of int
+        Cells of every raster.
+    """
+    vector = VECTOR_BYTES_PER_CELL * sum(cells) if {"pdf", "svg"} & set(formats) else 0
+    each = TIFF_BYTES_PER_PIXEL if "tiff" in formats else BYTES_PER_PIXEL
+    return BASE_MEMORY + BYTES_PER_CELL * max(cells) + sum(cells) + each * pixels[0] * pixels[1] + vector
 
 
 def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporter: Reporter) -> Made:
@@ -156,7 +193,7 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
         total += sampled.total
         shares[view.name], samples[view.name] = histogram.shares(), sampled.record()
         digests[view.name] = histogram.digest()
-        fit, rasters[view.name] = shaded(view.plate, counter, histogram)
+        fit, rasters[view.name] = shaded(view.plate, counter.view, histogram.strip)
         texts[view.name] = panel_text(view.plate, fit)
     record = certificate(
         "figure" if isinstance(sheet.record, Figure) else "plate",
@@ -178,30 +215,31 @@ def sampled_of(counter: OrbitCounter, histogram: Histogram) -> Sampled:
     return Sampled(counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled)
 
 
-def shaded(plate: Plate, counter: OrbitCounter, histogram: Histogram) -> tuple[Fit, Raster]:
-    """Shade a histogram with a fit of its own; return the fit and the raster, top line first."""
-    strip, height = histogram.strip, counter.view.up.cell_size(counter.rows)
-    fit = fit_counts(strip.counts, strip.exposure, height, plate.shading)
+def shaded(colours: Colours, view: Window, strip: Strip) -> tuple[Fit, Raster]:
+    """Shade the counts of a view with a fit of its own; return the fit and the raster, top line first."""
+    height = view.up.cell_size(strip.counts.shape[1])
+    fit = fit_counts(strip.counts, strip.exposure, height, colours.shading)
     shades = shade_counts(strip.counts, strip.exposure, height, fit)
-    table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
+    table = colour_table(colours.palette, background=colours.background, missing=colours.missing)
     lines = np.ascontiguousarray(shades.T[::-1])
-    return fit, Raster(lines, table, counter.view, strip.unsettled > 0)
+    return fit, Raster(lines, table, view, strip.unsettled > 0)
 
 
 def panel_text(plate: Plate, fit: Fit) -> PanelText:
     """Return what is written around a panel: labels from the family, the key's numbers and caption."""
-    per = f" per {_unit(plate)}" if _unit(plate) else ""
-    log = " of the logarithm" if plate.up.scale == "log" else ""
+    _, unit = plate.family.label_and_unit(plate.up.name)
     return PanelText(
         label_of(plate, plate.across),
         label_of(plate, plate.up),
         key_labels(fit) if plate.key else (),
-        f"density{per}{log}" if plate.key else "",
+        key_caption(plate.up, unit) if plate.key else "",
     )
 
 
-def _unit(plate: Plate) -> str:
-    return plate.family.label_and_unit(plate.up.name)[1]
+def key_caption(up: Axis, unit: str = "") -> str:
+    """Return the caption of a plate's colour key."""
+    per = f" per {unit}" if unit else ""
+    return f"density{per}{' of the logarithm' if up.scale == 'log' else ''}"
 
 
 def label_of(plate: Plate, axis: Axis) -> str:

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import contextlib
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any, TypeVar
+from typing import Any, Protocol, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,13 +20,17 @@ from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_folder, check_site
-from atlas.output.printing import Made
+from atlas.output.printing import Colours, Made
 from atlas.output.reporter import Reporter, Silence
+from atlas.output.whole_file import PARTS
 from atlas.reading.place import COMMAND_LINE
+from atlas.reading.view_kinds import Levels, Pairs
 from tiles.build import build
+from tiles.column import Source
 from tiles.index import Index
 from tiles.site import build_site
 from tiles.strip import PER_COLUMN, Strip
+from tiles.window import View
 
 T = TypeVar("T")
 CELLS_PER_STRIP = 1 << 22
@@ -91,12 +96,65 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
     header = _header(job, counter)
     made: list[Made] = []
 
-    def finish(index: Index) -> None:
-        index.put_fit(index.fit_from(shading=job.shading))
+    def certified(index: Index) -> Mapping[str, Any]:
         made.append(_made(job, counter, index))
-        index.put_certificate(made[0].record)
+        return made[0].record
 
     reporter.begin(job.name, "counting", counter.columns * counter.exposure)
+    build_tile_set(job, places, source, header, certified, opened, reporter)
+    return made[0]
+
+
+class Tiled(Colours, Protocol):
+    """What the building of a tile set asks of a job."""
+
+    @property
+    def view(self) -> View:
+        """The whole window."""
+
+    @property
+    def levels(self) -> Levels:
+        """The deepest levels."""
+
+    @property
+    def pairs(self) -> str | Pairs:
+        """Which level pairs are built."""
+
+
+def build_tile_set(
+    job: Tiled,
+    places: Places,
+    source: Source,
+    header: Mapping[str, Any],
+    certified: Callable[[Index], Mapping[str, Any]],
+    opened: Schedule,
+    reporter: Reporter,
+) -> None:
+    """Build index and static folder from a source of strips; an interrupted run is continued.
+
+    Parameters
+    ----------
+    job : Tiled
+    places : Places
+    source : callable
+        Returns the strip of columns ``first … last - 1`` at the deepest level pair.
+    header : mapping
+        Of the index; where it differs, an unfinished index is not continued.
+    certified : callable
+        Returns the certificate of the complete index.
+    opened : Schedule
+    reporter : Reporter
+
+    Raises
+    ------
+    OutputFailed
+        When the disk is full or the folder is closed.
+    """
+
+    def finish(index: Index) -> None:
+        index.put_fit(index.fit_from(shading=job.shading))
+        index.put_certificate(certified(index))
+
     build(
         places.index,
         job.view,
@@ -112,7 +170,6 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
     )
     colours = {key: getattr(job, key) for key in ("shading", "palette", "background", "missing")}
     make_site(places.index, places.site, colours, opened, reporter, places.growing_site)
-    return made[0]
 
 
 def make_site(
@@ -217,3 +274,5 @@ def rebuild_site(
     colours = {name: chosen.get(name, plate.get(name)) for name in given}
     with schedule(workers) as opened:
         make_site(index, site, colours, opened, reporter or Silence())
+    with contextlib.suppress(OSError):
+        (site.parent / PARTS).rmdir()  # kept as long as other unfinished parts live there
