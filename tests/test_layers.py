@@ -46,7 +46,8 @@ TABLE = """
 21  atlas.orbits.kernels atlas.config.load atlas.output.certificate atlas.figure.margins atlas.figure.insets
 22  atlas.orbits.orbit atlas.config.remake atlas.figure.layout atlas.figure.drawing
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate
-24  atlas.orbits.counting atlas.orbits.counts atlas.points.counting
+24  atlas.orbits.counting atlas.points.counting
+25  atlas.orbits.counts
 25  atlas.output.printing atlas.points.record atlas.points.spool
 26  atlas.output.tileset atlas.points.binning atlas.points.plates
 27  atlas.output.forecast

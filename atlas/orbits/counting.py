@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from atlas.config.jobs import Job, TileSet
 from atlas.orbits.orbit import OrbitCounter, Rules
 from atlas.orbits.sampling import IN_TILES, ON_PLATES, automatic, whole_height
+from atlas.orbits.schedule import Schedule
 from atlas.plan import check_counter
 
 
@@ -29,11 +30,19 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     return counter
 
 
-def resolved(job: Job, counter: OrbitCounter) -> OrbitCounter:
+def resolved(job: Job, counter: OrbitCounter, schedule: Schedule) -> OrbitCounter:
     """Return the counter with the samples that a pilot found for ``samples: auto``."""
     if isinstance(job.samples, int):
         return counter
-    return counter.with_samples(automatic(counter, counts_per_cell(job)))
+    return counter.with_samples(piloted(counter, schedule, counts_per_cell(job)))
+
+
+def piloted(counter: OrbitCounter, schedule: Schedule, counts_per_cell: int = ON_PLATES) -> int:
+    """Return the samples of each orbit that a pilot finds; it runs on a worker, so that it can be stopped."""
+    counter.warm()
+    found: list[int] = []
+    schedule.run([lambda: automatic(counter, counts_per_cell, schedule.stop)], found.append)
+    return found[0]
 
 
 def counts_per_cell(job: Job) -> int:

@@ -9,9 +9,9 @@ import numpy as np
 
 from atlas.config.view_rules import checked_set, checked_starts, drawn_view
 from atlas.families.reader import Family
+from atlas.orbits.counting import piloted
 from atlas.orbits.histogram import Histogram, count_histogram
 from atlas.orbits.orbit import OrbitCounter, Rules
-from atlas.orbits.sampling import automatic
 from atlas.orbits.schedule import schedule
 from atlas.plan import check_arrays, check_counter, parse_memory
 from atlas.reading.place import Place
@@ -109,10 +109,10 @@ def orbit_counts(
     )
     check_counter(counter)
     check_arrays(size, parse_memory(memory))
-    if samples == "auto":
-        counter = counter.with_samples(automatic(counter))
-    with schedule(workers) as workers_open:
-        histogram = count_histogram(counter, workers_open)
+    with schedule(workers) as opened:
+        if samples == "auto":
+            counter = counter.with_samples(piloted(counter, opened))
+        histogram = count_histogram(counter, opened)
     return dataset(histogram, counter)
 
 

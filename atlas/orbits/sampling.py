@@ -6,6 +6,7 @@ import math
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from atlas.orbits.orbit import OrbitCounter
 
@@ -25,7 +26,9 @@ def whole_height(rows: int, orbits_per_column: int, counts_per_cell: int) -> int
     return min(max(LEAST, math.ceil(counts_per_cell * rows / orbits_per_column)), MOST // orbits_per_column)
 
 
-def automatic(counter: OrbitCounter, counts_per_cell: int = ON_PLATES) -> int:
+def automatic(
+    counter: OrbitCounter, counts_per_cell: int = ON_PLATES, stop: NDArray[np.uint8] | None = None
+) -> int:
     """Return the samples of each orbit that give the mean counts aimed at in every column.
 
     A pilot of 128 columns finds which part of the samples falls inside the view and over how many cells it
@@ -37,6 +40,8 @@ def automatic(counter: OrbitCounter, counts_per_cell: int = ON_PLATES) -> int:
         At the deepest resolution asked for; its own number of samples does not matter.
     counts_per_cell : int
         Mean counts aimed at.
+    stop : ndarray of uint8, shape (1,), optional
+        When another thread sets it, the pilot ends early.
 
     Returns
     -------
@@ -50,7 +55,7 @@ def automatic(counter: OrbitCounter, counts_per_cell: int = ON_PLATES) -> int:
         transient_limit=max(counter.rules.transient, min(counter.rules.transient_limit, 20_000)),
     )
     pilot = counter.at(min(counter.columns, PILOT_COLUMNS), rows, rules)
-    strip = pilot.count(0, pilot.columns).strip
+    strip = pilot.count(0, pilot.columns, stop=stop).strip
     occupied = strip.counts > 0
     some = occupied.any(axis=1)
     if not some.any():

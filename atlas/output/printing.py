@@ -186,7 +186,7 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     shares, samples, digests = {}, {}, {}
     total = 0
     for view in sheet.views:
-        counter = resolved(view.plate, view.counter())
+        counter = resolved(view.plate, view.counter(), schedule)
         reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
         histogram = count_histogram(counter, schedule, reporter.advance)
         sampled = sampled_of(counter, histogram)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import contextlib
+import os
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -29,6 +30,7 @@ from tiles.build import build
 from tiles.column import Source
 from tiles.index import Index
 from tiles.site import build_site
+from tiles.store import written
 from tiles.strip import PER_COLUMN, Strip
 from tiles.window import View
 
@@ -90,7 +92,7 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
     OutputFailed
         When the disk is full or the folder is closed.
     """
-    counter = resolved(job, tile_counter(job))
+    counter = resolved(job, tile_counter(job), opened)
     counter.warm()
     source = StripSource(counter, opened, reporter)
     header = _header(job, counter)
@@ -132,6 +134,8 @@ def build_tile_set(
 ) -> None:
     """Build index and static folder from a source of strips; an interrupted run is continued.
 
+    Both get their names when both are complete, so that the counts of an interrupted run are not lost.
+
     Parameters
     ----------
     job : Tiled
@@ -156,7 +160,7 @@ def build_tile_set(
         index.put_certificate(certified(index))
 
     build(
-        places.index,
+        places.growing_index,
         job.view,
         across_level=job.levels.across,
         up_level=job.levels.up,
@@ -169,7 +173,10 @@ def build_tile_set(
         finish=finish,
     )
     colours = {key: getattr(job, key) for key in ("shading", "palette", "background", "missing")}
-    make_site(places.index, places.site, colours, opened, reporter, places.growing_site)
+    reporter.begin(places.index.parent.name, "tiles", _tile_columns(places.growing_index))
+    make_site(places.growing_index, places.site, colours, opened, reporter, places.growing_site)
+    with written(places.index):
+        os.replace(places.growing_index, places.index)
 
 
 def make_site(
@@ -181,7 +188,6 @@ def make_site(
     growing: Path | None = None,
 ) -> None:
     """Write the static folder of an index in given colours."""
-    reporter.begin(index.parent.name, "tiles", _tile_columns(index))
 
     def run(tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
         def told(result: T) -> None:
@@ -272,7 +278,9 @@ def rebuild_site(
         plate = opened_index.header.get("plate") or {}
     check_folder(site.parent)
     colours = {name: chosen.get(name, plate.get(name)) for name in given}
+    reporter = reporter or Silence()
+    reporter.begin(site.name, "tiles", _tile_columns(index))
     with schedule(workers) as opened:
-        make_site(index, site, colours, opened, reporter or Silence())
+        make_site(index, site, colours, opened, reporter)
     with contextlib.suppress(OSError):
         (site.parent / PARTS).rmdir()  # kept as long as other unfinished parts live there

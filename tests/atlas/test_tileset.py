@@ -48,7 +48,7 @@ def mosaic(index, pair):
 
 def test_the_deepest_pair_is_the_histogram_of_the_view(job, places):
     with schedule(1) as opened:
-        histogram = count_histogram(resolved(job, tile_counter(job)), opened)
+        histogram = count_histogram(resolved(job, tile_counter(job), opened), opened)
     with Index.open(places.index) as index:
         np.testing.assert_array_equal(mosaic(index, (3, 3)), histogram.strip.counts)
         columns = index.columns(3)

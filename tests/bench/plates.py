@@ -49,9 +49,8 @@ def run() -> None:
 
 def _count(sheet: Sheet, workers: int) -> Histogram:
     view = sheet.views[0]
-    counter = resolved(view.plate, view.counter())
     with schedule(workers) as opened:
-        return count_histogram(counter, opened)
+        return count_histogram(resolved(view.plate, view.counter(), opened), opened)
 
 
 def _counting(sheet: Sheet) -> dict[int, float]:
