@@ -47,7 +47,5 @@ def check_distinct(sections: Mapping[str, Sequence[str]], place: Place) -> None:
                 raise (
                     place.at(section)
                     .at(name)
-                    .refusal(
-                        f"{other} has this name already; outputs share a folder, so each needs its own"
-                    )
+                    .refusal(f"{other} has this name already; outputs share a folder, so each needs its own")
                 )
