@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from tiles.codec import narrow
 from tiles.grid import TILE
-from tiles.pyramid import Counts, Rows, tile_rows
+from tiles.pyramid import Counts, Rows, occupied, tile_rows
 from tiles.store import written
 from tiles.strip import Strip, check_sums
 
@@ -125,12 +125,12 @@ class _Pieces:
 
     def add(self, left: int, counts: NDArray[np.uint32]) -> None:
         """Keep a strip whose first column is number ``left`` of the tile column."""
-        for row in range(counts.shape[1] // TILE):
+        for row in np.flatnonzero(occupied(counts)).tolist():
             piece = narrow(counts[:, row * TILE : (row + 1) * TILE])
-            if piece is not None:
-                self._file.write(piece.data)
-                self._found.setdefault(row, []).append((left, len(piece), piece.dtype, self._size))
-                self._size += piece.nbytes
+            assert piece is not None
+            self._file.write(piece.data)
+            self._found.setdefault(row, []).append((left, len(piece), piece.dtype, self._size))
+            self._size += piece.nbytes
 
     def tile(self, row: int) -> Counts | None:
         """Return the tile of a row."""

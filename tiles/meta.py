@@ -35,8 +35,9 @@ def meta(
     Parameters
     ----------
     header : mapping
-        Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``units`` (by axis), ``caption``
-        of the colour key and ``plate`` (what a config needs beside the axes to draw the view), each optional.
+        Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``units`` (by axis name),
+        ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the view),
+        each optional.
     view : View
     present : mapping
         For each built level pair and tile column the runs (first row, last row) of tiles that are not empty.
@@ -62,8 +63,8 @@ def meta(
         "formula": list(header.get("formula") or ()),
         "note": header.get("note") or "",
         "axes": {
-            "across": _axis(view.across, units.get("across")),
-            "up": _axis(view.up, units.get("up")),
+            "across": _axis(view.across, units.get(view.across.name)),
+            "up": _axis(view.up, units.get(view.up.name)),
         },
         "layers": [{"name": LAYER, "label": "density", "kind": "density"}],
         "pairs": [list(pair) for pair in sorted(present)],
@@ -74,7 +75,7 @@ def meta(
         "key": {
             "colours": colours[1 : LEVELS + 1],
             "labels": [list(label) for label in key_labels(fit)],
-            "caption": header.get("caption") or _caption(view.up, units.get("up")),
+            "caption": header.get("caption") or _caption(view.up, units.get(view.up.name)),
             "shading": fit.shading,
         },
         "background": colours[0],

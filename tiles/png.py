@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import struct
 import zlib
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -35,16 +36,13 @@ def encode(indices: NDArray[np.uint8], table: NDArray[np.uint8]) -> bytes:
     scan[:, 1:] = indices
     packer = zlib.compressobj(1, zlib.DEFLATED, zlib.MAX_WBITS, 9, zlib.Z_RLE)
     data = packer.compress(scan.data) + packer.flush()
+    return b"".join((_head(lines, pixels, table.tobytes()), _chunk(b"IDAT", data), _chunk(b"IEND", b"")))
+
+
+@lru_cache(maxsize=8)
+def _head(lines: int, pixels: int, table: bytes) -> bytes:
     size = struct.pack(">IIBBBBB", pixels, lines, 8, _PALETTE_COLOUR, 0, 0, 0)
-    return b"".join(
-        (
-            _SIGNATURE,
-            _chunk(b"IHDR", size),
-            _chunk(b"PLTE", table.tobytes()),
-            _chunk(b"IDAT", data),
-            _chunk(b"IEND", b""),
-        )
-    )
+    return _SIGNATURE + _chunk(b"IHDR", size) + _chunk(b"PLTE", table)
 
 
 def _chunk(kind: bytes, data: bytes) -> bytes:

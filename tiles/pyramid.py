@@ -26,14 +26,14 @@ def halve_across(counts: Counts) -> Counts:
     Returns
     -------
     ndarray of uint32 or uint64, shape (n, rows)
-        ``counts[2 k] + counts[2 k + 1]``, as uint64 only where a sum exceeds uint32.
+        ``counts[2 k] + counts[2 k + 1]``, as uint64 only where a sum might exceed uint32.
 
     Raises
     ------
     TooLarge
-        When a sum exceeds uint64.
+        When a sum might exceed uint64.
     """
-    return _sums(counts[0::2], counts[1::2])
+    return _sums(counts, counts[0::2], counts[1::2])
 
 
 def halve_up(counts: Counts) -> Counts:
@@ -47,22 +47,45 @@ def halve_up(counts: Counts) -> Counts:
     -------
     ndarray of uint32 or uint64, shape (columns, n)
     """
-    return _sums(counts[:, 0::2], counts[:, 1::2])
+    return _sums(counts, counts[:, 0::2], counts[:, 1::2])
 
 
 def pair_sums(numbers: NDArray[np.uint64]) -> NDArray[np.uint64]:
     """Add neighbours along the last axis: per-column numbers of the columns of the next coarser level."""
-    return _sums(numbers[..., 0::2], numbers[..., 1::2])
+    if numbers.max(initial=0) >= 2**63:
+        raise TooLarge("a coarse column might hold 2**64 samples; build fewer levels")
+    return np.add(numbers[..., 0::2], numbers[..., 1::2])
 
 
 def join_across(left: Counts | None, right: Counts | None) -> Counts | None:
     """Return the tile made of two halves, each 128 x 256 or None for empty; None when both are."""
-    return _join(left, right, (TILE // 2, TILE), 0)
+    given = [half for half in (left, right) if half is not None]
+    if not given:
+        return None
+    tile = np.zeros((TILE, TILE), np.result_type(np.uint32, *given))
+    if left is not None:
+        tile[: TILE // 2] = left
+    if right is not None:
+        tile[TILE // 2 :] = right
+    return tile
 
 
-def join_up(lower: Counts | None, upper: Counts | None) -> Counts | None:
-    """Return the tile made of two halves, each 256 x 128 or None for empty; None when both are."""
-    return _join(lower, upper, (TILE, TILE // 2), 1)
+def parent_up(lower: Counts | None, upper: Counts | None) -> Counts | None:
+    """Return the tile one up level coarser than two tiles, each 256 x 256 or None; None when both are."""
+    given = [tile for tile in (lower, upper) if tile is not None]
+    if not given:
+        return None
+    tile = np.zeros((TILE, TILE), _wide_enough(*given))
+    for at, finer in ((0, lower), (TILE // 2, upper)):
+        if finer is not None:
+            np.add(finer[:, 0::2], finer[:, 1::2], out=tile[:, at : at + TILE // 2], dtype=tile.dtype)
+    return tile
+
+
+def occupied(counts: Counts) -> NDArray[np.bool_]:
+    """Return for each row of tiles whether some count of columns, shape (columns, 256 * n), is not 0."""
+    filled: NDArray[np.bool_] = counts.reshape(len(counts), -1, TILE).max(axis=2).any(axis=0)
+    return filled
 
 
 def tile_rows(counts: Counts) -> Rows:
@@ -71,10 +94,10 @@ def tile_rows(counts: Counts) -> Rows:
     The tiles are copies: rows of a column that lie a power of two apart share few places in a processor's
     cache, so each further pass over them in place would come from memory.
     """
-    occupied = counts.reshape(TILE, -1, TILE).max(axis=2).any(axis=0)
+    full = occupied(counts)
 
     def cut(row: int) -> Counts | None:
-        return counts[:, row * TILE : (row + 1) * TILE].copy() if occupied[row] else None
+        return counts[:, row * TILE : (row + 1) * TILE].copy() if full[row] else None
 
     return cut
 
@@ -107,30 +130,22 @@ def _subtree(
         tile = rows(row)
     else:
         lower = yield from _subtree(rows, deepest, level + 1, 2 * row)
-        lower = None if lower is None else halve_up(lower)
         upper = yield from _subtree(rows, deepest, level + 1, 2 * row + 1)
-        tile = join_up(lower, None if upper is None else halve_up(upper))
+        tile = parent_up(lower, upper)
     if tile is not None:
         yield level, row, tile
     return tile
 
 
-def _sums(first: Counts, second: Counts) -> Counts:
-    if first.dtype.itemsize < 4:
-        first, second = first.astype(np.uint32), second.astype(np.uint32)
-    total = np.add(first, second)
-    if np.less(total, first).any():  # wrapped round
-        if first.dtype.itemsize == 8:
-            raise TooLarge("a coarse tile would hold more than 2**64 samples in a cell; build fewer levels")
-        total = np.add(first, second, dtype=np.uint64)
+def _sums(counts: Counts, first: Counts, second: Counts) -> Counts:
+    kind = _wide_enough(counts)
+    total: Counts = np.add(first.astype(kind, copy=False), second.astype(kind, copy=False))
     return total
 
 
-def _join(first: Counts | None, second: Counts | None, shape: tuple[int, int], axis: int) -> Counts | None:
-    given = [half for half in (first, second) if half is not None]
-    if not given:
-        return None
-    kind = np.result_type(np.uint32, *given)
-    empty = np.zeros(shape, kind) if len(given) == 1 else None
-    halves = [empty if half is None else half for half in (first, second)]
-    return np.concatenate(halves, axis=axis, dtype=kind)  # type: ignore[arg-type]
+def _wide_enough(*tiles: Counts) -> type[np.uint32] | type[np.uint64]:
+    """Return the type that holds the sum of any two counts: uint32 unless it might not."""
+    top = max(0 if tile.dtype.itemsize < 4 else int(tile.max()) for tile in tiles)
+    if top >= 2**63:
+        raise TooLarge("a coarse tile might hold 2**64 samples in a cell; build fewer levels")
+    return np.uint32 if top < 2**31 else np.uint64

@@ -27,7 +27,7 @@ from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
 _PAGE_FILES = (".html", ".css", ".js")
-_TABLE_SIZES = (1 << 16, 1 << 20)
+_LONGEST_TABLE = 1 << 20
 
 
 def build_site(
@@ -127,23 +127,18 @@ class Shades:
 
     def shade(self, counts: Counts, exposure: NDArray[np.uint64]) -> NDArray[np.uint8]:
         """Return ``tiles.shading.shade_counts(counts, exposure, cell_height, fit)``."""
-        if exposure.min() == exposure.max():
+        if counts.dtype.itemsize <= 4 and exposure.min() == exposure.max():
             table = self._table(int(exposure[0]))
-            if counts.dtype.itemsize <= 2:
-                return np.take(table, counts)
-            if table[-1] == LEVELS:  # and so has every larger count
-                return np.take(table, np.minimum(counts, table.size - 1))
+            if table[-1] == LEVELS:  # and so have all larger counts
+                return np.take(table, counts, mode="clip")
         return shade_counts(counts, exposure, self.cell_height, self.fit)
 
     def _table(self, exposure: int) -> NDArray[np.uint8]:
-        """Return the shades of counts from 0: of all that fit 2 bytes, or up to the highest shade."""
+        """Return the shades of the counts from 0 to the first that has the highest one."""
         if exposure not in self._tables:
-            for size in _TABLE_SIZES:
-                counts = np.arange(size, dtype=np.uint32)[None]
-                table = shade_counts(counts, [exposure], self.cell_height, self.fit)[0]
-                if table[-1] == LEVELS:
-                    break
-            self._tables[exposure] = table
+            top = float(self.fit.thresholds[-1]) * exposure * self.cell_height
+            counts = np.arange(min(int(top), _LONGEST_TABLE) + 3, dtype=np.uint32)[None]
+            self._tables[exposure] = shade_counts(counts, [exposure], self.cell_height, self.fit)[0]
         return self._tables[exposure]
 
 

@@ -21,7 +21,7 @@ HEADER = {
     "family": "ricker",
     "formula": ["n → n exp(r (1 − n))"],
     "note": "invented",
-    "units": {"up": "kt"},
+    "units": {"n": "kt"},
     "plate": {"family": "ricker", "set": {"h": "0.1"}},
 }
 PRESENT = {(0, 0): {0: [(0, 0)]}, (1, 2): {0: [(0, 1), (3, 3)], 1: [(2, 2)]}}
