@@ -186,7 +186,9 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     shares, samples, digests = {}, {}, {}
     total = 0
     for view in sheet.views:
+        reporter.begin(sheet.record.name, "preparing", 0)
         counter = resolved(view.plate, view.counter(), schedule)
+        counter.warm()
         reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
         histogram = count_histogram(counter, schedule, reporter.advance)
         sampled = sampled_of(counter, histogram)

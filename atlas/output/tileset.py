@@ -92,6 +92,7 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
     OutputFailed
         When the disk is full or the folder is closed.
     """
+    reporter.begin(job.name, "preparing", 0)
     counter = resolved(job, tile_counter(job), opened)
     counter.warm()
     source = StripSource(counter, opened, reporter)
