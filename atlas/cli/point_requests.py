@@ -10,6 +10,7 @@ from atlas.errors import ConfigRefused, shown
 from atlas.output.reporter import Reporter
 from atlas.points.plates import draw_points
 from atlas.points.tile_sets import tile_points
+from atlas.reading.kinds import Text, Word
 from atlas.reading.place import COMMAND_LINE
 
 PICTURE_ONLY = ("size", "dpi", "key")
@@ -40,10 +41,16 @@ def tile_set_of_points(points: Path, out: tuple[Path, ...], reporter: Reporter, 
 
 def _axes(given: dict[str, Any]) -> list[dict[str, Any]]:
     """Take the axes with their scales and labels out of the options."""
-    return [
-        {**given.pop(axis), "scale": given.pop(f"scale_{axis}"), "label": given.pop(f"label_{axis}")}
-        for axis in ("across", "up")
-    ]
+    axes = []
+    for axis in ("across", "up"):
+        found = given.pop(axis)
+        for key, kind in (("scale", Word(("linear", "log"))), ("label", Text())):
+            option = f"{key}_{axis}"
+            value = given.pop(option)
+            if value is not None:
+                found = {**found, key: kind.read(value, COMMAND_LINE.at(option))}
+        axes.append(found)
+    return axes
 
 
 def _levels(text: str) -> Any:

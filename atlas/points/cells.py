@@ -11,6 +11,7 @@ from atlas.errors import PlanRefused, shown
 from atlas.points.tables import Chunk
 from tiles.window import Axis, View
 
+LEAST_STEPS = 8.0
 Codes = NDArray[np.int64]
 
 
@@ -26,12 +27,12 @@ class Cells:
     Raises
     ------
     PlanRefused
-        When two edges are the same float64: the cells are finer than numbers resolve.
+        When a cell spans less than 8 steps of float64: it is finer than numbers resolve.
     """
 
     def __init__(self, axis: Axis, count: int) -> None:
         edges = axis.edges(count)
-        if not (edges[1:] > edges[:-1]).all():
+        if not (_steps(edges) >= LEAST_STEPS).all():
             raise PlanRefused(
                 f"the axis {shown(axis.name)} from {axis.low} to {axis.high} cannot be cut into {count} "
                 "cells that float64 can tell apart; widen the interval or use fewer cells"
@@ -66,6 +67,12 @@ class Cells:
 
     def _scaled(self, values: NDArray[np.float64]) -> NDArray[np.float64]:
         return np.asarray(np.log(values), np.float64) if self._log else values
+
+
+def _steps(edges: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return how many steps of float64 each cell spans."""
+    with np.errstate(all="ignore"):
+        return np.diff(edges) / np.spacing(np.maximum(np.abs(edges[1:]), np.abs(edges[:-1])))
 
 
 @dataclass(frozen=True)

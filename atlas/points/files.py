@@ -17,9 +17,9 @@ from atlas.points.tables import Chunk, Table, check_column, not_numbers
 from atlas.reading.place import brief
 from tiles.errors import nearest
 
-BLOCK = 1 << 20
+BLOCK = 1 << 19
 LONGEST_PATH = 4096
-_FIRST_LINE = 1 << 16
+_START = 1 << 16
 _SEPARATORS = (",", ";", "\t")
 
 
@@ -117,9 +117,16 @@ class CsvTable(_FileTable):
 
     def _separator(self) -> str:
         with self.path.open("rb") as file:
-            line = file.readline(_FIRST_LINE)
-        if b"\0" in line:
-            raise PointsRefused(f"{self.where}: this is no CSV text; export the table as CSV or Parquet")
+            start = file.read(_START)
+        line = next(filter(None, start.splitlines()), b"")
+        try:
+            line.decode("utf-8")
+        except UnicodeDecodeError:
+            start = b"\0"
+        if b"\0" in start:
+            raise PointsRefused(
+                f"{self.where}: this is no CSV text in UTF-8; save the table as such, or as Parquet"
+            )
         return max(_SEPARATORS, key=lambda mark: line.count(mark.encode()))
 
     @contextmanager
@@ -189,7 +196,7 @@ class ParquetTable(_FileTable):
                 with ParquetFile(self.path, pre_buffer=False, buffer_size=BLOCK) as file:
                     yield file
             except ArrowException as problem:
-                reason = brief(" ".join(str(problem).split()))
+                reason = brief(" ".join(str(problem).split(".")[0].split()))
                 raise PointsRefused(f"{self.where}: this is no whole Parquet file ({reason})") from None
 
 

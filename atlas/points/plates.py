@@ -88,11 +88,11 @@ def draw_points(
     page = layout(plate.request())
     labels = axis_label(plate.view.across), axis_label(plate.view.up)
     check_characters([plate.title or "", plate.letter or "", *labels])
+    panel = page.panels[0]
+    grid = Grid.of(plate.view, panel.width, panel.height)
     for path in files.values():
         check_folder(path.parent)
     check_files(files.values())
-    panel = page.panels[0]
-    grid = Grid.of(plate.view, panel.width, panel.height)
     reading = Reading(table, grid, ROWS_PER_CHUNK, reporter)
     reporter.begin(name, "counting", table.rows())
     histogram = count_points(reading)
