@@ -156,10 +156,10 @@ def _store(
     coarsest = min(up for up in (*ups, carried) if up is not None)
     halves: dict[int, Counts] = {}
     for up, row, counts in tiles_of_column(found.rows, deepest, coarsest):
-        if up in ups and (tile := encode(counts)) is not None:
-            harvest.tiles.append((Address(level, up, column, row), tile))
         if up == carried and (half := narrow(halve_across(counts))) is not None:
             halves[row] = half
+        if up in ups and (tile := encode(counts)) is not None:
+            harvest.tiles.append((Address(level, up, column, row), tile))
     if ups:
         harvest.columns.append((level, column, found.numbers))
     return halves

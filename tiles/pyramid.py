@@ -59,27 +59,12 @@ def pair_sums(numbers: NDArray[np.uint64]) -> NDArray[np.uint64]:
 
 def join_across(left: Counts | None, right: Counts | None) -> Counts | None:
     """Return the tile made of two halves, each 128 x 256 or None for empty; None when both are."""
-    given = [half for half in (left, right) if half is not None]
-    if not given:
-        return None
-    tile = np.zeros((TILE, TILE), np.result_type(np.uint32, *given))
-    if left is not None:
-        tile[: TILE // 2] = left
-    if right is not None:
-        tile[TILE // 2 :] = right
-    return tile
+    return _join(left, right, np.s_[: TILE // 2], np.s_[TILE // 2 :])
 
 
-def parent_up(lower: Counts | None, upper: Counts | None) -> Counts | None:
-    """Return the tile one up level coarser than two tiles, each 256 x 256 or None; None when both are."""
-    given = [tile for tile in (lower, upper) if tile is not None]
-    if not given:
-        return None
-    tile = np.zeros((TILE, TILE), _wide_enough(*given))
-    for at, finer in ((0, lower), (TILE // 2, upper)):
-        if finer is not None:
-            np.add(finer[:, 0::2], finer[:, 1::2], out=tile[:, at : at + TILE // 2], dtype=tile.dtype)
-    return tile
+def join_up(lower: Counts | None, upper: Counts | None) -> Counts | None:
+    """Return the tile made of two halves, each 256 x 128 or None for empty; None when both are."""
+    return _join(lower, upper, np.s_[:, : TILE // 2], np.s_[:, TILE // 2 :])
 
 
 def occupied(counts: Counts) -> NDArray[np.bool_]:
@@ -119,21 +104,38 @@ def tiles_of_column(rows: Rows, deepest: int, coarsest: int) -> Iterator[tuple[i
         Non-empty tiles; those of one up level in ascending order. At most two a level are held at a time.
     """
     for row in range(2**coarsest):
-        yield from _subtree(rows, deepest, coarsest, row)
+        yield from _subtree(rows, deepest, coarsest, row, False)
 
 
 def _subtree(
-    rows: Rows, deepest: int, level: int, row: int
+    rows: Rows, deepest: int, level: int, row: int, inner: bool
 ) -> Generator[tuple[int, int, Counts], None, Counts | None]:
-    """Yield the tiles that lie in one tile, finest first, and that tile; return it."""
+    """Yield the tiles that lie in one tile, finest first, and that tile; return it halved if inner.
+
+    It is halved before it is yielded, while it is in the processor's cache.
+    """
     if level == deepest:
         tile = rows(row)
     else:
-        lower = yield from _subtree(rows, deepest, level + 1, 2 * row)
-        upper = yield from _subtree(rows, deepest, level + 1, 2 * row + 1)
-        tile = parent_up(lower, upper)
-    if tile is not None:
-        yield level, row, tile
+        lower = yield from _subtree(rows, deepest, level + 1, 2 * row, True)
+        upper = yield from _subtree(rows, deepest, level + 1, 2 * row + 1, True)
+        tile = join_up(lower, upper)
+    if tile is None:
+        return None
+    half = halve_up(tile) if inner else None
+    yield level, row, tile
+    return half
+
+
+def _join(first: Counts | None, second: Counts | None, left: Any, right: Any) -> Counts | None:
+    given = [half for half in (first, second) if half is not None]
+    if not given:
+        return None
+    tile = np.zeros((TILE, TILE), np.result_type(np.uint32, *given))
+    if first is not None:
+        tile[left] = first
+    if second is not None:
+        tile[right] = second
     return tile
 
 
@@ -143,9 +145,9 @@ def _sums(counts: Counts, first: Counts, second: Counts) -> Counts:
     return total
 
 
-def _wide_enough(*tiles: Counts) -> type[np.uint32] | type[np.uint64]:
+def _wide_enough(counts: Counts) -> type[np.uint32] | type[np.uint64]:
     """Return the type that holds the sum of any two counts: uint32 unless it might not."""
-    top = max(0 if tile.dtype.itemsize < 4 else int(tile.max()) for tile in tiles)
+    top = 0 if counts.dtype.itemsize < 4 else int(counts.max())
     if top >= 2**63:
         raise TooLarge("a coarse tile might hold 2**64 samples in a cell; build fewer levels")
     return np.uint32 if top < 2**31 else np.uint64

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import os
 import shutil
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from functools import partial
 from importlib import resources
@@ -21,13 +21,13 @@ from tiles.grid import TILE, Address, Pair
 from tiles.index import Index
 from tiles.meta import LAYER, meta, runs_where, script
 from tiles.pyramid import Counts
-from tiles.shading import LEVELS, Fit, colour_table, shade_counts
+from tiles.shading import Fit, colour_table, shade_counts
 from tiles.store import Readers, written
 from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
 _PAGE_FILES = (".html", ".css", ".js")
-_LONGEST_TABLE = 1 << 20
+_SHORTEST_TABLE, _LONGEST_TABLE = 1 << 16, 1 << 20
 
 
 def build_site(
@@ -120,26 +120,35 @@ class Shades:
     def lines(self, index: Index, address: Address) -> NDArray[np.uint8]:
         """Return the palette indices of a tile, shape (256, 256), line 0 at the top; 0 where it is empty."""
         counts = index.get_narrow(address)
-        numbers = index.column_numbers(address.across_level, address.column)
-        if counts is None or numbers is None:
+        if counts is None:
             return np.zeros((TILE, TILE), np.uint8)
-        return self.shade(counts, numbers[0]).T[::-1]
+        return self.of_columns(_exposure(index, address.across_level, address.column))(counts).T[::-1]
 
-    def shade(self, counts: Counts, exposure: NDArray[np.uint64]) -> NDArray[np.uint8]:
-        """Return ``tiles.shading.shade_counts(counts, exposure, cell_height, fit)``."""
-        if counts.dtype.itemsize <= 4 and exposure.min() == exposure.max():
-            table = self._table(int(exposure[0]))
-            if table[-1] == LEVELS:  # and so have all larger counts
-                return np.take(table, counts, mode="clip")
-        return shade_counts(counts, exposure, self.cell_height, self.fit)
+    def of_columns(self, exposure: NDArray[np.uint64]) -> Callable[[Counts], NDArray[np.uint8]]:
+        """Return a function of counts, shape (256, 256), whose columns had a given exposure.
 
-    def _table(self, exposure: int) -> NDArray[np.uint8]:
-        """Return the shades of the counts from 0 to the first that has the highest one."""
+        It returns ``tiles.shading.shade_counts(counts, exposure, cell_height, fit)``.
+        """
+        table = self._table(int(exposure[0])) if exposure.min() == exposure.max() else None
+        if table is not None:
+            return partial(_look_up, table)
+        return partial(shade_counts, exposure=exposure, cell_height=self.cell_height, fit=self.fit)
+
+    def _table(self, exposure: int) -> NDArray[np.uint8] | None:
+        """Return the shades of the counts from 0 to one that has the highest shade; None if that is far."""
+        top = float(self.fit.thresholds[-1]) * exposure * self.cell_height
+        if top > _LONGEST_TABLE:
+            return None
         if exposure not in self._tables:
-            top = float(self.fit.thresholds[-1]) * exposure * self.cell_height
-            counts = np.arange(min(int(top), _LONGEST_TABLE) + 3, dtype=np.uint32)[None]
+            counts = np.arange(max(int(top) + 3, _SHORTEST_TABLE), dtype=np.uint32)[None]
             self._tables[exposure] = shade_counts(counts, [exposure], self.cell_height, self.fit)[0]
         return self._tables[exposure]
+
+
+def _look_up(table: NDArray[np.uint8], counts: Counts) -> NDArray[np.uint8]:
+    if counts.dtype.itemsize > 2:
+        counts = np.minimum(counts, np.uint32(table.size - 1)).astype(np.intp)
+    return np.take(table, counts)
 
 
 def _write_column(
@@ -157,9 +166,9 @@ def _write_column(
     growing = folder.with_name(f".{column}")
     with readers.one() as index, written(site):
         growing.mkdir(parents=True, exist_ok=True)
-        exposure = _exposure(index, pair[0], column)
+        shade = shades.of_columns(_exposure(index, pair[0], column))
         for row, counts in index.tiles_of_column(pair, column):
-            picture = png.encode(shades.shade(counts, exposure).T[::-1], table)
+            picture = png.encode(shade(counts).T[::-1], table)
             with open(f"{growing}/{row}.png", "wb", buffering=0) as file:
                 file.write(picture)
         growing.rename(folder)

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from tiles.grid import Pair
 
 _LEVELS_AT_ONCE = 2
-_TASKS_WANTED = 32
+_TASKS_WANTED = 16
 _ROWS_AT_ONCE = 1024
 
 

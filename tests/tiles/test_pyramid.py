@@ -15,8 +15,8 @@ from tiles.pyramid import (
     halve_across,
     halve_up,
     join_across,
+    join_up,
     pair_sums,
-    parent_up,
     tile_rows,
     tiles_of_column,
 )
@@ -63,23 +63,9 @@ def test_joined_halves():
     assert whole[:128].sum() == 0
     assert np.array_equal(whole[128:], half)
     assert join_across(half, 2**40 * half.astype(np.uint64)).dtype == np.uint64
-    assert join_across(None, None) is None
-
-
-def test_parents_up():
-    rng = np.random.default_rng(4)
-    lower = rng.integers(0, 2**32, (TILE, TILE), dtype=np.uint32)
-    upper = rng.integers(0, 2**8, (TILE, TILE), dtype=np.uint8)
-    for low, high in ((lower, upper), (lower, None), (None, upper)):
-        both = np.concatenate(
-            [np.zeros((TILE, TILE), np.uint64) if tile is None else tile for tile in (low, high)],
-            axis=1,
-            dtype=np.uint64,
-        )
-        assert np.array_equal(parent_up(low, high), both[:, 0::2] + both[:, 1::2])
-    assert parent_up(None, upper).dtype == np.uint32
-    assert parent_up(lower, None).dtype == np.uint64
-    assert parent_up(None, None) is None
+    assert join_up(half.T, None)[:, :128].sum() == half.size
+    assert join_up(None, half.T).dtype == np.uint32
+    assert join_across(None, None) is join_up(None, None) is None
 
 
 @pytest.mark.parametrize(("deepest", "coarsest"), [(3, 0), (3, 3), (2, 1), (0, 0)])
