@@ -35,8 +35,8 @@ def meta(
     Parameters
     ----------
     header : mapping
-        Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``units`` (by axis name),
-        ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the view),
+        Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``labels`` and ``units`` (by axis
+        name), ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the view),
         each optional.
     view : View
     present : mapping
@@ -54,7 +54,7 @@ def meta(
         JSON-able.
     """
     colours = [f"#{red:02x}{green:02x}{blue:02x}" for red, green, blue in table.tolist()]
-    units = header.get("units") or {}
+    labels, units = header.get("labels") or {}, header.get("units") or {}
     found = {
         "version": VERSION,
         "tile": TILE,
@@ -63,8 +63,8 @@ def meta(
         "formula": list(header.get("formula") or ()),
         "note": header.get("note") or "",
         "axes": {
-            "across": _axis(view.across, units.get(view.across.name)),
-            "up": _axis(view.up, units.get(view.up.name)),
+            "across": _axis(view.across, labels.get(view.across.name), units.get(view.across.name)),
+            "up": _axis(view.up, labels.get(view.up.name), units.get(view.up.name)),
         },
         "layers": [{"name": LAYER, "label": "density", "kind": "density"}],
         "pairs": [list(pair) for pair in sorted(present)],
@@ -124,10 +124,10 @@ def runs_where(flags: Iterable[tuple[int, NDArray[np.bool_]]]) -> Iterator[tuple
         yield begun, end
 
 
-def _axis(axis: Axis, unit: str | None) -> dict[str, Any]:
+def _axis(axis: Axis, label: str | None, unit: str | None) -> dict[str, Any]:
     return {
         "name": axis.name,
-        "label": axis.label or axis.name,
+        "label": axis.label or label or axis.name,
         "unit": unit or "",
         "low": _ratio(axis.low),
         "high": _ratio(axis.high),

@@ -212,12 +212,14 @@ def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
         for key, value in normalised(job)["settings"].items()
         if key not in ("across", "up", "levels", "pairs", "title") and value not in (None, {}, [])
     }
+    names = (job.across.name, job.up.name)
     return {
         "title": job.title or f"{job.family.title}: {job.up.name} across {job.across.name}",
         "family": job.family.title,
         "formula": job.family.formula_lines(),
         "note": job.family.note,
-        "units": {name: job.family.label_and_unit(name)[1] for name in (job.across.name, job.up.name)},
+        "labels": {name: job.family.label_and_unit(name)[0] for name in names},
+        "units": {name: job.family.label_and_unit(name)[1] for name in names},
         "plate": settings,
         "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
     }
