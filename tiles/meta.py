@@ -36,8 +36,8 @@ def meta(
     ----------
     header : mapping
         Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``labels`` and ``units`` (by axis
-        name), ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the view),
-        each optional.
+        name), ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the
+        view), each optional.
     view : View
     present : mapping
         For each built level pair and tile column the runs (first row, last row) of tiles that are not empty.
