@@ -169,7 +169,7 @@ def _write_column(
         shade = shades.of_columns(_exposure(index, pair[0], column))
         for row, counts in index.tiles_of_column(pair, column):
             picture = png.encode(shade(counts).T[::-1], table)
-            with open(f"{growing}/{row}.png", "wb", buffering=0) as file:
+            with open(f"{growing}/{row}.png", "wb") as file:
                 file.write(picture)
         growing.rename(folder)
 

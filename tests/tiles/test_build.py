@@ -292,6 +292,32 @@ def test_a_source_that_returns_other_columns_is_found_out(tmp_path, scene):
         built(tmp_path, scene, source=source)
 
 
+FULL = """
+import resource, sys
+from pathlib import Path
+from tests.tiles.sources import Scene
+from tests.tiles.test_build import built
+from tiles.errors import OutputFailed
+resource.setrlimit(resource.RLIMIT_FSIZE, (400_000, 400_000))  # as if the disk were full
+try:
+    built(Path(sys.argv[1]), Scene(3, 2), pairs="all", cells_per_strip=int(sys.argv[2]))
+except OutputFailed as problem:
+    print(problem)
+"""
+
+
+@pytest.mark.parametrize("cells", [1 << 24, 1 << 16])
+def test_a_full_disk_is_reported_and_nothing_is_lost(tmp_path, scene, reference, cells):
+    ended = subprocess.run(
+        [sys.executable, "-c", FULL, str(tmp_path), str(cells)], check=True, text=True, stdout=subprocess.PIPE
+    )
+    assert ended.stdout.count("\n") == 1
+    assert "cannot be written" in ended.stdout
+    assert "free some space" in ended.stdout
+    assert not (tmp_path / "index.sqlite").exists()
+    assert contents(built(tmp_path, scene, pairs="all")) == reference
+
+
 def test_a_folder_that_cannot_be_made_is_reported(tmp_path, scene):
     (tmp_path / "file").touch()
     with pytest.raises(OutputFailed, match="cannot be written"):

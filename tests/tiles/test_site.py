@@ -253,6 +253,33 @@ def test_nothing_is_written_for_a_wrong_request(tmp_path, index_path):
     assert os.listdir(tmp_path) == []
 
 
+FULL = """
+import resource, sys
+from pathlib import Path
+from tiles.errors import OutputFailed
+from tiles.site import build_site
+resource.setrlimit(resource.RLIMIT_FSIZE, (5_000, 5_000))  # as if the disk were full
+try:
+    build_site(Path(sys.argv[1]), Path(sys.argv[2]), palette="blue")
+except OutputFailed as problem:
+    print(problem)
+"""
+
+
+def test_a_full_disk_is_reported(tmp_path, index_path, site):
+    folder = tmp_path / "site"
+    ended = subprocess.run(
+        [sys.executable, "-c", FULL, str(index_path), str(folder)],
+        check=True,
+        text=True,
+        stdout=subprocess.PIPE,
+    )
+    assert "cannot be written" in ended.stdout
+    assert not folder.exists()
+    build_site(index_path, folder, palette="blue")
+    assert files(folder) == files(site)
+
+
 def test_a_folder_that_cannot_be_made_is_reported(tmp_path, index_path):
     (tmp_path / "file").touch()
     with pytest.raises(OutputFailed, match="cannot be written"):
