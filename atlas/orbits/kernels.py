@@ -313,6 +313,9 @@ def settle(x, c, start, order, seen, rules, axis, edges, base, counts, outcome, 
         if outcome[m] == GONE:
             continue
         outcome[m] = READY
+        reach = size[m]
+        for k in range(NX):
+            reach = max(reach, abs(start[k, m]))
         if repeat[m] > 0:
             repelling = growth(x, c, m, repeat[m]) > 1.0 + 1e-6
             if repelling and not on_cycle(x, c, start, m, repeat[m]):
@@ -321,7 +324,7 @@ def settle(x, c, start, order, seen, rules, axis, edges, base, counts, outcome, 
                 on_repelling[0] += 1 if repelling else 0
                 fill(x, c, m, repeat[m], samples, base, axis, edges, counts)
                 outcome[m] = FILLED
-        elif period[m] > 0 and gap[m] < size[m] / 1024.0:
+        elif period[m] > 0 and gap[m] < reach / 1024.0:
             if distance_left(x, c, m, period[m], size[m], relative) > half_cell:
                 outcome[m] = SLOW
 

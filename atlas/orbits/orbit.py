@@ -8,11 +8,13 @@ How an orbit is treated, always by its own step numbers:
    counted for all its samples and the orbit stops. If the multiplier of that cycle exceeds 1 + 1e-6 in size,
    rounding has dropped the orbit onto a repelling cycle: it has *collapsed*, and is run again from its start
    with every step disturbed by a hashed factor 1 - u 2**-40; unless its start lies on that cycle itself.
-3. If it comes back almost (nearer than 2**-10 of its size) at a period up to ``longest_period`` and the
-   distance to its limit, estimated as 4 d r / (1 - r), exceeds half a cell, it runs on: as many steps again
-   as it has done, up to ``transient_limit`` in all; then it is *unsettled* and nothing of it is counted.
-4. Otherwise every following state is counted, in rounds of 512; a repeat found in a round fills the rest, and
-   an escape or a collapse takes back what was counted.
+3. If it comes back almost (nearer than 2**-10 of its size or its start's) at a period up to
+   ``longest_period`` and the distance to its limit, estimated as 4 d r / (1 - r), exceeds half a cell, it
+   runs on: as many steps again as it has done, up to ``transient_limit`` in all; then it is *unsettled* and
+   nothing of it is counted.
+4. Otherwise every following state is counted, in rounds of 512; a repeat found in a round fills the rest.
+   After the last round it is looked at ahead once more, up to ``longest_period``, for a collapse in that
+   round. An escape or a collapse takes back what was counted.
 """
 
 from __future__ import annotations
@@ -359,15 +361,11 @@ class _Block:
         return np.sort(np.concatenate(ready)) if ready else np.empty(0, np.int64)
 
     def _decide(self, order: NDArray[np.int64]) -> None:
-        orbits, longest = self.outcome.size, self.rules.longest_period
-        repeat, period = np.zeros(orbits, np.int64), np.zeros(orbits, np.int64)
-        gap, size = np.zeros(orbits), np.zeros(orbits)
-        self.kernels.returns(
-            self.x, self.c, order, longest, max(LOOK_AHEAD * longest, 64), repeat, period, gap, size
-        )
+        longest = self.rules.longest_period
+        seen = (np.zeros(self.outcome.size, np.int64), *self._seen())
+        self.kernels.returns(self.x, self.c, order, longest, max(LOOK_AHEAD * longest, 64), *seen)
         counter = self.counter
         rules = (self.rules.samples, counter.half_cell, counter.view.up.scale == "log")
-        seen = (repeat, period, gap, size)
         self.kernels.settle(
             self.x, self.c, self.start, order, seen, rules, *self.window, *self.target, self.outcome,
             self.on_repelling,
@@ -390,12 +388,28 @@ class _Block:
             done += steps
             if not self.rules.repeats:
                 hit[:] = 0
-            self.kernels.finish(
-                self.x, self.c, begin, self.key, order, hit, (samples, done), *self.window, *self.target,
-                self.outcome, self.filled,
-            )  # fmt: skip
-            self.again[order[self.outcome[order] == AGAIN]] = True
-            order = order[self.outcome[order] == READY]
+            order = self._finish(order, begin, hit, done)
+        if self.rules.repeats and order.size and not self.stop[0]:
+            longest = self.rules.longest_period
+            self.kernels.returns(self.x, self.c, order, longest, longest, hit, *self._seen())
+            self._finish(order, begin, hit, done)
+
+    def _finish(
+        self, order: NDArray[np.int64], begin: NDArray[np.float64], hit: NDArray[np.int64], done: int
+    ) -> NDArray[np.int64]:
+        """Decide after a round, and return the orbits that go on."""
+        self.kernels.finish(
+            self.x, self.c, begin, self.key, order, hit, (self.rules.samples, done), *self.window,
+            *self.target, self.outcome, self.filled,
+        )  # fmt: skip
+        self.again[order[self.outcome[order] == AGAIN]] = True
+        going_on: NDArray[np.int64] = order[self.outcome[order] == READY]
+        return going_on
+
+    def _seen(self) -> tuple[NDArray[np.int64], NDArray[np.float64], NDArray[np.float64]]:
+        """Return room for the period, the gap and the size of every orbit."""
+        orbits = self.outcome.size
+        return np.zeros(orbits, np.int64), np.zeros(orbits), np.zeros(orbits)
 
     def run_again(self) -> None:
         """Run the collapsed orbits once more from their starts, disturbed, and count them."""

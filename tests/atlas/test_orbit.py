@@ -38,6 +38,8 @@ CASES = {
     "repelling start": ("logistic", ("r", "3", "4"), ("x", 0, 1), Rules(50, 500, 100, 2, 16), (0.0, 0.3)),
     "above and below": ("logistic", ("r", "3.5", "4"), ("x", "0.3", "0.6"), Rules(50, 500, 99, 2, 9), (0.3,)),
     "collapse": ("tent", ("mu", "1.9", "2"), ("x", 0, 1), Rules(100, 1000, 700, 2, 16), (0.3,)),
+    "collapse at the end": ("tent", ("mu", "1.45", "2.55"), ("x", 0, 1), Rules(0, 500, 300, 1, 8), (0.3,)),
+    "slow extinction": ("logistic", ("r", "0.9", "1.1"), ("x", 0, "0.2"), Rules(99, 3000, 64, 2, 8), (0.3,)),
     "no transient": ("logistic", ("r", "3.5", "3.6"), ("x", 0, 1), Rules(0, 500, 33, 2, 16), (0.3,)),
     "exponential": ("ricker", ("r", "1.5", "4"), ("x", 0, 4), Rules(150, 2000, 400, 2, 16), (0.3,)),
     "collapse late": ("quadratic", ("c", "-2", "-1.9"), ("x", -2, 2), Rules(0, 500, 900, 3, 16), (0.5,)),

@@ -10,7 +10,7 @@ from typing import Any
 import mpmath
 from hypothesis import strategies as st
 
-from atlas.expression import Binary, Call, Compare, Logic, Name, Node, Number, Pi, Unary, parse
+from atlas.formula.expression import Binary, Call, Compare, Logic, Name, Node, Number, Pi, Unary, parse
 
 DIGITS = 60
 NAMES = ("x", "r", "b_1")

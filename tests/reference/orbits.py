@@ -10,7 +10,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from atlas.orbit import Rules
+from atlas.orbits.orbit import Rules
 
 MASK = (1 << 64) - 1
 TESTED_EVERY = 16
@@ -104,6 +104,12 @@ class Twin:
             x = states[-1]
             if reference in stage and not repeats:
                 self._refuse_repelling(value, x, stage.index(reference) + 1)
+        ahead = x
+        for cycle in range(1, 0 if repeats else rules.longest_period + 1):
+            ahead = self.step(ahead, value)
+            if ahead == x:
+                self._refuse_repelling(value, x, cycle)
+                break
         return states
 
     def _settled(
@@ -121,7 +127,7 @@ class Twin:
                 if start not in ahead[:cycle]:
                     self._refuse_repelling(value, x, cycle)
                 return x, True
-            if not self._is_slow(value, ahead[: rules.longest_period + 1]):
+            if not self._is_slow(value, start, ahead[: rules.longest_period + 1]):
                 return x, False
             if done >= rules.transient_limit:
                 raise Unsettled
@@ -147,11 +153,11 @@ class Twin:
         if abs(multiplier) > 1 + 1e-6:
             raise Collapsed
 
-    def _is_slow(self, value: float, ahead: Sequence[float]) -> bool:
+    def _is_slow(self, value: float, start: float, ahead: Sequence[float]) -> bool:
         gaps = [abs(x - ahead[0]) for x in ahead[1:]]
         size = max(map(abs, ahead))
         period = gaps.index(min(gaps)) + 1
-        if not min(gaps) < size / 1024:
+        if not min(gaps) < max(size, abs(start)) / 1024:
             return False
         x, turns = ahead[0], []
         for _ in range(3):
