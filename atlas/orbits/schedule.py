@@ -9,8 +9,8 @@ from concurrent.futures import ThreadPoolExecutor
 from contextlib import contextmanager
 from typing import TypeVar
 
-import dask
 import numpy as np
+from dask import threaded
 from dask.delayed import delayed
 from numpy.typing import NDArray
 
@@ -53,7 +53,8 @@ class Schedule:
         """
         for batch in _batches(tasks, BATCH * self.workers):
             lazy = [delayed(task, pure=False)() for task in batch]
-            for result in dask.compute(*lazy, scheduler="threads", pool=self._pool, optimize_graph=False):
+            graph = {key: node for one in lazy for key, node in one.__dask_graph__().items()}
+            for result in threaded.get(graph, [one.key for one in lazy], pool=self._pool):
                 done(result)
 
     def close(self, *, interrupted: bool) -> None:

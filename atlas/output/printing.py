@@ -33,6 +33,7 @@ from tiles.strip import Strip
 from tiles.window import Axis
 from tiles.window import View as Window
 
+CELLS_SHADED_AT_ONCE = 1 << 20
 BYTES_PER_CELL, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, VECTOR_BYTES_PER_CELL = 6, 2, 8, 2
 """What is alive at the peak, measured: counts and shades of a raster, then the page and its encoder."""
 
@@ -181,35 +182,48 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     OutputFailed
         When a file cannot be written.
     """
-    rasters: dict[str, Raster] = {}
-    texts: dict[str, PanelText] = {}
-    shares, samples, digests = {}, {}, {}
-    total = 0
-    for view in sheet.views:
-        reporter.begin(sheet.record.name, "preparing", 0)
-        counter = resolved(view.plate, view.counter(), schedule)
-        counter.warm()
-        reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
-        histogram = count_histogram(counter, schedule, reporter.advance)
-        sampled = sampled_of(counter, histogram)
-        total += sampled.total
-        shares[view.name], samples[view.name] = histogram.shares(), sampled.record()
-        digests[view.name] = histogram.digest()
-        fit, rasters[view.name] = shaded(view.plate, counter.view, histogram.strip)
-        texts[view.name] = panel_text(view.plate, fit)
+    panels = {view.name: _panel(sheet, view, schedule, reporter) for view in sheet.views}
     record = certificate(
         "figure" if isinstance(sheet.record, Figure) else "plate",
         sheet.record.name,
         normalised(sheet.record),
-        "+".join(digests.values()),
-        shares,
-        samples,
+        "+".join(panel.digest for panel in panels.values()),
+        {name: panel.shares for name, panel in panels.items()},
+        {name: panel.sampled.record() for name, panel in panels.items()},
     )
     from atlas.figure.plate import draw
 
     reporter.begin(sheet.record.name, "drawing", 0)
-    draw(sheet.page, rasters, texts, files, record)
-    return Made(total, record)
+    rasters = {name: panel.raster for name, panel in panels.items()}
+    draw(sheet.page, rasters, {name: panel.text for name, panel in panels.items()}, files, record)
+    return Made(sum(panel.sampled.total for panel in panels.values()), record)
+
+
+@dataclass(frozen=True)
+class _Panel:
+    """What remains of a view once its counts are shaded."""
+
+    raster: Raster
+    text: PanelText
+    shares: dict[str, float | int]
+    sampled: Sampled
+    digest: str
+
+
+def _panel(sheet: Sheet, view: View, schedule: Schedule, reporter: Reporter) -> _Panel:
+    reporter.begin(sheet.record.name, "preparing", 0)
+    counter = resolved(view.plate, view.counter(), schedule)
+    counter.warm()
+    reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
+    histogram = count_histogram(counter, schedule, reporter.advance)
+    fit, raster = shaded(view.plate, counter.view, histogram.strip)
+    return _Panel(
+        raster,
+        panel_text(view.plate, fit),
+        histogram.shares(),
+        sampled_of(counter, histogram),
+        histogram.digest(),
+    )
 
 
 def sampled_of(counter: OrbitCounter, histogram: Histogram) -> Sampled:
@@ -221,9 +235,13 @@ def shaded(colours: Colours, view: Window, strip: Strip) -> tuple[Fit, Raster]:
     """Shade the counts of a view with a fit of its own; return the fit and the raster, top line first."""
     height = view.up.cell_size(strip.counts.shape[1])
     fit = fit_counts(strip.counts, strip.exposure, height, colours.shading)
-    shades = shade_counts(strip.counts, strip.exposure, height, fit)
     table = colour_table(colours.palette, background=colours.background, missing=colours.missing)
-    lines = np.ascontiguousarray(shades.T[::-1])
+    columns, rows = strip.counts.shape
+    lines = np.empty((rows, columns), np.uint8)
+    width = max(1, CELLS_SHADED_AT_ONCE // rows)
+    for first in range(0, columns, width):
+        block = slice(first, first + width)
+        lines[::-1, block] = shade_counts(strip.counts[block], strip.exposure[block], height, fit).T
     return fit, Raster(lines, table, view, strip.unsettled > 0)
 
 
