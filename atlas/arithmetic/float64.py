@@ -114,12 +114,13 @@ class StraightLine:
             product = self._assign(f"{values[1]} * {ratio}")
             return self._assign(f"{values[0]} - {product}")
         if function == "sign":
-            return self._assign(f"1.0 if {values[0]} > 0.0 else (-1.0 if {values[0]} < 0.0 else 0.0)")
+            rest = f"-1.0 if {values[0]} < 0.0 else {values[0]} + 0.0"
+            return self._assign(f"1.0 if {values[0]} > 0.0 else ({rest})")
         if function in ("min", "max"):
             sign = "<" if function == "min" else ">"
             best = values[0]
             for other in values[1:]:
-                best = self._assign(f"{best} if {best} {sign} {other} else {other}")
+                best = self._assign(f"{other} if {other} {sign} {best} else {best}")
             return best
         prefix = {"sqrt": "np.sqrt", "floor": "np.floor", "abs": "abs"}[function]
         return self._assign(f"{prefix}({values[0]})")
