@@ -25,7 +25,8 @@ TABLE = """
  5  tiles.build tiles.site
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
-10  atlas.output atlas.points atlas.reading
+10  atlas.output atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
+11  atlas.orbits.block
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
 12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger
@@ -43,7 +44,8 @@ TABLE = """
 19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.schema
 20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
 21  atlas.points.jobs
-21  atlas.orbits.kernels atlas.config.load atlas.output.certificate atlas.figure.margins atlas.figure.insets
+21  atlas.orbits.kernel_source atlas.config.load atlas.output.certificate atlas.figure.margins
+21  atlas.figure.insets
 22  atlas.orbits.orbit atlas.config.remake atlas.figure.layout atlas.figure.drawing
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate
 24  atlas.orbits.counting atlas.points.counting
@@ -69,7 +71,7 @@ HOMES = {
     "datashader": ("tiles.shading",),
     "h5netcdf": ("atlas.output.certificate_reader",),
     "matplotlib": ("atlas.figure.typeset",),
-    "numba": ("atlas.orbits.step", "atlas.orbits.orbit", "atlas.orbits.kernels", "atlas.arithmetic"),
+    "numba": ("atlas.orbits.step", "atlas.orbits.orbit", "atlas.arithmetic"),
     "pandas": ("atlas.points",),
     "PIL": ("atlas.figure.raster_files",),
     "pyarrow": ("atlas.points",),

@@ -13,7 +13,7 @@ from atlas.orbits.orbit import LANES, Counted, OrbitCounter
 from atlas.orbits.schedule import Schedule
 from tiles.strip import PER_COLUMN, Strip
 
-BLOCK_BYTES = 2 << 20
+BLOCK_BYTES = 1 << 20
 
 Progress = Callable[[int], None]
 
@@ -61,8 +61,9 @@ class Histogram:
 
 def block_width(counter: OrbitCounter) -> int:
     """Return how many columns a block has: enough to fill the lanes, few enough to stay in the cache."""
-    lanes_full = -(-2 * LANES // counter.orbits_per_column)
-    return max(1, lanes_full, min(256, BLOCK_BYTES // (4 * (counter.rows + 2))))
+    full = -(-LANES // counter.orbits_per_column)
+    cached = min(256, BLOCK_BYTES // (4 * (counter.rows + 2)))
+    return full * max(2, cached // full)
 
 
 def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progress | None = None) -> Histogram:
@@ -74,7 +75,7 @@ def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progres
     schedule : Schedule
         The workers; their number does not change the result.
     progress : callable of int, optional
-        Told of every finished block's samples.
+        Told of every finished block's samples, in the thread that counted it.
 
     Returns
     -------
@@ -88,7 +89,14 @@ def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progres
 
     def block(first: int) -> Callable[[], Counted]:
         last = min(first + width, columns)
-        return lambda: counter.count(first, last, out=counts[first:last], stop=schedule.stop)
+
+        def count() -> Counted:
+            counted = counter.count(first, last, out=counts[first:last], stop=schedule.stop)
+            if progress is not None:
+                progress((last - first) * counter.exposure)
+            return counted
+
+        return count
 
     def done(counted: Counted) -> None:
         strip = counted.strip
@@ -96,8 +104,6 @@ def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progres
             array[strip.first : strip.last] = getattr(strip, name)
         totals[0] += counted.filled
         totals[1] += counted.on_repelling
-        if progress is not None:
-            progress(len(strip.counts) * counter.exposure)
 
     counter.warm()
     schedule.run((block(first) for first in range(0, columns, width)), done)

@@ -1,21 +1,4 @@
-"""Orbit histograms: every column of a view, its orbits run, decided about and counted.
-
-How an orbit is treated, always by its own step numbers:
-
-1. It runs ``transient`` steps. It has *escaped* when a test, made after every 16th step of a stage and at the
-   end of each stage, finds a state variable not below the escape bound in size.
-2. It is looked at ahead, without being moved. A state that comes back bit for bit is a *repeat*: the cycle is
-   counted for all its samples and the orbit stops. If the multiplier of that cycle exceeds 1 + 1e-6 in size,
-   rounding has dropped the orbit onto a repelling cycle: it has *collapsed*, and is run again from its start
-   with every step disturbed by a hashed factor 1 - u 2**-40; unless its start lies on that cycle itself.
-3. If it comes back almost (nearer than 2**-10 of its size or its start's) at a period up to
-   ``longest_period`` and the distance to its limit, estimated as 4 d r / (1 - r), exceeds half a cell, it
-   runs on: as many steps again as it has done, up to ``transient_limit`` in all; then it is *unsettled* and
-   nothing of it is counted.
-4. Otherwise every following state is counted, in rounds of 512; a repeat found in a round fills the rest.
-   After the last round it is looked at ahead once more, up to ``longest_period``, for a collapse in that
-   round. An escape or a collapse takes back what was counted.
-"""
+"""Orbit histograms: the orbits of every column, run and counted; `atlas.orbits.block` decides about each."""
 
 from __future__ import annotations
 
@@ -33,43 +16,19 @@ from numpy.typing import NDArray
 
 import atlas.arithmetic.functions as functions
 from atlas.families.reader import Family
-from atlas.orbits.kernels import AGAIN, FILLED, GONE, READY, SLOW, kernel_source
+from atlas.orbits.block import Block, Window
+from atlas.orbits.block import Rules as Rules
+from atlas.orbits.kernel_source import kernel_source
+from atlas.orbits.orbit_kernels import GONE, SLOW
 from atlas.orbits.step import StepSource, load_module, step_source
-from tiles.errors import Failure
+from tiles.errors import Failure, TooLarge
 from tiles.number import Exact
 from tiles.strip import Strip
 from tiles.window import View
 
 LANES = 64
-ROUND = 512
 MOST_VALUES_KEPT = 1 << 20
-LOOK_AHEAD = 4
-
-
-@dataclass(frozen=True)
-class Rules:
-    """How orbits are sampled.
-
-    Attributes
-    ----------
-    transient, transient_limit : int
-        Steps before the first decision, and at most.
-    samples : int
-        States counted of each orbit.
-    values_per_column : int
-        Parameter values spread over each column.
-    longest_period : int
-        Longest period that is looked for where an orbit converges slowly.
-    repeats : bool
-        Whether exact repeats end an orbit; False only to measure the bare kernel.
-    """
-
-    transient: int = 1000
-    transient_limit: int = 1_000_000
-    samples: int = 1000
-    values_per_column: int = 4
-    longest_period: int = 64
-    repeats: bool = True
+MOST_CELLS = (1 << 31) - 1
 
 
 class Stopped(Failure):
@@ -164,25 +123,21 @@ class OrbitCounter:
         return load_module(text, Path(functions.__file__).read_text() + numba_version)
 
     @cached_property
-    def edges(self) -> NDArray[np.float64]:
-        """Cell edges of ``up``, each exact and rounded once."""
-        return self.view.up.edges(self.rows)
-
-    @cached_property
-    def cell_axis(self) -> tuple[float, float, float]:
-        """Low end, inverse cell size and how near to an edge the exact edges decide, in cells."""
+    def window(self) -> Window:
+        """The cells of ``up`` as kernels take them."""
         up = self.view.up
-        inverse = 1.0 / up.cell_size(self.rows)
-        low, high = float(self.edges[0]), float(self.edges[-1])
-        if up.scale == "log":
+        edges = up.edges(self.rows)
+        cell, relative = up.cell_size(self.rows), up.scale == "log"
+        low, high = float(edges[0]), float(edges[-1])
+        if relative:
             low, high = float(np.log(low)), float(np.log(high))
-        slack = 1e-15 * (self.rows + 2.0 * max(abs(low), abs(high)) * inverse)
-        return low, inverse, 4.0 * slack
+        slack = 4e-15 * (self.rows + 2.0 * max(abs(low), abs(high)) / cell)
+        return Window((low, 1.0 / cell, slack), edges, 0.5 * cell, relative)
 
     def at(self, columns: int, rows: int, rules: Rules) -> OrbitCounter:
         """Return a counter of the same orbits at another resolution and under other rules."""
         other = copy.copy(self)
-        for cached in ("edges", "cell_axis", "half_cell", "_all_values"):
+        for cached in ("window", "_all_values"):
             other.__dict__.pop(cached, None)
         other.columns, other.rows, other.rules = columns, rows, rules
         other._local = threading.local()
@@ -232,6 +187,10 @@ class OrbitCounter:
         """
         width, rules = last - first, self.rules
         stride = self.rows + 2
+        if (width + 1) * stride > MOST_CELLS:
+            raise TooLarge(
+                f"{width} columns of {self.rows} rows are too many cells for one strip; take fewer columns"
+            )
         counts = self._scratch((width + 1) * stride)
         block = self._run(first, last, counts, np.zeros(1, np.uint8) if stop is None else stop)
         if stop is not None and stop[0]:
@@ -267,13 +226,14 @@ class OrbitCounter:
         counts[:] = 0
         return counts
 
-    def _run(self, first: int, last: int, counts: NDArray[np.uint32], stop: NDArray[np.uint8]) -> _Block:
+    def _run(self, first: int, last: int, counts: NDArray[np.uint32], stop: NDArray[np.uint8]) -> Block:
         start, parameters = self._orbits(first, last)
         c = np.empty((max(self._source.coefficients, 1), start.shape[1]))
         self.module.coefficients(parameters, c)
         stride = np.int32(self.rows + 2)
         base = np.repeat(np.arange(last - first, dtype=np.int32) * stride, self.orbits_per_column)
-        block = _Block(self, start, c, self._keys(first, last), base, counts, stop)
+        key, bound = self._keys(first, last), float(self.family.escape)
+        block = Block(self.module, self.rules, self.window, bound, start, c, key, base, counts, stop)
         ready = block.settle()
         block.sample(ready)
         block.run_again()
@@ -282,11 +242,6 @@ class OrbitCounter:
     @cached_property
     def _source(self) -> StepSource:
         return step_source(self.family)
-
-    @cached_property
-    def half_cell(self) -> float:
-        """Half the size of a cell of ``up``, on a log axis in units of the logarithm."""
-        return 0.5 * self.view.up.cell_size(self.rows)
 
     def _orbits(self, first: int, last: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         starts = self.starts
@@ -313,125 +268,6 @@ class OrbitCounter:
         values = np.arange(self.rules.values_per_column, dtype=np.uint64)[None, :, None]
         starts = np.arange(len(self.starts), dtype=np.uint64)[None, None, :]
         return hashed(hashed(hashed(columns) ^ values) ^ starts).reshape(-1)
-
-
-class _Block:
-    """The orbits of neighbouring columns on their way through transient, decision and sampling."""
-
-    def __init__(
-        self,
-        counter: OrbitCounter,
-        start: NDArray[np.float64],
-        c: NDArray[np.float64],
-        key: NDArray[np.uint64],
-        base: NDArray[np.int32],
-        counts: NDArray[np.uint32],
-        stop: NDArray[np.uint8],
-    ) -> None:
-        orbits = start.shape[1]
-        self.counter, self.rules, self.kernels = counter, counter.rules, counter.module
-        self.start, self.x, self.c, self.key, self.stop = start, start.copy(), c, key, stop
-        self.bound = float(counter.family.escape)
-        self.window = (counter.cell_axis, counter.edges)
-        self.target = (base, counts)
-        self.trash = counts.size - counter.rows - 2
-        self.outcome = np.full(orbits, READY, np.int8)
-        self.again = np.zeros(orbits, np.bool_)
-        self.filled = np.zeros(orbits, np.int64)
-        self.on_repelling = np.zeros(1, np.int64)
-
-    def settle(self) -> NDArray[np.int64]:
-        """Run the transients and their extensions; return the orbits that are ready for sampling."""
-        rules = self.rules
-        limit = max(rules.transient, rules.transient_limit)
-        order = np.arange(self.outcome.size)
-        ready = []
-        done, steps = 0, rules.transient
-        while order.size and not self.stop[0]:
-            self.kernels.advance(self.x, self.c, self.key, order, done, steps, self.bound, self.outcome)
-            done += steps
-            if rules.repeats:
-                self._decide(order)
-            outcome = self.outcome[order]
-            ready.append(order[outcome == READY])
-            order = order[outcome == SLOW]
-            if done >= limit:
-                break
-            steps = min(max(done, 64), limit - done)
-        return np.sort(np.concatenate(ready)) if ready else np.empty(0, np.int64)
-
-    def _decide(self, order: NDArray[np.int64]) -> None:
-        longest = self.rules.longest_period
-        seen = (np.zeros(self.outcome.size, np.int64), *self._seen())
-        self.kernels.returns(self.x, self.c, order, longest, max(LOOK_AHEAD * longest, 64), *seen)
-        counter = self.counter
-        rules = (self.rules.samples, counter.half_cell, counter.view.up.scale == "log")
-        self.kernels.settle(
-            self.x, self.c, self.start, order, seen, rules, *self.window, *self.target, self.outcome,
-            self.on_repelling,
-        )  # fmt: skip
-        done = order[self.outcome[order] == FILLED]
-        self.filled[done] = self.rules.samples
-        self.again[order[self.outcome[order] == AGAIN]] = True
-
-    def sample(self, order: NDArray[np.int64]) -> None:
-        """Count the states of settled orbits, in rounds after which finished orbits drop out."""
-        samples, done = self.rules.samples, 0
-        begin = self.x.copy()
-        hit = np.zeros(self.outcome.size, np.int64)
-        while order.size and done < samples and not self.stop[0]:
-            steps = min(ROUND, samples - done)
-            self.kernels.sample(
-                self.x, self.c, self.key, order, 0, steps, self.bound, self.outcome, hit, self.target[0],
-                self.trash, *self.window, self.target[1],
-            )  # fmt: skip
-            done += steps
-            if not self.rules.repeats:
-                hit[:] = 0
-            order = self._finish(order, begin, hit, done)
-        if self.rules.repeats and order.size and not self.stop[0]:
-            longest = self.rules.longest_period
-            self.kernels.returns(self.x, self.c, order, longest, longest, hit, *self._seen())
-            self._finish(order, begin, hit, done)
-
-    def _finish(
-        self, order: NDArray[np.int64], begin: NDArray[np.float64], hit: NDArray[np.int64], done: int
-    ) -> NDArray[np.int64]:
-        """Decide after a round, and return the orbits that go on."""
-        self.kernels.finish(
-            self.x, self.c, begin, self.key, order, hit, (self.rules.samples, done), *self.window,
-            *self.target, self.outcome, self.filled,
-        )  # fmt: skip
-        self.again[order[self.outcome[order] == AGAIN]] = True
-        going_on: NDArray[np.int64] = order[self.outcome[order] == READY]
-        return going_on
-
-    def _seen(self) -> tuple[NDArray[np.int64], NDArray[np.float64], NDArray[np.float64]]:
-        """Return room for the period, the gap and the size of every orbit."""
-        orbits = self.outcome.size
-        return np.zeros(orbits, np.int64), np.zeros(orbits), np.zeros(orbits)
-
-    def run_again(self) -> None:
-        """Run the collapsed orbits once more from their starts, disturbed, and count them."""
-        order = np.flatnonzero(self.again)
-        if not order.size or self.stop[0]:
-            return
-        transient, samples = self.rules.transient, self.rules.samples
-        self.x[:, order] = self.start[:, order]
-        self.outcome[order] = READY
-        self.kernels.advance_disturbed(
-            self.x, self.c, self.key, order, 0, transient, self.bound, self.outcome
-        )
-        order = order[self.outcome[order] == READY]
-        begin = self.x.copy()
-        hit = np.zeros(self.outcome.size, np.int64)
-        self.kernels.sample_disturbed(
-            self.x, self.c, self.key, order, transient, samples, self.bound, self.outcome, hit,
-            self.target[0], self.trash, *self.window, self.target[1],
-        )  # fmt: skip
-        self.kernels.take_back(
-            begin, self.c, self.key, order, transient, samples, *self.window, *self.target, self.outcome
-        )
 
 
 def hashed(numbers: NDArray[np.uint64]) -> NDArray[np.uint64]:

@@ -15,7 +15,7 @@ from dask.delayed import delayed
 from numpy.typing import NDArray
 
 T = TypeVar("T")
-BATCH = 8
+BATCH = 32
 """Tasks a worker gets in one batch; only so many results wait for their turn."""
 
 
@@ -41,7 +41,13 @@ class Schedule:
         self.stop: NDArray[np.uint8] = np.zeros(1, np.uint8)
         self._pool = ThreadPoolExecutor(workers)
 
-    def run(self, tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
+    def run(
+        self,
+        tasks: Iterable[Callable[[], T]],
+        done: Callable[[T], None],
+        *,
+        at_once: int | None = None,
+    ) -> None:
         """Run tasks and hand over their results.
 
         Parameters
@@ -50,8 +56,11 @@ class Schedule:
             Consumed lazily, a batch at a time.
         done : callable of a result
             Called in the calling thread, in the order of the tasks.
+        at_once : int, optional
+            Most tasks that may be under way, where memory is short.
         """
-        for batch in _batches(tasks, BATCH * self.workers):
+        short = at_once is not None and at_once < self.workers
+        for batch in _batches(tasks, at_once if short and at_once else BATCH * self.workers):
             lazy = [delayed(task, pure=False)() for task in batch]
             graph = {key: node for one in lazy for key, node in one.__dask_graph__().items()}
             for result in threaded.get(graph, [one.key for one in lazy], pool=self._pool):

@@ -14,7 +14,7 @@ from atlas.config.load import Config
 from atlas.errors import ConfigRefused
 from atlas.orbits.schedule import Schedule, default_workers, schedule
 from atlas.output.folders import check_files, check_folder, check_site
-from atlas.output.forecast import need_of
+from atlas.output.forecast import builders, need_of
 from atlas.output.ledger import Ledger
 from atlas.output.printing import Made, check_lettering, make_sheet, sheet_of
 from atlas.output.reporter import Reporter, Silence
@@ -159,7 +159,7 @@ def _plan(config: Config, out: Path, only: Sequence[str], workers: int, budget: 
     for record in select(config, only).values():
         with _named(config):
             _checked_need(record, workers, budget)
-        planned.append(_planned(record, out))
+        planned.append(_planned(record, out, workers, budget))
     return planned
 
 
@@ -173,17 +173,18 @@ def _named(config: Config) -> Iterator[None]:
 
 
 def _checked_need(record: Record, workers: int, budget: int) -> Need:
-    need = need_of(record, workers)
+    need = need_of(record, workers, budget)
     check_fits(record.name, need.pixels, need.memory, budget)
     if not isinstance(record, TileSet):
         check_lettering(sheet_of(record))
     return need
 
 
-def _planned(record: Record, out: Path) -> _Planned:
+def _planned(record: Record, out: Path, workers: int, budget: int) -> _Planned:
     request = digest(record)
     if isinstance(record, TileSet):
         places, tile_set = Places.of(out, record.name), record
+        at_once = builders(record, workers, budget)
         check_site(places.site)
         check_files([places.index])
         return _Planned(
@@ -191,7 +192,7 @@ def _planned(record: Record, out: Path) -> _Planned:
             "tile set",
             request,
             (places.index, places.site),
-            lambda opened, reporter: make_tile_set(tile_set, places, opened, reporter),
+            lambda opened, reporter: make_tile_set(tile_set, places, opened, reporter, at_once),
         )
     sheet = sheet_of(record)
     files = sheet.files(out)

@@ -7,11 +7,13 @@ the arrays that are alive at the peak, over what the libraries take by themselve
 from __future__ import annotations
 
 from atlas.config.jobs import Figure, Plate, TileSet
+from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.step import step_source
 from atlas.output.printing import sheet_of
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
-from atlas.plan import BASE_MEMORY, Need
+from atlas.plan import BASE_MEMORY, DEFAULT_MEMORY, Need
+from tiles.column import strip_width
 from tiles.grid import TILE, level_pairs
 
 SECONDS_PER_SAMPLE = 1.2e-9
@@ -19,9 +21,10 @@ SECONDS_PER_SLOW_CALL = 1.0e-9
 SECONDS_PER_PIXEL = {"png": 3e-8, "tiff": 6e-8, "pdf": 4e-8, "svg": 4e-8}
 SECONDS_PER_TILE = 4e-3
 OCCUPIED_TILES = 0.5
+BYTES_PER_WAITING_CELL = 1
 
 
-def need_of(record: Plate | Figure | TileSet, workers: int) -> Need:
+def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:
     """Return what an output needs.
 
     With ``samples: auto`` the samples are those of a view that holds the whole attractor; a zoom into a part
@@ -32,6 +35,8 @@ def need_of(record: Plate | Figure | TileSet, workers: int) -> Need:
     record : Plate, Figure or TileSet
     workers : int
         Threads that count side by side.
+    budget : int
+        Memory in bytes; where it is short, fewer columns of a tile set are built at once.
 
     Raises
     ------
@@ -39,7 +44,7 @@ def need_of(record: Plate | Figure | TileSet, workers: int) -> Need:
         When the output cannot be laid out or counted at all.
     """
     if isinstance(record, TileSet):
-        return _need_of_tile_set(record, workers)
+        return _need_of_tile_set(record, workers, budget)
     width, height = record.pixels
     sheet = sheet_of(record)
     samples, seconds = 0, 0.0
@@ -51,17 +56,25 @@ def need_of(record: Plate | Figure | TileSet, workers: int) -> Need:
     return Need((width, height), samples, seconds, sheet.memory)
 
 
-def _need_of_tile_set(record: TileSet, workers: int) -> Need:
+def _need_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
     counter = tile_counter(record)
     tiles = sum(
         2 ** (across + up) for across, up in level_pairs(record.levels.across, record.levels.up, record.pairs)
     )
     seconds = _counting_seconds(counter) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
-    memory = building_memory(counter.rows, workers)
-    return Need(record.cells, counter.columns * counter.exposure, seconds / workers, memory)
+    at_once = builders(record, workers, budget)
+    memory = building_memory(counter.rows, at_once, block_width(counter))
+    return Need(record.cells, counter.columns * counter.exposure, seconds / at_once, memory)
 
 
-def building_memory(rows: int, workers: int) -> int:
+def builders(record: TileSet, workers: int, budget: int) -> int:
+    """Return how many tile columns are built side by side within a memory budget, 1 at least."""
+    counter = tile_counter(record)
+    room = (budget - BASE_MEMORY) // _column_memory(counter.rows, block_width(counter))
+    return max(1, min(workers, room, 1 << record.levels.across))
+
+
+def building_memory(rows: int, workers: int, block: int = 0) -> int:
     """Return the estimated peak memory of the process in bytes while a tile set is built.
 
     Parameters
@@ -69,10 +82,17 @@ def building_memory(rows: int, workers: int) -> int:
     rows : int
         Cells along the up axis at the deepest level.
     workers : int
-        Threads.
+        Tile columns that are built side by side.
+    block : int
+        Columns that a kernel counts at once.
     """
-    strip = 4 * max(CELLS_PER_STRIP, rows)
-    return BASE_MEMORY + workers * (2 * strip + 8 * TILE * rows)
+    return BASE_MEMORY + workers * _column_memory(rows, block)
+
+
+def _column_memory(rows: int, block: int) -> int:
+    """Return the memory of a tile column: its strip, the counts of a block, what waits for its tile."""
+    strip = strip_width(CELLS_PER_STRIP, rows)
+    return 4 * rows * (strip + min(strip, block) + 1) + BYTES_PER_WAITING_CELL * TILE * rows
 
 
 def _counting_seconds(counter: OrbitCounter) -> float:

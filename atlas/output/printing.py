@@ -34,8 +34,8 @@ from tiles.window import Axis
 from tiles.window import View as Window
 
 CELLS_SHADED_AT_ONCE = 1 << 20
-BYTES_PER_CELL, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, VECTOR_BYTES_PER_CELL = 6, 2, 8, 2
-"""What is alive at the peak, measured: counts and shades of a raster, then the page and its encoder."""
+BYTES_PER_COUNT, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, DRAWING_MEMORY = 4, 1, 5, 15 << 20
+"""What is alive at the peaks, measured: the counts of a raster, or the page with its encoder and its type."""
 
 
 class Colours(Protocol):
@@ -157,9 +157,9 @@ def sheet_memory(pixels: tuple[int, int], formats: Sequence[str], cells: Sequenc
     cells : sequence of int
         Cells of every raster.
     """
-    vector = VECTOR_BYTES_PER_CELL * sum(cells) if {"pdf", "svg"} & set(formats) else 0
-    each = TIFF_BYTES_PER_PIXEL if "tiff" in formats else BYTES_PER_PIXEL
-    return BASE_MEMORY + BYTES_PER_CELL * max(cells) + sum(cells) + each * pixels[0] * pixels[1] + vector
+    shades = sum(cells)
+    page = (TIFF_BYTES_PER_PIXEL if "tiff" in formats else BYTES_PER_PIXEL) * pixels[0] * pixels[1]
+    return BASE_MEMORY + shades + max(BYTES_PER_COUNT * max(cells), page + DRAWING_MEMORY)
 
 
 def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporter: Reporter) -> Made:

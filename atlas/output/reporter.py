@@ -12,7 +12,7 @@ class Reporter(Protocol):
         """Hear that a stage of an output begins, and of how many steps it is."""
 
     def advance(self, amount: int) -> None:
-        """Hear that some steps of the stage are done."""
+        """Hear that some steps of the stage are done; may be called from any thread."""
 
 
 class Silence:

@@ -6,6 +6,8 @@ import contextlib
 import os
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
+from functools import partial
+from functools import partial
 from pathlib import Path
 from typing import Any, Protocol, TypeVar
 
@@ -84,8 +86,19 @@ def tile_counter(job: TileSet) -> OrbitCounter:
     return counter_of(job, *job.cells)
 
 
-def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Reporter) -> Made:
+def make_tile_set(
+    job: TileSet, places: Places, opened: Schedule, reporter: Reporter, at_once: int | None = None
+) -> Made:
     """Count a tile set, build its index and its static folder; an interrupted run is continued.
+
+    Parameters
+    ----------
+    job : TileSet
+    places : Places
+    opened : Schedule
+    reporter : Reporter
+    at_once : int, optional
+        Most tile columns that may be built side by side, where memory is short.
 
     Raises
     ------
@@ -104,7 +117,7 @@ def make_tile_set(job: TileSet, places: Places, opened: Schedule, reporter: Repo
         return made[0].record
 
     reporter.begin(job.name, "counting", counter.columns * counter.exposure)
-    build_tile_set(job, places, source, header, certified, opened, reporter)
+    build_tile_set(job, places, source, header, certified, opened, reporter, at_once)
     return made[0]
 
 
@@ -132,6 +145,7 @@ def build_tile_set(
     certified: Callable[[Index], Mapping[str, Any]],
     opened: Schedule,
     reporter: Reporter,
+    at_once: int | None = None,
 ) -> None:
     """Build index and static folder from a source of strips; an interrupted run is continued.
 
@@ -149,6 +163,8 @@ def build_tile_set(
         Returns the certificate of the complete index.
     opened : Schedule
     reporter : Reporter
+    at_once : int, optional
+        Most tile columns that may be built side by side, where memory is short.
 
     Raises
     ------
@@ -168,7 +184,7 @@ def build_tile_set(
         pairs=job.pairs,
         source=source,
         header=header,
-        run=opened.run,
+        run=partial(opened.run, at_once=at_once),
         cells_per_strip=CELLS_PER_STRIP,
         unfinished=places.growing_index,
         finish=finish,
@@ -191,11 +207,12 @@ def make_site(
     """Write the static folder of an index in given colours."""
 
     def run(tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
-        def told(result: T) -> None:
-            done(result)
+        def told(task: Callable[[], T]) -> T:
+            result = task()
             reporter.advance(1)
+            return result
 
-        opened.run(tasks, told)
+        opened.run((partial(told, task) for task in tasks), done)
 
     chosen = {key: value for key, value in colours.items() if value is not None}
     build_site(index, site, run=run, unfinished=growing, **chosen)

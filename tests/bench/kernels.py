@@ -11,8 +11,8 @@ import numpy as np
 
 from atlas.families.catalogue import family
 from atlas.orbits.histogram import block_width
-from atlas.orbits.kernels import READY
 from atlas.orbits.orbit import OrbitCounter, Rules
+from atlas.orbits.orbit_kernels import READY
 from tests.bench.timing import best_times, report
 from tests.bench.twins import CTwin, has_compiler
 from tiles.window import View

@@ -1,0 +1,201 @@
+"""A block of neighbouring orbits on their way through transient, decision and sampling.
+
+How an orbit is treated, always by its own step numbers:
+
+1. It runs ``transient`` steps. It has *escaped* when a test, made after every 16th step of a stage and at the
+   end of each stage, finds a state variable not below the escape bound in size.
+2. It is looked at ahead, without being moved. A state that comes back bit for bit is a *repeat*: the cycle is
+   counted for all its samples and the orbit stops. If the multiplier of that cycle exceeds 1 + 1e-6 in size,
+   rounding has dropped the orbit onto a repelling cycle: it has *collapsed*, and is run again from its start
+   with every step disturbed by a hashed factor 1 - u 2**-40; unless its start lies on that cycle itself.
+3. If it comes back almost (nearer than 2**-10 of its size or its start's) at a period up to
+   ``longest_period`` and the distance to its limit, estimated as 4 d r / (1 - r), exceeds half a cell, it
+   runs on: as many steps again as it has done, up to ``transient_limit`` in all; then it is *unsettled* and
+   nothing of it is counted.
+4. Otherwise every following state is counted, in rounds of 512; a repeat found in a round fills the rest.
+   After the last round it is looked at ahead once more, up to ``longest_period``, for a collapse in that
+   round. An escape or a collapse takes back what was counted.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from types import ModuleType
+
+import numpy as np
+from numpy.typing import NDArray
+
+from atlas.orbits.orbit_kernels import AGAIN, FILLED, READY, SLOW
+
+ROUND = 512
+LOOK_AHEAD = 4
+
+
+@dataclass(frozen=True)
+class Rules:
+    """How orbits are sampled.
+
+    Attributes
+    ----------
+    transient, transient_limit : int
+        Steps before the first decision, and at most.
+    samples : int
+        States counted of each orbit.
+    values_per_column : int
+        Parameter values spread over each column.
+    longest_period : int
+        Longest period that is looked for where an orbit converges slowly.
+    repeats : bool
+        Whether exact repeats end an orbit; False only to measure the bare kernel.
+    """
+
+    transient: int = 1000
+    transient_limit: int = 1_000_000
+    samples: int = 1000
+    values_per_column: int = 4
+    longest_period: int = 64
+    repeats: bool = True
+
+
+@dataclass(frozen=True)
+class Window:
+    """The counted axis, as kernels take it.
+
+    Attributes
+    ----------
+    axis : (float, float, float)
+        Low end, inverse cell size, and how near to an edge the exact edges decide, in cells; of the logarithm
+        on a log axis.
+    edges : ndarray of float64, shape (rows + 1,)
+        Each exact and rounded once.
+    half_cell : float
+        In units of the axis, or of the logarithm.
+    relative : bool
+        Whether the axis is logarithmic.
+    """
+
+    axis: tuple[float, float, float]
+    edges: NDArray[np.float64]
+    half_cell: float
+    relative: bool
+
+
+class Block:
+    """The orbits of neighbouring columns on their way through transient, decision and sampling."""
+
+    def __init__(
+        self,
+        kernels: ModuleType,
+        rules: Rules,
+        window: Window,
+        bound: float,
+        start: NDArray[np.float64],
+        c: NDArray[np.float64],
+        key: NDArray[np.uint64],
+        base: NDArray[np.int32],
+        counts: NDArray[np.uint32],
+        stop: NDArray[np.uint8],
+    ) -> None:
+        orbits = start.shape[1]
+        self.kernels, self.rules, self.bound = kernels, rules, bound
+        self.half_cell, self.relative = window.half_cell, window.relative
+        self.window = (window.axis, window.edges)
+        self.start, self.x, self.c, self.key, self.stop = start, start.copy(), c, key, stop
+        self.target = (base, counts)
+        self.trash = counts.size - window.edges.size - 1
+        self.outcome = np.full(orbits, READY, np.int8)
+        self.again = np.zeros(orbits, np.bool_)
+        self.filled = np.zeros(orbits, np.int64)
+        self.on_repelling = np.zeros(1, np.int64)
+
+    def settle(self) -> NDArray[np.int64]:
+        """Run the transients and their extensions; return the orbits that are ready for sampling."""
+        rules = self.rules
+        limit = max(rules.transient, rules.transient_limit)
+        order = np.arange(self.outcome.size)
+        ready = []
+        done, steps = 0, rules.transient
+        while order.size and not self.stop[0]:
+            self.kernels.advance(self.x, self.c, self.key, order, done, steps, self.bound, self.outcome)
+            done += steps
+            if rules.repeats:
+                self._decide(order)
+            outcome = self.outcome[order]
+            ready.append(order[outcome == READY])
+            order = order[outcome == SLOW]
+            if done >= limit:
+                break
+            steps = min(max(done, 64), limit - done)
+        return np.sort(np.concatenate(ready)) if ready else np.empty(0, np.int64)
+
+    def _decide(self, order: NDArray[np.int64]) -> None:
+        longest = self.rules.longest_period
+        seen = (np.zeros(self.outcome.size, np.int64), *self._seen())
+        self.kernels.returns(self.x, self.c, order, longest, max(LOOK_AHEAD * longest, 64), *seen)
+        rules = (self.rules.samples, self.half_cell, self.relative)
+        self.kernels.settle(
+            self.x, self.c, self.start, order, seen, rules, *self.window, *self.target, self.outcome,
+            self.on_repelling,
+        )  # fmt: skip
+        done = order[self.outcome[order] == FILLED]
+        self.filled[done] = self.rules.samples
+        self.again[order[self.outcome[order] == AGAIN]] = True
+
+    def sample(self, order: NDArray[np.int64]) -> None:
+        """Count the states of settled orbits, in rounds after which finished orbits drop out."""
+        samples, done = self.rules.samples, 0
+        begin = self.x.copy()
+        hit = np.zeros(self.outcome.size, np.int64)
+        while order.size and done < samples and not self.stop[0]:
+            steps = min(ROUND, samples - done)
+            self.kernels.sample(
+                self.x, self.c, self.key, order, 0, steps, self.bound, self.outcome, hit, self.target[0],
+                self.trash, *self.window, self.target[1],
+            )  # fmt: skip
+            done += steps
+            if not self.rules.repeats:
+                hit[:] = 0
+            order = self._finish(order, begin, hit, done)
+        if self.rules.repeats and order.size and not self.stop[0]:
+            longest = self.rules.longest_period
+            self.kernels.returns(self.x, self.c, order, longest, longest, hit, *self._seen())
+            self._finish(order, begin, hit, done)
+
+    def _finish(
+        self, order: NDArray[np.int64], begin: NDArray[np.float64], hit: NDArray[np.int64], done: int
+    ) -> NDArray[np.int64]:
+        """Decide after a round, and return the orbits that go on."""
+        self.kernels.finish(
+            self.x, self.c, begin, self.key, order, hit, (self.rules.samples, done), *self.window,
+            *self.target, self.outcome, self.filled,
+        )  # fmt: skip
+        self.again[order[self.outcome[order] == AGAIN]] = True
+        going_on: NDArray[np.int64] = order[self.outcome[order] == READY]
+        return going_on
+
+    def _seen(self) -> tuple[NDArray[np.int64], NDArray[np.float64], NDArray[np.float64]]:
+        """Return room for the period, the gap and the size of every orbit."""
+        orbits = self.outcome.size
+        return np.zeros(orbits, np.int64), np.zeros(orbits), np.zeros(orbits)
+
+    def run_again(self) -> None:
+        """Run the collapsed orbits once more from their starts, disturbed, and count them."""
+        order = np.flatnonzero(self.again)
+        if not order.size or self.stop[0]:
+            return
+        transient, samples = self.rules.transient, self.rules.samples
+        self.x[:, order] = self.start[:, order]
+        self.outcome[order] = READY
+        self.kernels.advance_disturbed(
+            self.x, self.c, self.key, order, 0, transient, self.bound, self.outcome
+        )
+        order = order[self.outcome[order] == READY]
+        begin = self.x.copy()
+        hit = np.zeros(self.outcome.size, np.int64)
+        self.kernels.sample_disturbed(
+            self.x, self.c, self.key, order, transient, samples, self.bound, self.outcome, hit,
+            self.target[0], self.trash, *self.window, self.target[1],
+        )  # fmt: skip
+        self.kernels.take_back(
+            begin, self.c, self.key, order, transient, samples, *self.window, *self.target, self.outcome
+        )
