@@ -16,6 +16,7 @@ from atlas.formula.tree import (
     Unary,
     children,
     free_names,
+    is_condition,
     rebuilt,
 )
 from tiles.number import float_of
@@ -127,7 +128,7 @@ class StraightLine:
 
 
 def hoist(trees: Iterable[Node], states: Iterable[str]) -> tuple[list[Node], list[Node]]:
-    """Take what depends on parameters alone out of trees, so that it is computed once per parameter value.
+    """Take numbers that depend on parameters alone out of trees, to be computed once per parameter value.
 
     Parameters
     ----------
@@ -150,7 +151,7 @@ def hoist(trees: Iterable[Node], states: Iterable[str]) -> tuple[list[Node], lis
         names = free_names(node)
         if not names:
             return node
-        if not names & moving:
+        if not names & moving and not is_condition(node):
             return coefficients.setdefault(node, Name(f"coefficient {len(coefficients)}"))
         return rebuilt(node, tuple(visit(part) for part in children(node)))
 

@@ -7,7 +7,6 @@ import os
 from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from functools import partial
-from functools import partial
 from pathlib import Path
 from typing import Any, Protocol, TypeVar
 
