@@ -12,16 +12,19 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from atlas.config.load import load as load
     from atlas.config.load import parse_config as parse_config
-    from atlas.config.load import plate_from_parts as plate
+    from atlas.config.load import plate_from_parts
     from atlas.families.catalogue import family as family
     from atlas.figure.axes_image import draw_axes as draw_axes
     from atlas.orbits.counts import orbit_counts as orbit_counts
     from atlas.output.batch import render as render
-    from atlas.output.certificate import read as read_certificate
+    from atlas.output.certificate import read
     from atlas.output.printing import draw_plate as draw_plate
     from atlas.points.binning import bin_points as bin_points
     from tiles.window import Axis as Axis
     from tiles.window import View as View
+
+    plate = plate_from_parts
+    read_certificate = read
 
 _HOMES = {
     "Axis": ("tiles.window", "Axis"),

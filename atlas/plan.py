@@ -146,5 +146,5 @@ def check_arrays(size: tuple[int, int], budget: int) -> None:
     )
 
 
-BASE_MEMORY = 235 << 20
+BASE_MEMORY = 225 << 20
 """What the libraries take, measured: 215 MiB, and 45 MiB more when a map is compiled for the first time."""

@@ -15,7 +15,8 @@ from atlas.cli.options import Command, workers_and_memory
 def command(config: Path, workers: int | None, memory: str | None) -> None:
     """Validate CONFIG; print pixels, samples, estimated time and peak memory of every output.
 
-    With samples: auto, a zoom into a part of the attractor may take more samples than printed.
+    With samples: auto, a zoom into a part of the attractor may take more samples than printed. A map that is
+    used for the first time takes some seconds more.
     """
     from atlas.cli.tables import need_table
     from atlas.config.digests import normalised

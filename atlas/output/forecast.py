@@ -17,9 +17,9 @@ from tiles.column import strip_width
 from tiles.grid import TILE, level_pairs
 
 SECONDS_PER_SAMPLE = 1.2e-9
-SECONDS_PER_SLOW_CALL = 1.0e-9
-SECONDS_PER_PIXEL = {"png": 3e-8, "tiff": 6e-8, "pdf": 4e-8, "svg": 4e-8}
-SECONDS_PER_TILE = 4e-3
+SECONDS_PER_SLOW_CALL = 0.6e-9
+SECONDS_PER_PIXEL = {"png": 1.2e-8, "tiff": 3.5e-8, "pdf": 1.5e-8, "svg": 1.2e-8}
+SECONDS_PER_TILE = 1.5e-3
 OCCUPIED_TILES = 0.5
 BYTES_PER_WAITING_CELL = 1
 
