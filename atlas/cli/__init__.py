@@ -94,8 +94,9 @@ def _run(arguments: list[str] | None) -> int:
 
 
 def _told(message: str, code: int) -> int:
+    line = "".join(mark if mark.isprintable() else ascii(mark)[1:-1] for mark in message)
     with contextlib.suppress(OSError):
-        click.echo(f"atlas: {message}", err=True)
+        click.echo(f"atlas: {line}", err=True)
     return code
 
 

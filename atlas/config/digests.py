@@ -45,6 +45,14 @@ def digest(record: Plate | TileSet | Figure) -> str:
     return _hashed({"counting": COUNTING_VERSION, "output": normalised(record)})
 
 
+def decisive(job: Job) -> dict[str, Any]:
+    """Return what of a job decides its counts, as `normalised` writes it: ``family`` and ``settings``."""
+    return {
+        "family": {**job.family.as_config(), "name": job.family.name},
+        "settings": {key.name: _value(key, job) for key in JOB_KEYS if key.counts},
+    }
+
+
 def counting_digest(job: Job, columns: int, rows: int, *, samples: int | None = None) -> str:
     """Return a digest of what decides the counts of a job, as 32 hexadecimal digits.
 

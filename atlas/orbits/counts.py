@@ -3,24 +3,35 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from decimal import Decimal
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from atlas.config.view_rules import checked_set, checked_starts, drawn_view
+from atlas.config.digests import decisive
+from atlas.config.jobs import Plate
+from atlas.config.load import plate_from_parts
 from atlas.families.reader import Family
-from atlas.orbits.counting import piloted
+from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import Histogram, count_histogram
-from atlas.orbits.orbit import OrbitCounter, Rules
+from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import schedule
-from atlas.plan import check_arrays, check_counter, parse_memory
-from atlas.reading.place import Place
-from tiles.number import Exact, exact
+from atlas.output.certificate import as_text, certificate
+from atlas.output.certificate_reader import KEY
+from atlas.plan import check_arrays, parse_memory
+from atlas.reading.kinds import Whole
+from atlas.reading.place import Place, shown
+from tiles.number import Exact
 from tiles.strip import PER_COLUMN, Strip
 from tiles.tally import density
 from tiles.window import View
 
-Number = str | int | float | Exact
+Number = str | int | float | Fraction | Decimal | Exact
+KIND = "dataset"
+CELLS_AT_ONCE = 1 << 20
+_CELLS = Whole(1, 1 << 31)
 
 
 def orbit_counts(
@@ -33,7 +44,7 @@ def orbit_counts(
     transient: int = 1000,
     samples: int | str = 1000,
     values_per_column: int = 4,
-    transient_limit: int = 1_000_000,
+    transient_limit: int | None = None,
     longest_period: int = 64,
     workers: int | None = None,
     memory: str | int | None = None,
@@ -53,7 +64,7 @@ def orbit_counts(
     starts : sequence of mappings of str to number, optional
         Initial conditions; by default the family's own.
     transient, transient_limit : int
-        Steps before sampling, and at most, for orbits that settle slowly.
+        Steps before sampling, and at most, for orbits that settle slowly; the limit is 1 000 000 by default.
     samples : int or "auto"
         States counted of each orbit.
     values_per_column : int
@@ -72,7 +83,8 @@ def orbit_counts(
         or, on a log axis, of its natural logarithm) on both axes, up first; ``exposure``, ``below``,
         ``above``, ``escaped``, ``unsettled`` (samples) and ``collapsed`` (orbits) on the across axis.
         Coordinates are cell centres, ascending. In every column
-        inside + below + above + escaped + unsettled = exposure.
+        inside + below + above + escaped + unsettled = exposure. The certificate is in the attribute
+        ``atlas-certificate``; a Dataset saved with ``to_netcdf(path, engine="h5netcdf")`` carries it along.
 
     Raises
     ------
@@ -89,47 +101,55 @@ def orbit_counts(
     ('x', 'r')
     """
     place = Place()
-    view = drawn_view(family, view.across, view.up, place)
-    given = {name: exact(value) for name, value in (set or {}).items()}
-    begin = None if starts is None else [{k: exact(v) for k, v in one.items()} for one in starts]
-    rules = Rules(
-        transient,
-        max(transient, transient_limit),
-        1 if samples == "auto" else int(samples),
-        values_per_column,
-        longest_period,
-    )
-    counter = OrbitCounter(
+    columns, rows = _cells(size, place.at("size"))
+    check_arrays((columns, rows), parse_memory(memory))
+    job = plate_from_parts(
         family,
-        view,
-        *size,
-        rules,
-        set=checked_set(family, given, view, place.at("set")),
-        starts=checked_starts(family, begin, place.at("starts")),
+        view.across,
+        view.up,
+        set=set,
+        starts=starts,
+        name="dataset",
+        place=place,
+        transient=transient,
+        transient_limit=transient_limit,
+        samples=samples,
+        values_per_column=values_per_column,
+        longest_period=longest_period,
     )
-    check_counter(counter)
-    check_arrays(size, parse_memory(memory))
+    counter = counter_of(job, columns, rows)
     with schedule(workers) as opened:
-        if samples == "auto":
-            counter = counter.with_samples(piloted(counter, opened))
+        counter = resolved(job, counter, opened)
         histogram = count_histogram(counter, opened)
-    return dataset(histogram, counter)
+    return dataset(job, counter, histogram)
 
 
-def dataset(histogram: Histogram, counter: OrbitCounter) -> Any:
+def _cells(size: tuple[int, int], place: Place) -> tuple[int, int]:
+    if not isinstance(size, tuple | list) or len(size) != 2:
+        raise place.refusal(f"{shown(size)} is no resolution; write (columns, rows)")
+    across, up = (_CELLS.read(cells, place.at(number)) for number, cells in enumerate(size, 1))
+    return across, up
+
+
+def dataset(job: Plate, counter: OrbitCounter, histogram: Histogram) -> Any:
     """Return a histogram as an xarray Dataset, as `orbit_counts` describes it."""
+    family, digest = job.family, histogram.digest()
+    sampled = Sampled(counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled)
+    config = {"kind": KIND, **decisive(job), "resolution": [counter.columns, counter.rows]}
+    record = certificate(KIND, family.name, config, digest, histogram.shares(), sampled.record())
     return labelled(
         counter.view,
         histogram.strip,
         {
-            "family": counter.family.name,
-            "formula": "; ".join(counter.family.formula_lines()),
+            "family": family.name,
+            "formula": "; ".join(family.formula_lines()),
             "samples": histogram.samples,
             "samples_filled_by_repeats": histogram.filled,
             "orbits_on_repelling_start": histogram.on_repelling,
-            "counts_digest": histogram.digest(),
+            "counts_digest": digest,
+            KEY: as_text(record),
         },
-        counter.family.label_and_unit,
+        family.label_and_unit,
     )
 
 
@@ -159,7 +179,7 @@ def labelled(
     made = xarray.Dataset(
         {
             "counts": ((up, across), np.ascontiguousarray(strip.counts.T)),
-            "density": ((up, across), np.ascontiguousarray(density(strip.counts, strip.exposure, cell).T)),
+            "density": ((up, across), _densities(strip, cell)),
             **{name: (across, getattr(strip, name)) for name in PER_COLUMN},
         },
         coords={up: view.up.centres(rows), across: view.across.centres(columns)},
@@ -175,3 +195,14 @@ def labelled(
             "high": str(axis.high),
         }
     return made
+
+
+def _densities(strip: Strip, cell: float) -> NDArray[np.float64]:
+    """Return the densities of a strip, shape (rows, columns), without a second array of that size."""
+    columns, rows = strip.counts.shape
+    whole = np.empty((rows, columns))
+    width = max(1, CELLS_AT_ONCE // rows)
+    for first in range(0, columns, width):
+        block = slice(first, first + width)
+        whole[:, block] = density(strip.counts[block], strip.exposure[block], cell).T
+    return whole

@@ -14,6 +14,9 @@ from dask import threaded
 from dask.delayed import delayed
 from numpy.typing import NDArray
 
+from atlas.errors import PlanRefused, shown
+
+MOST_THREADS = 1024
 T = TypeVar("T")
 BATCH = 32
 """Tasks a worker gets in one batch; only so many results wait for their turn."""
@@ -22,6 +25,21 @@ BATCH = 32
 def default_workers() -> int:
     """Return how many processors this process may use."""
     return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def threads(workers: int | None) -> int:
+    """Return how many threads are asked for: one a processor for None.
+
+    Raises
+    ------
+    PlanRefused
+        For anything but a whole number from 1 to 1024.
+    """
+    if workers is None:
+        return default_workers()
+    if not isinstance(workers, int) or not 1 <= workers <= MOST_THREADS:
+        raise PlanRefused(f"workers: {shown(workers)} is not a whole number from 1 to {MOST_THREADS}")
+    return workers
 
 
 class Schedule:
@@ -81,8 +99,13 @@ def schedule(workers: int | None = None) -> Iterator[Schedule]:
     ----------
     workers : int, optional
         Number of threads; the default is :func:`default_workers`.
+
+    Raises
+    ------
+    PlanRefused
+        For a number that is none of threads.
     """
-    opened = Schedule(workers or default_workers())
+    opened = Schedule(threads(workers))
     try:
         yield opened
     except BaseException:
