@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import mpmath
 
@@ -10,7 +11,7 @@ DIGITS = 60
 
 
 def interpolate(
-    function: Callable[[mpmath.mpf], mpmath.mpf], low: object, high: object, degree: int
+    function: Callable[[mpmath.mpf], mpmath.mpf], low: Any, high: Any, degree: int
 ) -> list[float]:
     """Return the monomial coefficients of the interpolant at Chebyshev nodes of an interval."""
     with mpmath.workdps(DIGITS):
