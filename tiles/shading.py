@@ -206,7 +206,11 @@ def key_labels(fit: Fit) -> list[tuple[float, str]]:
 
 
 def colour_table(
-    given: Palette | str, *, background: str | None = None, missing: str | None = None
+    given: Palette | str,
+    *,
+    background: str | None = None,
+    missing: str | None = None,
+    shading: str | None = None,
 ) -> NDArray[np.uint8]:
     """Return the colour of every palette index.
 
@@ -221,6 +225,9 @@ def colour_table(
         A palette or the name of a built-in one.
     background, missing : str, optional
         Colours of index 0 and of index ``MISSING`` in place of the palette's own.
+    shading : str, optional
+        With ``"ink"`` the greys are line art: every shade is black and what was not sampled has the colour of
+        empty cells, unless ``missing`` is given.
 
     Returns
     -------
@@ -234,7 +241,10 @@ def colour_table(
     from tiles.colour_tables import SHADES
 
     chosen = palette(given) if isinstance(given, str) else given
-    if PALETTES.get(chosen.name) == chosen and chosen.name in SHADES:
+    if shading == "ink" and chosen == PALETTES["grey"]:
+        shades = np.zeros((LEVELS, 3), np.uint8)
+        missing = missing or background or chosen.background
+    elif PALETTES.get(chosen.name) == chosen and chosen.name in SHADES:
         shades = np.frombuffer(bytes.fromhex(SHADES[chosen.name]), np.uint8).reshape(LEVELS, 3)
     else:
         shades = shades_by_datashader(chosen)

@@ -68,7 +68,7 @@ def build_site(
         When the disk is full or the folder is closed.
     """
     unfinished = out_dir.parent / ".parts" / out_dir.name if unfinished is None else unfinished
-    table = colour_table(palette, background=background, missing=missing)
+    table = colour_table(palette, background=background, missing=missing, shading=shading)
     with Index.open(index_path) as index:
         fit = index.fit(shading) or index.fit_from(shading=shading)
         present = {pair: index.present(pair) for pair in index.pairs}

@@ -48,7 +48,7 @@ def draw_axes(
     exposure = dataset["exposure"].to_numpy()
     height = (math.log(top / bottom) if _is_log(up) else top - bottom) / up.size
     shades = shade_counts(counts, exposure, height, fit_counts(counts, exposure, height, shading))
-    colours = colour_table(palette, background=background)[shades.T]
+    colours = colour_table(palette, background=background, shading=shading)[shades.T]
     axes.set_xscale("log" if _is_log(across) else "linear")
     axes.set_yscale("log" if _is_log(up) else "linear")
     axes.set(xlim=(left, right), ylim=(bottom, top))

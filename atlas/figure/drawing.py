@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from atlas.figure import margins
 from atlas.figure.boxes import Box, InsetBox, Layout, PanelBox, Spacing
 from atlas.figure.lettering import plain
-from atlas.figure.pieces import WHITE, Block, Colour, PanelText, Picture, Piece, Raster, Words, frame
+from atlas.figure.pieces import BLACK, WHITE, Block, Colour, PanelText, Picture, Piece, Raster, Words, frame
 
 MARK: Colour = (200, 62, 10)
 GREY_MARK: Colour = (110, 110, 110)
@@ -77,12 +77,13 @@ def _marks(panel: PanelBox, raster: Raster, spacing: Spacing) -> Iterator[Block]
     if raster.unsettled is None or not raster.unsettled.any():
         return
     grey = bool((raster.table == raster.table[:, :1]).all())
+    colour = BLACK if raster.bilevel else GREY_MARK if grey else MARK
     height, least = round(spacing.ems(MARK_HEIGHT)) + 1, round(spacing.ems(MARK_WIDTH)) + 1
     for first, last in _runs(raster.unsettled, least):
         width = max(least, last - first)
         left = panel.left + min(max(0, (first + last - width) // 2), panel.width - width)
         for top in (panel.top - spacing.line - height, panel.raster.bottom + spacing.line):
-            yield Block(Box(left, top, width, height), GREY_MARK if grey else MARK)
+            yield Block(Box(left, top, width, height), colour)
 
 
 def _runs(flags: NDArray[np.bool_], gap: int) -> list[tuple[int, int]]:

@@ -1,4 +1,7 @@
-"""Painting a page into pixels: palette indices where 256 colours suffice, so that no colour is rounded."""
+"""Painting a page into pixels: palette indices where 256 colours suffice, so that no colour is rounded.
+
+A page whose pictures are line art is black and white throughout, its words too.
+"""
 
 from __future__ import annotations
 
@@ -9,9 +12,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from atlas.figure.boxes import Box
-from atlas.figure.pieces import Block, Picture, Piece, Words
+from atlas.figure.pieces import BLACK, WHITE, Block, Picture, Piece, Words
 
 LEAST_GREYS = 16
+HALF = 128  # the grey from which type in line art is paper
 Stamp = tuple[int, int, NDArray[np.uint8]]
 
 
@@ -34,6 +38,11 @@ class Painted:
     def grey(self) -> bool:
         """Whether every colour of the palette is a grey."""
         return self.table is not None and bool((self.table == self.table[:, :1]).all())
+
+    @property
+    def bilevel(self) -> bool:
+        """Whether the palette is black, then white."""
+        return self.table is not None and self.table.tolist() == [[0, 0, 0], [255, 255, 255]]
 
 
 def paint(width: int, height: int, page: Sequence[Piece], stamp: Callable[[Words], Stamp]) -> Painted:
@@ -59,9 +68,7 @@ def paint(width: int, height: int, page: Sequence[Piece], stamp: Callable[[Words
     canvas[:] = ink.white
     for piece in page:
         if isinstance(piece, Picture):
-            _region(canvas, piece.box)[:] = (
-                piece.indices if ink.table is not None else piece.table[piece.indices]
-            )
+            ink.copy(piece, _region(canvas, piece.box))
         elif isinstance(piece, Block):
             _region(canvas, piece.box)[:] = ink.of(piece.colour)
         else:
@@ -80,15 +87,32 @@ class _Ink:
     def white(self) -> NDArray[np.uint8]:
         return np.asarray(self.greys[255])
 
+    def copy(self, piece: Picture, under: NDArray[np.uint8]) -> None:
+        """Write a picture into its part of the canvas."""
+        if self.table is None:
+            under[:] = piece.table[piece.indices]
+        elif self.table is _BILEVEL:
+            white = (piece.table == WHITE).all(axis=1).astype(np.uint8)
+            for line, indices in zip(under, piece.indices, strict=True):
+                line[:] = white[indices]
+        else:
+            under[:] = piece.indices
+
     def of(self, colour: tuple[int, int, int]) -> NDArray[np.uint8]:
+        """Return how a colour is written."""
         if self.table is None:
             return np.array(colour, np.uint8)
         same = (self.table == np.array(colour)).all(axis=1)
         return np.asarray(np.flatnonzero(same)[-1], np.uint8)
 
 
+_BILEVEL = np.array([BLACK, WHITE], np.uint8)
+
+
 def _ink(page: Sequence[Piece]) -> _Ink:
     """Put the pictures' table first, then other colours, then greys as far as a palette has room."""
+    if _is_line_art(page):
+        return _Ink(_BILEVEL, (np.arange(256) >= HALF).astype(np.uint8))
     tables = {piece.table.tobytes(): piece.table for piece in page if isinstance(piece, Picture)}
     extra = sorted({piece.colour for piece in page if isinstance(piece, Block)})
     first = next(iter(tables.values()), np.empty((0, 3), np.uint8))
@@ -101,6 +125,13 @@ def _ink(page: Sequence[Piece]) -> _Ink:
     table = np.concatenate([first, np.array(extra, np.uint8).reshape(-1, 3), greys])
     nearest = np.round(np.arange(256) * (count - 1) / 255).astype(np.uint8)
     return _Ink(table, nearest + np.uint8(len(table) - count))
+
+
+def _is_line_art(page: Sequence[Piece]) -> bool:
+    """Return whether every picture and rectangle of a page is black and white."""
+    pictures = [piece for piece in page if isinstance(piece, Picture)]
+    colours = {piece.colour for piece in page if isinstance(piece, Block)}
+    return bool(pictures) and colours <= {BLACK, WHITE} and all(piece.bilevel for piece in pictures)
 
 
 def _region(canvas: NDArray[np.uint8], box: Box) -> NDArray[np.uint8]:

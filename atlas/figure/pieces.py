@@ -38,6 +38,11 @@ class Raster:
     view: View
     unsettled: NDArray[np.bool_] | None = None
 
+    @property
+    def bilevel(self) -> bool:
+        """Whether it is line art, see :func:`is_bilevel`."""
+        return is_bilevel(self.indices, self.table)
+
 
 @dataclass(frozen=True)
 class PanelText:
@@ -66,6 +71,11 @@ class Picture:
     box: Box
     indices: NDArray[np.uint8]
     table: NDArray[np.uint8]
+
+    @property
+    def bilevel(self) -> bool:
+        """Whether it is line art, see :func:`is_bilevel`."""
+        return is_bilevel(self.indices, self.table)
 
 
 @dataclass(frozen=True)
@@ -109,6 +119,13 @@ class Words:
 
 
 Piece = Picture | Block | Words
+
+
+def is_bilevel(indices: NDArray[np.uint8], table: NDArray[np.uint8]) -> bool:
+    """Return whether a table has black and no used colour is another than black and white."""
+    black, white = (table == BLACK).all(axis=1), (table == WHITE).all(axis=1)
+    either = black | white
+    return bool(black.any()) and all(bool(either[line].all()) for line in indices)
 
 
 def frame(box: Box, line: int, colour: Colour = BLACK) -> Iterator[Block]:

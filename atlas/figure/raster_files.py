@@ -25,7 +25,7 @@ def png(painted: Painted, dpi: float | None = None, record: str | None = None) -
     Parameters
     ----------
     painted : Painted
-        Pixels; with a table the file is an 8-bit palette PNG.
+        Pixels; with a table the file is an 8-bit palette PNG, in black and white a 1-bit PNG.
     dpi : float, optional
         Resolution; PNG holds whole pixels a metre.
     record : str, optional
@@ -41,7 +41,7 @@ def png(painted: Painted, dpi: float | None = None, record: str | None = None) -
 
 
 def tiff(painted: Painted, dpi: float, record: str) -> bytes:
-    """Return a page as a TIFF file: LZW, RGB or grey, resolution exact.
+    """Return a page as a TIFF file: LZW, RGB, grey or 1-bit, resolution exact.
 
     Parameters
     ----------
@@ -59,7 +59,9 @@ def tiff(painted: Painted, dpi: float, record: str) -> bytes:
     tags[_DESCRIPTION] = record
     tags[_ACROSS] = tags[_UP] = IFDRational(exact.numerator, exact.denominator)
     tags[_UNIT] = _INCH
-    image = _image(painted).convert("L" if painted.grey else "RGB")
+    image = _image(painted)
+    if not painted.bilevel:
+        image = image.convert("L" if painted.grey else "RGB")
     return _saved(image, format="TIFF", compression="tiff_lzw", tiffinfo=tags)
 
 
@@ -72,6 +74,8 @@ def _image(painted: Painted) -> Any:
     from PIL import Image
 
     height, width = painted.pixels.shape[:2]
+    if painted.bilevel:
+        return Image.frombuffer("1", (width, height), np.packbits(painted.pixels, axis=1), "raw", "1", 0, 1)
     pixels = np.ascontiguousarray(painted.pixels)
     if painted.table is None:
         return Image.frombuffer("RGB", (width, height), pixels, "raw", "RGB", 0, 1)

@@ -105,7 +105,6 @@ def svg_with_pictures(svg: bytes, pictures: Sequence[tuple[Box, bytes]], dpi: fl
         places = " ".join(f'{name}="{length * 72 / dpi:.6f}"' for name, length in sides)
         out += [
             f'<image {places} preserveAspectRatio="none" '.encode(),
-            b'style="image-rendering:crisp-edges;image-rendering:pixelated" ',
             b'xlink:href="data:image/png;base64,',
             base64.b64encode(png),
             b'"/>',

@@ -235,7 +235,9 @@ def shaded(colours: Colours, view: Window, strip: Strip) -> tuple[Fit, Raster]:
     """Shade the counts of a view with a fit of its own; return the fit and the raster, top line first."""
     height = view.up.cell_size(strip.counts.shape[1])
     fit = fit_counts(strip.counts, strip.exposure, height, colours.shading)
-    table = colour_table(colours.palette, background=colours.background, missing=colours.missing)
+    table = colour_table(
+        colours.palette, background=colours.background, missing=colours.missing, shading=colours.shading
+    )
     columns, rows = strip.counts.shape
     lines = np.empty((rows, columns), np.uint8)
     width = max(1, CELLS_SHADED_AT_ONCE // rows)

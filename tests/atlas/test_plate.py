@@ -21,9 +21,11 @@ from atlas.figure.layout import FigureRequest, PlateRequest
 from atlas.figure.pieces import Words
 from atlas.figure.plate import draw, files
 from atlas.figure.typeset import LetteringRefused, Typesetter, settings
+from atlas.output.certificate_reader import read
 from atlas.reading.sheet import Inset
 from tests.atlas.plates import RECORD, VIEW, filled, made, opened, pdf_images, pdf_objects, request
 from tiles.errors import OutputFailed, Refusal
+from tiles.shading import LEVELS, colour_table
 from tiles.window import View
 
 ALL = ("png", "tiff", "pdf", "svg")
@@ -122,6 +124,7 @@ def test_svg_needs_no_font() -> None:
     (image,) = (element for element in root.iter() if element.tag.endswith("}image"))
     places = [float(image.attrib[key]) * 300 / 72 for key in ("x", "y", "width", "height")]
     assert places == pytest.approx([page.left, page.top, page.width, page.height], abs=1e-4)
+    assert b"image-rendering" not in svg  # shown reduced, thin branches must not become dots
 
 
 def test_equal_pages_are_byte_equal_whatever_matplotlib_is_told() -> None:
@@ -149,6 +152,74 @@ def test_a_grey_plate_is_a_grey_tiff() -> None:
     panel = page.panels[0]
     crop = opened(data)[panel.top : panel.top + panel.height, panel.left : panel.left + panel.width]
     assert np.array_equal(crop, marked["plate"].table[marked["plate"].indices])
+
+
+@pytest.mark.parametrize("form", ["png", "tiff"])
+@pytest.mark.parametrize(
+    "asked",
+    [
+        request(3543, 2362, 1000, title="Größe", letter="a", inset=INSET, has_key=True),
+        request(1001, 703, 300),
+        FigureRequest("f", FOUR, 1800, 1300, 300, 7.0),
+    ],
+    ids=["plate", "odd width", "figure"],
+)
+def test_ink_on_grey_is_one_bit_a_pixel(
+    tmp_path: Path, asked: PlateRequest | FigureRequest, form: str
+) -> None:
+    from PIL import Image
+
+    page, rasters, texts = filled(asked, "grey")
+    table = colour_table("grey", shading="ink")
+    assert {tuple(row) for row in table.tolist()} == {(0, 0, 0), (255, 255, 255)}
+    rasters = {name: replace(raster, table=table) for name, raster in rasters.items()}
+    first = page.panels[0]
+    rasters[first.name] = replace(rasters[first.name], unsettled=np.arange(first.width) == 9)
+    file = tmp_path / "made"
+    file.write_bytes(dict(files(page, rasters, texts, (form,), RECORD))[form])
+    assert read(file) == RECORD
+    with Image.open(file) as image:
+        assert (image.mode, image.size) == ("1", (asked.width, asked.height))
+        assert {colour for _, colour in image.getcolors()} == {0, 255}
+        assert image.info["dpi"] == pytest.approx((asked.dpi, asked.dpi), abs=0.0 if form == "tiff" else 0.02)
+        assert image.info.get("compression") == ("tiff_lzw" if form == "tiff" else None)
+        pixels = np.asarray(image.convert("RGB"))
+    for panel in page.panels:
+        box, name = (panel.inset.raster, f"{panel.name}/inset") if panel.inset else (panel.raster, panel.name)
+        crop = pixels[box.top : box.bottom, box.left : box.right]
+        assert np.array_equal(crop, table[rasters[name].indices])
+
+
+def test_type_in_line_art_covers_what_it_covers_in_grey() -> None:
+    page, rasters, texts = filled(request(1772, 1181, 500), "grey")
+    grey = opened(dict(files(page, rasters, texts, ("png",), RECORD))["png"])[..., 0]
+    ink = {"plate": replace(rasters["plate"], table=colour_table("grey", shading="ink"))}
+    art = opened(dict(files(page, ink, texts, ("png",), RECORD))["png"])[..., 0]
+    outside = np.ones(grey.shape, bool)
+    panel = page.panels[0]
+    outside[panel.top : panel.top + panel.height, panel.left : panel.left + panel.width] = False
+    assert len(np.unique(grey[outside])) > 10
+    clear = outside & (np.abs(grey.astype(int) - 128) > 8)  # a palette holds fewer greys than 256
+    assert np.array_equal(art[clear] == 0, grey[clear] < 128)
+
+
+@pytest.mark.parametrize(
+    ("palette", "colours"),
+    [("blue", {}), ("grey", {"missing": "#f0f0f0"}), ("grey", {"background": "#eeeeee"})],
+)
+def test_ink_with_other_colours_is_no_line_art(palette: str, colours: dict[str, str]) -> None:
+    from PIL import Image
+
+    page, rasters, texts = filled(request(), palette)
+    table = colour_table(palette, shading="ink", **colours)
+    ink = {"plate": replace(rasters["plate"], table=table)}
+    data = dict(files(page, ink, texts, ("png", "tiff"), RECORD))
+    with Image.open(io.BytesIO(data["png"])) as png, Image.open(io.BytesIO(data["tiff"])) as tiff:
+        assert (png.mode, tiff.mode) == ("P", "L" if palette == "grey" else "RGB")
+    only = replace(ink["plate"], indices=np.full_like(ink["plate"].indices, LEVELS))
+    data = dict(files(page, {"plate": only}, texts, ("png",), RECORD))
+    with Image.open(io.BytesIO(data["png"])) as png:
+        assert png.mode == ("1" if palette == "grey" else "P")  # what is not used does not count
 
 
 @pytest.mark.parametrize(("palette", "colour"), [("blue", MARK), ("grey", GREY_MARK)])

@@ -208,6 +208,19 @@ def test_background_and_missing_are_settable_and_the_shades_stay():
         colour_table("bleu")
 
 
+def test_ink_is_black_on_the_greys_and_the_palettes_own_elsewhere():
+    table = colour_table("grey", shading="ink")
+    assert table[0].tolist() == table[MISSING].tolist() == [255, 255, 255]
+    assert not table[1:MISSING].any()
+    paper = colour_table("grey", shading="ink", background="#fed", missing="#123456")
+    assert paper[[0, MISSING]].tolist() == [[0xFF, 0xEE, 0xDD], [0x12, 0x34, 0x56]]
+    assert colour_table("grey", shading="ink", background="#fed")[MISSING].tolist() == [0xFF, 0xEE, 0xDD]
+    for name in PALETTES:
+        if name != "grey":
+            assert (colour_table(name, shading="ink") == colour_table(name)).all()
+        assert (colour_table(name, shading="linear") == colour_table(name)).all()
+
+
 def test_drawing_imports_neither_datashader_nor_colorcet():
     code = (
         "import sys, numpy as n; from tiles.shading import *; c = n.eye(9, dtype='u4');"
