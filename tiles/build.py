@@ -22,7 +22,7 @@ from tiles.grid import TILE, Address, Pair, level_pairs
 from tiles.index import Index
 from tiles.pyramid import Counts, halve_across, join_across, pair_sums, tiles_of_column
 from tiles.stages import Stage, stages
-from tiles.store import Readers, written
+from tiles.store import Readers, shared, written
 from tiles.tasks import Run, serially
 from tiles.window import Axis, View
 
@@ -191,16 +191,23 @@ def _continued(path: Path, header: Mapping[str, Any]) -> Index:
 
 
 def _opened(path: Path) -> Index | None:
-    """Open an unfinished index; None where there is none, or only the torn beginning of one."""
+    """Open an unfinished index; None where there is none, or only the torn beginning of one.
+
+    One that another run holds is no torn one: it is reported, and stays.
+    """
     try:
         index = Index.open(path, write=True, finished=False)
     except (IndexRefused, sqlite3.DatabaseError):
         return None
     try:
-        index.record("header")
+        with shared(path):
+            index.record("header")
     except sqlite3.DatabaseError:
         index.close()
         return None
+    except BaseException:
+        index.close()
+        raise
     return index
 
 

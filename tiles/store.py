@@ -17,6 +17,8 @@ from tiles.errors import IndexRefused, OutputFailed
 
 S = TypeVar("S", bound="Store")
 VERSION = 1
+PATIENCE = 5.0
+"""Seconds that a writer waits for another one."""
 _APPLICATION = 0x74696C65
 _PAGES_BEFORE_CHECKPOINT = 4096
 _SCHEMA = """
@@ -58,7 +60,7 @@ class Store:
             When the file cannot be written.
         """
         with written(path):
-            connection = sqlite3.connect(path, isolation_level=None, check_same_thread=False)
+            connection = _connected(str(path))
             connection.execute("PRAGMA page_size = 8192")
             connection.execute(f"PRAGMA application_id = {_APPLICATION}")
             connection.execute(f"PRAGMA user_version = {VERSION}")
@@ -86,16 +88,19 @@ class Store:
         ------
         IndexRefused
             When there is no such file, or it is none of a version that this program reads.
+        OutputFailed
+            When another run holds the file.
         """
         if not path.is_file():
             raise IndexRefused(f"{path}: there is no such index")
         address = f"file:{quote(str(path.absolute()))}?mode={'rw' if write else 'ro'}"
-        connection = sqlite3.connect(address, uri=True, isolation_level=None, check_same_thread=False)
+        connection = _connected(address, uri=True)
         store = cls(path, connection)
         try:
-            store._check(finished)
-            if write:
-                store._start_writing()
+            with shared(path):
+                store._check(finished)
+                if write:
+                    store._start_writing()
         except BaseException:
             connection.close()
             raise
@@ -159,7 +164,9 @@ class Store:
         try:
             application = self._db.execute("PRAGMA application_id").fetchone()[0]
             version = self._db.execute("PRAGMA user_version").fetchone()[0]
-        except sqlite3.DatabaseError:
+        except sqlite3.DatabaseError as problem:
+            if _is_locked(problem):
+                raise
             application = version = 0
         if application != _APPLICATION:
             raise IndexRefused(f"{self.path} is not a tile index")
@@ -212,11 +219,34 @@ class Readers(Generic[S]):
 
 @contextmanager
 def written(path: Path) -> Iterator[None]:
-    """Turn a full disk or a closed folder into an :class:`OutputFailed` that names the file."""
+    """Turn a full disk, a closed folder or a lock into an :class:`OutputFailed` that names the file."""
     try:
-        yield
+        with shared(path):
+            yield
     except (OSError, sqlite3.OperationalError) as problem:
         reason = problem.strerror if isinstance(problem, OSError) else str(problem)
         raise OutputFailed(
             f"{path}: cannot be written: {reason}; free some space or give another folder"
         ) from problem
+
+
+@contextmanager
+def shared(path: Path) -> Iterator[None]:
+    """Turn the lock of another run into an :class:`OutputFailed` that names the file."""
+    try:
+        yield
+    except sqlite3.OperationalError as problem:
+        if not _is_locked(problem):
+            raise
+        raise OutputFailed(
+            f"{path} is being written by another run; wait for it or give another folder"
+        ) from problem
+
+
+def _is_locked(problem: sqlite3.DatabaseError) -> bool:
+    primary = getattr(problem, "sqlite_errorcode", 0) & 0xFF  # the rest says more about the cause
+    return primary in (sqlite3.SQLITE_BUSY, sqlite3.SQLITE_LOCKED)
+
+
+def _connected(address: str, uri: bool = False) -> sqlite3.Connection:
+    return sqlite3.connect(address, timeout=PATIENCE, uri=uri, isolation_level=None, check_same_thread=False)

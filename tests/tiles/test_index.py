@@ -13,6 +13,7 @@ from tiles.errors import IndexRefused, OutputFailed
 from tiles.grid import TILE, Address
 from tiles.index import Index
 from tiles.shading import fit_counts
+from tiles.store import written
 from tiles.strip import PER_COLUMN
 
 HEADER = {
@@ -287,3 +288,17 @@ def test_the_written_description_suffices_to_read_a_tile(index):
     assert np.array_equal(found, counts)
     numbers = np.frombuffer(zlib.decompress(columns[0]), "<u8").reshape(6, 256)
     assert numbers[1, 0] == 256
+
+
+def test_the_lock_of_another_run_is_reported_as_such(index, monkeypatch):
+    monkeypatch.setattr("tiles.store.PATIENCE", 0.05)
+    with Index.open(index.path, write=True, finished=False) as late:
+        with index.transaction(), pytest.raises(OutputFailed) as told, written(late.path), late.transaction():
+            pass
+        assert str(told.value) == (
+            f"{index.path} is being written by another run; wait for it or give another folder"
+        )
+        with pytest.raises(OutputFailed, match="another run"), written(late.path):
+            late.finish()
+        with written(late.path), late.transaction():
+            late.put_record("free", 1)
