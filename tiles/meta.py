@@ -36,8 +36,9 @@ def meta(
     ----------
     header : mapping
         Of the index: ``title``, ``family``, ``formula`` (lines), ``note``, ``labels`` and ``units`` (by axis
-        name), ``caption`` of the colour key and ``plate`` (what a config needs beside the axes to draw the
-        view), each optional.
+        name), ``caption`` of the colour key, ``plate`` (what a config needs beside the axes to draw the
+        view, or with the key ``points`` a file of points) and ``families`` (by name, those that the plate
+        needs and no catalogue has, as a config holds them), each optional.
     view : View
     present : mapping
         For each built level pair and tile column the runs (first row, last row) of tiles that are not empty.
@@ -80,7 +81,8 @@ def meta(
         },
         "background": colours[0],
         "missing": colours[MISSING],
-        "plate": dict(header.get("plate") or {}),
+        "plate": {**_labels(view), **(header.get("plate") or {})},
+        "families": dict(header.get("families") or {}),
         "certificate": dict(certificate or {}),
     }
     if marks is not None and (text := runs_text(marks[1])):
@@ -136,15 +138,17 @@ def _axis(axis: Axis, label: str | None, unit: str | None) -> dict[str, Any]:
     }
 
 
+def _labels(view: View) -> dict[str, dict[str, str]]:
+    """Return the labels that the view gives its axes itself, as a plate holds them."""
+    axes = {"across": view.across, "up": view.up}
+    return {key: {"label": axis.label} for key, axis in axes.items() if axis.label}
+
+
 def _ratio(end: Exact) -> dict[str, str]:
     return {"num": str(end.value.numerator), "den": str(end.value.denominator)}
 
 
 def _caption(up: Axis, unit: str | None) -> str:
     if up.scale == "log":
-        return f"density (share of samples per log unit of {up.name})"
-    return (
-        f"density (share of samples per {unit} of {up.name})"
-        if unit
-        else (f"density (share of samples per unit of {up.name})")
-    )
+        return f"density (share of samples per unit of ln {up.name})"
+    return f"density (share of samples per {unit or f'unit of {up.name}'})"

@@ -77,7 +77,8 @@ def build_site(
             _continue(
                 unfinished, {"counts": index.counts_digest(), "fit": fit.to_json(), "table": table.tolist()}
             )
-            _write_page(unfinished, index, present, fit, table)
+            colours = {"shading": shading, "palette": palette, "background": background, "missing": missing}
+            _write_page(unfinished, index, present, fit, table, colours)
     with Readers(Index, index_path) as readers:
         tasks = (
             partial(_write_column, readers, unfinished, shades[pair[1]], table, pair, column)
@@ -195,14 +196,22 @@ def _continue(site: Path, made_from: dict[str, Any]) -> None:
 
 
 def _write_page(
-    site: Path, index: Index, present: dict[Pair, Any], fit: Fit, table: NDArray[np.uint8]
+    site: Path,
+    index: Index,
+    present: dict[Pair, Any],
+    fit: Fit,
+    table: NDArray[np.uint8],
+    colours: dict[str, str | None],
 ) -> None:
+    """Write the page and its description, whose plate has the colours of this folder."""
     for file in resources.files("tiles.page").iterdir():
         if file.name.endswith(_PAGE_FILES):
             (site / file.name).write_bytes(file.read_bytes())
     level = index.pairs[-1][0]
     marks = level, runs_where(_unsettled(index, level))
-    found = meta(index.header, index.view, present, fit, table, marks=marks, certificate=index.certificate)
+    plate = {**(index.header.get("plate") or {}), **colours}
+    header = {**index.header, "plate": {key: value for key, value in plate.items() if value is not None}}
+    found = meta(header, index.view, present, fit, table, marks=marks, certificate=index.certificate)
     (site / "meta.js").write_text(script(found), "ascii")
 
 

@@ -16,6 +16,8 @@ from numpy.typing import NDArray
 from atlas.config.digests import counting_digest, normalised
 from atlas.config.jobs import TileSet
 from atlas.config.keys import JOB_KEYS
+from atlas.families import catalogue
+from atlas.families.map_family import Family
 from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
@@ -237,8 +239,13 @@ def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
         "labels": {name: job.family.label_and_unit(name)[0] for name in names},
         "units": {name: job.family.label_and_unit(name)[1] for name in names},
         "plate": settings,
+        "families": {} if _of_catalogue(job.family) else {job.family.name: job.family.as_config()},
         "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
     }
+
+
+def _of_catalogue(family: Family) -> bool:
+    return family.name in catalogue.NAMES and catalogue.family(family.name).digest() == family.digest()
 
 
 def _made(job: TileSet, counter: OrbitCounter, index: Index) -> Made:

@@ -2,15 +2,22 @@
 
 from __future__ import annotations
 
+import contextlib
+import json
+import sqlite3
+
 import numpy as np
 import pytest
 
+from atlas.cli import main
 from atlas.config.load import parse_config
+from atlas.families.reader import family_from_config
 from atlas.orbits.counting import resolved
 from atlas.orbits.histogram import count_histogram
 from atlas.orbits.schedule import schedule
 from atlas.output.reporter import Silence
-from atlas.output.tileset import Places, make_tile_set, tile_counter
+from atlas.output.tileset import Places, StripSource, make_tile_set, rebuild_site, tile_counter
+from tiles.errors import OutputFailed
 from tiles.grid import TILE, Address
 from tiles.index import Index
 from tiles.shading import LEVELS, shade_counts
@@ -104,3 +111,75 @@ def test_the_site_lists_what_it_holds(job, places):
         for path in (places.site / "tiles" / "density").rglob("*.png")
     }
     assert files == stored
+
+
+def described(site):
+    """Return what a page is told."""
+    return json.loads((site / "meta.js").read_text("ascii").removeprefix("window.ATLAS_META = ")[:-2])
+
+
+def test_a_family_of_the_catalogue_is_not_spelled_out(places):
+    with Index.open(places.index) as index:
+        assert index.header["families"] == {}
+    assert described(places.site)["families"] == {}
+
+
+OWN = {"state": {"x": {"start": "0.3"}}, "parameters": {"r": {"default": "3.7"}}}
+OWN |= {"helpers": {"left": "1 - x"}, "step": {"x": "r * x * left"}}
+
+
+@pytest.mark.parametrize("name", ["own", "logistic"])
+def test_a_family_of_the_config_stands_in_the_index_and_reads_back(tmp_path, name):
+    """Also one that carries a name of the catalogue."""
+    settings = {"family": name, "across": ["r", "3.4", "4"], "up": ["x", "0", "1"], "levels": "0"}
+    config = parse_config({"families": {name: OWN}, "tile_sets": {"set": settings}})
+    job, places = config.tile_sets["set"], Places.of(tmp_path, "set")
+    with schedule(1) as opened:
+        make_tile_set(job, places, opened, Silence())
+    with Index.open(places.index) as index:
+        families = index.header["families"]
+    assert described(places.site)["families"] == families
+    assert family_from_config(name, families[name]) == job.family
+
+
+def test_a_site_in_other_colours_says_so(places, tmp_path):
+    plain = described(places.site)["plate"]
+    assert (plain["shading"], plain["palette"]) == ("equalised", "blue")
+    assert "background" not in plain
+    chosen = {"shading": "logarithmic", "palette": "ember", "background": "#fffdf8"}
+    rebuild_site(places.index, tmp_path / "other", **chosen)
+    again = described(tmp_path / "other")["plate"]
+    assert again == {**plain, **chosen}
+    rebuild_site(places.index, tmp_path / "same")
+    assert described(tmp_path / "same")["plate"] == plain
+
+
+def test_the_lock_of_another_run_is_no_full_disk(tmp_path, capsys, monkeypatch):
+    monkeypatch.setattr("tiles.store.PATIENCE", 0.05)
+    config, out = tmp_path / "config.yaml", tmp_path / "out"
+    config.write_text(
+        "tile_sets: {set: {family: logistic, across: [r, 3.4, 4], up: [x, 0, 1], levels: 1, samples: 50}}"
+    )
+    growing = Places.of(out, "set").growing_index
+
+    def render():
+        with pytest.raises(SystemExit) as ended:
+            main(["render", str(config), "--out", str(out)])
+        assert ended.value.code == 1
+        return capsys.readouterr().err
+
+    def broken(*_):
+        raise OutputFailed("stopped")
+
+    with monkeypatch.context() as stopped:
+        stopped.setattr(StripSource, "__call__", broken)
+        assert render() == "atlas: stopped\n"
+    for begun in (True, False):
+        if not begun:
+            growing.unlink()
+        with contextlib.closing(sqlite3.connect(growing, isolation_level=None)) as other:
+            other.execute("BEGIN EXCLUSIVE")
+            other.execute("CREATE TABLE work (done INTEGER)")
+            told = f"{growing} is being written by another run; wait for it or give another folder"
+            assert render() == f"atlas: {told}\n"
+            other.execute("COMMIT")

@@ -11,25 +11,14 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-import yaml
 
 from tests.browser.conftest import Open
 from tests.browser.opened import Opened
 from tests.browser.synthetic_site import SyntheticSite
-from tiles.number import exact
 
 pytestmark = pytest.mark.browser
 Site = tuple[SyntheticSite, Path]
 SIDES = {"across": "width", "up": "height"}
-
-
-def plate(opened: Opened) -> dict[str, Any]:
-    """Return the plate that the page copies."""
-    text = opened.call("yaml")
-    document = yaml.load(text, Loader=yaml.BaseLoader)
-    assert list(document) == ["plates"]
-    (only,) = document["plates"].values()
-    return dict(only)
 
 
 def reach_levels(opened: Opened, across: float, up: float) -> None:
@@ -212,61 +201,6 @@ def test_readout_is_exact(full_site: Site, open_page: Open) -> None:
     assert opened.page.text_content("#readout") == f"pointerr = {texts[0]}x = {texts[1].replace('-', '−')} kt"
 
 
-def test_copied_plate_has_the_exact_ends(full_site: Site, open_page: Open) -> None:
-    site, folder = full_site
-    opened = open_page(folder)
-    for across, up in [("1.234375", "2.5"), ("3", "2"), ("23", "20")]:
-        opened.go(f"{across},0.8123", f"{up},0.3")
-        copied = plate(opened)
-        assert {key: copied[key] for key in ("family", "set", "title")} == site.meta()["plate"]
-        for name in ("across", "up"):
-            axis = opened.axis(name)
-            assert copied[name][0] == site.axes[name]["name"]
-            assert [exact(end).value for end in copied[name][1:]] == [axis["low"], axis["high"]]
-            share = axis["start"] + opened.call("plot")[SIDES[name]] * axis["pixel"]
-            width = site.end(name, "high") - site.end(name, "low")
-            assert axis["high"] == site.end(name, "low") + width * min(1, share)
-    opened.press("Home")
-    assert plate(opened)["across"] == ["r", "2.8", "4"]
-    assert plate(opened)["up"] == ["x", "-1/3", "1"]
-
-
-def test_log_axes_and_multiples_of_pi(curved_site: Site, open_page: Open) -> None:
-    _, folder = curved_site
-    opened = open_page(folder).settle()
-    assert plate(opened)["across"] == {"name": "dose", "low": "0.001", "high": "500", "scale": "log"}
-    assert plate(opened)["up"] == ["theta", "-1*pi/2", "1*pi"]
-    opened.go("5,0.8", "4,0.35")
-    across, up = opened.axis("across"), opened.axis("up")
-    copied = plate(opened)
-    for end, share in (
-        ("low", across["start"]),
-        ("high", across["start"] + across["pixel"] * opened.call("plot")["width"]),
-    ):
-        assert float(copied["across"][end]) == pytest.approx(1e-3 * 500_000 ** float(share), rel=1e-5)
-        assert float(across[end]) == pytest.approx(1e-3 * 500_000 ** float(share), rel=1e-13)
-    assert [exact(end) for end in copied["up"][1:]] == [
-        exact(f"{up[end].numerator}*pi/{up[end].denominator}") for end in ("low", "high")
-    ]
-    assert opened.call("readout", 400, 300)[1].endswith("π")
-
-
-def test_copying_with_either_clipboard(served: Served, open_page: Open) -> None:
-    opened = open_page(served.address, permissions=["clipboard-read", "clipboard-write"]).settle()
-    for secure in (True, False):
-        opened.press("+", "ArrowLeft")
-        opened.page.evaluate(
-            f"Object.defineProperty(window, 'isSecureContext', {{value: {secure:d}, configurable: true}})"
-        )
-        for button, wanted in (("Copy YAML", opened.call("yaml")), ("Copy link", opened.page.url)):
-            opened.page.get_by_role("button", name=button).click()
-            opened.page.wait_for_function(
-                "document.getElementById('status').textContent.startsWith('Copied')"
-            )
-            assert opened.page.evaluate("navigator.clipboard.readText()") == wanted
-            opened.press("Shift+ArrowLeft", "Shift+ArrowRight")
-
-
 class Served:
     """A static web server on loopback that remembers what it was asked for."""
 
@@ -291,6 +225,22 @@ def served(full_site: Site) -> Iterator[Served]:
     serving.server.shutdown()
     thread.join()
     serving.server.server_close()
+
+
+def test_copying_with_either_clipboard(served: Served, open_page: Open) -> None:
+    opened = open_page(served.address, permissions=["clipboard-read", "clipboard-write"]).settle()
+    for secure in (True, False):
+        opened.press("+", "ArrowLeft")
+        opened.page.evaluate(
+            f"Object.defineProperty(window, 'isSecureContext', {{value: {secure:d}, configurable: true}})"
+        )
+        for button, wanted in (("Copy YAML", opened.call("plateText")), ("Copy link", opened.page.url)):
+            opened.page.get_by_role("button", name=button).click()
+            opened.page.wait_for_function(
+                "document.getElementById('status').textContent.startsWith('Copied')"
+            )
+            assert opened.page.evaluate("navigator.clipboard.readText()") == wanted
+            opened.press("Shift+ArrowLeft", "Shift+ArrowRight")
 
 
 def test_absent_tiles_are_never_asked_for(served: Served, open_page: Open) -> None:

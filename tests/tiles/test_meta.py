@@ -23,6 +23,7 @@ HEADER = {
     "note": "invented",
     "units": {"n": "kt"},
     "plate": {"family": "ricker", "set": {"h": "0.1"}},
+    "families": {"ricker": {"step": {"n": "n"}}},
 }
 PRESENT = {(0, 0): {0: [(0, 0)]}, (1, 2): {0: [(0, 1), (3, 3)], 1: [(2, 2)]}}
 
@@ -68,7 +69,8 @@ def test_every_key():
         "background": "#fafafa",
         "missing": "#f0f0f0",
         "marks": {"1": "3-5,9"},
-        "plate": {"family": "ricker", "set": {"h": "0.1"}},
+        "plate": {"family": "ricker", "set": {"h": "0.1"}, "up": {"label": "stock"}},
+        "families": {"ricker": {"step": {"n": "n"}}},
         "certificate": {"record": 1},
     }
     table = colour_table("blue")
@@ -76,7 +78,7 @@ def test_every_key():
     assert key["colours"][0] == "#{:02x}{:02x}{:02x}".format(*table[1])
     assert key["colours"][-1] == "#{:02x}{:02x}{:02x}".format(*table[LEVELS])
     assert key["shading"] == "equalised"
-    assert key["caption"] == "density (share of samples per log unit of n)"
+    assert key["caption"] == "density (share of samples per unit of ln n)"
     assert key["labels"]
     assert all(0 <= place <= 1 and isinstance(text, str) for place, text in key["labels"])
 
@@ -88,12 +90,13 @@ def test_an_index_that_says_nothing_of_itself_still_gets_every_key():
     assert found["axes"]["across"]["of_pi"] is True
     assert found["axes"]["across"]["high"] == {"num": "2", "den": "1"}
     assert found["key"]["caption"] == "density (share of samples per unit of b)"
-    assert (found["title"], found["formula"], found["plate"], found["certificate"]) == ("", [], {}, {})
+    assert (found["title"], found["formula"]) == ("", [])
+    assert [found[key] for key in ("plate", "families", "certificate")] == [{}, {}, {}]
 
 
 def test_the_caption_names_the_unit_or_what_the_header_says():
     view = View(across=("r", 1, 2), up=("n", 0, 1))
-    assert made(HEADER, view)["key"]["caption"] == "density (share of samples per kt of n)"
+    assert made(HEADER, view)["key"]["caption"] == "density (share of samples per kt)"
     assert made({"caption": "points per bin"}, view)["key"]["caption"] == "points per bin"
 
 

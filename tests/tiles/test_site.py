@@ -131,7 +131,8 @@ def test_present_lists_the_pictures(site):
 
 def test_the_description(site, scene):
     found = described(site)
-    assert (found["title"], found["formula"], found["plate"]) == ("made up", ["a", "b"], {"family": "none"})
+    assert (found["title"], found["formula"]) == ("made up", ["a", "b"])
+    assert found["plate"] == {"family": "none", "shading": "equalised", "palette": "blue"}
     assert found["axes"]["across"]["low"] == {"num": "14", "den": "5"}
     columns = set()
     for run in found["marks"][str(A)].split(","):

@@ -154,15 +154,20 @@ class Axis {
     return exact.decimal(this.valueAt(at), exact.placesFor(tenth)) + (this.ofPi ? "π" : "");
   }
 
-  /** Value at a position as a config writes it: exact, on a logarithmic axis to a thousandth of a pixel. */
+  /** Value at a position as a config writes it: to a thousandth of a pixel, exact where that is as short. */
   written(at) {
     const value = this.valueAt(at);
-    if (this.ofPi) {
-      const { num, den } = exact.reduce(value);
-      return num === 0n ? "0" : den === 1n ? `${num}*pi` : `${num}*pi/${den}`;
+    const rounded = exact.decimal(value, exact.placesFor(exact.scale(this.stepAt(at), 1n, 1000n)));
+    const short = rounded.includes(".") ? rounded.replace(/\.?0+$/, "") : rounded;
+    const end = at === 0n || at === this.full;
+    if (!this.ofPi) {
+      const text = end || this.logarithm === null ? exact.text(value) : short;
+      return end || text.length <= short.length ? text : short;
     }
-    if (this.logarithm === null || at === 0n || at === this.full) return exact.text(value);
-    return exact.decimal(value, exact.placesFor(exact.scale(this.stepAt(at), 1n, 1000n)));
+    const { num, den } = exact.reduce(value);
+    if (num === 0n || Number(short) === 0) return "0";
+    const text = den === 1n ? `${num}*pi` : `${num}*pi/${den}`;
+    return end || text.length <= short.length + 3 ? text : `${short}*pi`;
   }
 
   /** The tile or tile-pixel edges of a level as device pixels. */

@@ -8,6 +8,7 @@ class Page {
   constructor(meta) {
     const deepest = (k) => Math.max(...meta.pairs.map((pair) => pair[k]));
     this.meta = meta;
+    this.recipe = meta.plate.points ? RECIPES.command : RECIPES.config;
     this.across = new Axis(meta.axes.across, deepest(0));
     this.up = new Axis(meta.axes.up, deepest(1));
     this.frame = new Frame(element("canvas"), this.across, this.up, meta.marks);
@@ -128,7 +129,7 @@ class Page {
       u: () => Input.choose("up"),
       b: () => Input.choose("both"),
       p: () => this.showTilePixels(),
-      y: () => this.copyYaml(),
+      y: () => this.copyPlate(),
     };
     new Input(element("canvas"), {
       actions,
@@ -146,7 +147,7 @@ class Page {
       whole: actions.Home,
       pixels: actions.p,
       link: () => this.copyLink(),
-      yaml: actions.y,
+      plate: actions.y,
       about: () => this.showAbout(),
     };
     for (const [id, action] of Object.entries(clicks)) element(id).addEventListener("click", action);
@@ -199,12 +200,13 @@ class Page {
     this.redraw();
   }
 
-  yaml() {
-    return plateText(this.meta.plate, this.across, this.up);
+  /** The view as a text that draws it: a config, or a command for a tile set of points. */
+  plateText() {
+    return (this.meta.plate.points ? commandText : configText)(this.meta, this.across, this.up);
   }
 
-  copyYaml() {
-    return this.copy(this.yaml(), "view as YAML");
+  copyPlate() {
+    return this.copy(this.plateText(), `view as ${this.recipe.what}`);
   }
 
   copyLink() {
@@ -216,6 +218,10 @@ class Page {
     const { title, formula, layers, key, marks } = this.meta;
     document.title = element("title").textContent = title;
     element("formula").textContent = formula.join(";  ");
+    const button = element("plate");
+    button.ariaLabel = button.querySelector(".long").textContent = this.recipe.button;
+    button.querySelector(".short").textContent = this.recipe.short;
+    button.title = `Copy this view as ${this.recipe.what} (Y)`;
     const what = `${layers[0].label} of ${this.up.name} against ${this.across.name}`;
     element("canvas").setAttribute("aria-label", `${what}; arrows move, plus and minus zoom, Home shows everything`);
     showKey(key, Boolean(marks && Object.keys(marks).length));
@@ -224,7 +230,8 @@ class Page {
   showAbout() {
     const { title, note, family, formula, certificate } = this.meta;
     const list = make("dl");
-    for (const [key, words] of KEYS) list.append(make("dt", key), make("dd", words));
+    const keys = [...KEYS, ["Y", `copy this view as ${this.recipe.what}`]];
+    for (const [key, words] of keys) list.append(make("dt", key), make("dd", words));
     showDialog(title, [
       ...(note ? [make("p", note)] : []),
       ...(formula.length ? [make("h3", `Formula: ${family}`), make("pre", formula.join("\n"))] : []),
@@ -243,7 +250,7 @@ class Page {
       plot()         {left, top, width, height} of the box that the tiles fill
       shown()        {asked, pair, kind} as Tiles.choose
       readout(x, y)  texts of the values at a canvas position
-      yaml()         what 'Copy YAML' copies */
+      plateText()    what 'Copy YAML' or 'Copy command' copies */
   hook() {
     const fraction = ({ num, den }) => `${num}/${den}`;
     const described = (axis) => ({
@@ -260,7 +267,7 @@ class Page {
       plot: () => ({ ...this.frame.plot }),
       shown: () => this.tiles.choose(),
       readout: (x, y) => this.readout(x, y),
-      yaml: () => this.yaml(),
+      plateText: () => this.plateText(),
     });
   }
 }
@@ -272,8 +279,11 @@ const KEYS = [
   ["wheel", "zoom about the pointer; with Shift across only, with Alt up only"],
   ["Home", "whole view"],
   ["P", "nearest levels at which one tile pixel is one screen pixel"],
-  ["Y", "copy this view as YAML"],
 ];
+const RECIPES = {
+  config: { button: "Copy YAML", short: "YAML", what: "YAML for a plate" },
+  command: { button: "Copy command", short: "Shell", what: "a command line that draws it" },
+};
 
 function make(tag, text = "") {
   const made = document.createElement(tag);
