@@ -57,10 +57,11 @@ TABLE = """
 
 30  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
 30  atlas.cli.requests atlas.cli.point_requests
-31  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
-31  atlas.cli.show atlas.cli.site
-32  atlas.cli
-33  atlas
+31  atlas.cli.colour_options
+32  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
+32  atlas.cli.show atlas.cli.site
+33  atlas.cli
+34  atlas
 """
 LAYERS = {module: int(row.split()[0]) for row in TABLE.split("\n") if row for module in row.split()[1:]}
 

@@ -7,6 +7,7 @@ from typing import Any
 
 import click
 
+from atlas.cli.colour_options import colour_options
 from atlas.cli.options import Command, workers_and_memory
 
 
@@ -40,8 +41,7 @@ class Column(click.ParamType[Any]):
 @click.option("--size", metavar="SIZE", help="180x110 (mm) or 1200x800px.")
 @click.option("--dpi", metavar="N", help="Pixels per inch.")
 @click.option("--key", is_flag=True, default=None, help="Colour key beside the picture.")
-@click.option("--shading", metavar="NAME", help="How density becomes shade.")
-@click.option("--palette", metavar="NAME", help="Colours of the shades.")
+@colour_options()
 @click.option("--background", metavar="#RRGGBB", help="Colour of empty cells.")
 @click.option("--title", metavar="TEXT", help="Title above the frame, or of the page.")
 @workers_and_memory

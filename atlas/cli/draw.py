@@ -7,6 +7,7 @@ from typing import Any
 
 import click
 
+from atlas.cli.colour_options import colour_options
 from atlas.cli.options import Command, Interval, Setting, settings_of, workers_and_memory
 
 
@@ -14,14 +15,15 @@ from atlas.cli.options import Command, Interval, Setting, settings_of, workers_a
 @click.argument("family")
 @click.option("--across", type=Interval(), help="Parameter and interval, such as r=2.8:4.")
 @click.option("--up", type=Interval(), help="State variable and interval, such as x=0:1.")
-@click.option("--set", "set_", type=Setting(), multiple=True, help="Value of another parameter.")
-@click.option("--start", type=Setting(), multiple=True, help="Where orbits start; repeat for several starts.")
+@click.option("--set", "set_", type=Setting("beta=6"), multiple=True, help="Value of another parameter.")
+@click.option(
+    "--start", type=Setting("x=0.3"), multiple=True, help="Where orbits start; repeat for several starts."
+)
 @click.option("--transient", metavar="N", help="Steps left out before sampling.")
 @click.option("--samples", metavar="N|auto", help="Samples of each orbit.")
 @click.option("--size", metavar="SIZE", help="180x110 (mm) or 1200x800px.")
 @click.option("--dpi", metavar="N", help="Pixels per inch.")
-@click.option("--shading", metavar="NAME", help="How density becomes shade.")
-@click.option("--palette", metavar="NAME", help="Colours of the shades.")
+@colour_options()
 @click.option("--title", metavar="TEXT", help="Title above the frame.")
 @click.option("--key", is_flag=True, default=None, help="Colour key beside the picture.")
 @workers_and_memory

@@ -40,16 +40,27 @@ class Interval(click.ParamType[Any]):
 
 
 class Setting(click.ParamType[Any]):
-    """``name=value``."""
+    """``name=value``.
+
+    Parameters
+    ----------
+    example : str
+        What a refusal shows.
+    """
 
     name = "NAME=VALUE"
+
+    def __init__(self, example: str) -> None:
+        self.example = example
 
     def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> Any:
         if not isinstance(value, str):
             return value
         name, equals, number = value.partition("=")
         if not (name.strip() and equals and number.strip()):
-            self.fail(f"{shown(value)} sets nothing; write NAME=VALUE, for instance beta=6", param, ctx)
+            self.fail(
+                f"{shown(value)} sets nothing; write NAME=VALUE, for instance {self.example}", param, ctx
+            )
         return (name.strip(), number.strip())
 
 

@@ -33,7 +33,18 @@ def plate_of(
     """Return the plate that ``atlas draw`` is asked for; the family's own view fills what is left out."""
     left, right = across or family.across, up or family.up
     if left is None or right is None:
-        missing = "--across" if left is None else "--up"
-        raise ConfigRefused(f"{missing}: the family '{family.name}' has no view of its own; give one")
+        raise ConfigRefused(_no_view(family, left is None, right is None))
     starts = [{name: value} for name, value in start] or None
     return plate_from_parts(family, left, right, starts=starts, name=family.name, **options)
+
+
+def _no_view(family: Family, across: bool, up: bool) -> str:
+    """Return the sentence for axes that neither the command nor the family gives."""
+    needed = {}
+    if across:
+        needed["--across"] = family.parameters[0].name if family.parameters else "NAME"
+    if up:
+        needed["--up"] = family.states[0].name
+    forms = " ".join(f"{option} {name}=LOW:HIGH" for option, name in needed.items())
+    options = " and ".join(needed)
+    return f"{options}: the family '{family.name}' has no view of its own; write for instance {forms}"

@@ -6,14 +6,14 @@ from pathlib import Path
 
 import click
 
+from atlas.cli.colour_options import colour_options
 from atlas.cli.options import Command, workers_option
 
 
 @click.command(cls=Command)
 @click.argument("index", type=click.Path(path_type=Path))
 @click.option("--out", type=click.Path(path_type=Path), metavar="DIR", required=True, help="Folder to write.")
-@click.option("--shading", metavar="NAME", help="How density becomes shade; by default as it was built.")
-@click.option("--palette", metavar="NAME", help="Colours; by default as it was built.")
+@colour_options("by default as it was built")
 @click.option("--background", metavar="#RRGGBB", help="Colour of empty cells.")
 @workers_option
 def command(

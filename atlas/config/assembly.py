@@ -80,6 +80,8 @@ def read_figure(
         if panel not in plates:
             hint = nearest(panel, plates) or "; the file has no plates"
             raise place.at("panels").refusal(f"there is no plate {shown(panel)}{hint}")
+    if values["letters"] is None:
+        values["letters"] = sum(map(len, panels)) > 1
     figure = Figure(name=name, plates={panel: plates[panel] for row in panels for panel in row}, **values)
     _check_shared(figure, place.at("share"))
     return figure

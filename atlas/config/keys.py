@@ -32,7 +32,11 @@ _SIZE = Key(
 )
 _DPI = Key("dpi", Whole(10, 100_000), 300, "Pixels per inch of the printed sheet.", shared=True)
 _FORMATS = Key(
-    "formats", Words(tuple(FORMATS)), ("png",), "Files to be written: png, tiff, pdf, svg.", shared=True
+    "formats",
+    Words(tuple(FORMATS), synonyms=(("tif", "tiff"),)),
+    ("png",),
+    "Files to be written: png, tiff (or tif), pdf, svg.",
+    shared=True,
 )
 _FONT = Key("font_size", Measure(3, 72), 8.0, "Size of the lettering in points.", shared=True)
 
@@ -151,7 +155,13 @@ FIGURE_KEYS: tuple[Key[Any], ...] = (
         (),
         "Axes whose labels stand once: across for panels above each other, up for panels side by side.",
     ),
-    Key("letters", Truth(), True, "Whether the panels carry the letters a, b, c.", shared=True),
+    Key(
+        "letters",
+        Truth(),
+        None,
+        "Whether the panels carry the letters a, b, c; by default where there are at least two.",
+        shared=True,
+    ),
     _TITLE,
     _SIZE,
     _DPI,

@@ -94,10 +94,14 @@ class Word(Kind[str]):
 
 @dataclass(frozen=True)
 class Words(Kind[tuple[str, ...]]):
-    """A list of different words of a closed list; a single word is a list of one."""
+    """A list of different words of a closed list; a single word is a list of one.
+
+    ``synonyms`` are pairs of another word and the one of the list that it is read as.
+    """
 
     choices: tuple[str, ...]
     fewest: int = 1
+    synonyms: tuple[tuple[str, str], ...] = ()
 
     @property
     def allowed(self) -> str:
@@ -107,14 +111,15 @@ class Words(Kind[tuple[str, ...]]):
         entries = [given] if isinstance(given, str) else given
         if not isinstance(entries, list | tuple) or len(entries) < self.fewest:
             raise place.refusal(f"{shown(given)} is not {self.allowed}")
-        one = Word(self.choices)
+        one, meant = Word(self.choices), dict(self.synonyms)
+        entries = [meant.get(entry, entry) if isinstance(entry, str) else entry for entry in entries]
         words = tuple(one.read(entry, place.at(number)) for number, entry in enumerate(entries, 1))
         if len(set(words)) < len(words):
             raise place.refusal("a word is listed twice; list each word once")
         return words
 
     def schema(self) -> Schema:
-        entry = {"enum": list(self.choices)}
+        entry = {"enum": [*self.choices, *(word for word, _ in self.synonyms)]}
         many = {"type": "array", "items": entry, "minItems": self.fewest, "uniqueItems": True}
         return {"anyOf": [entry, many]}
 

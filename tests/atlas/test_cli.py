@@ -22,6 +22,8 @@ from atlas.cli import COMMANDS, main
 from atlas.families.catalogue import NAMES
 from atlas.output.certificate import read
 from tests.atlas.rendered import SMALL, command, files
+from tiles.palette import PALETTES
+from tiles.shading import SHADINGS
 
 DRAWN = ("--size", "200x150px", "--dpi", "72", "--samples", "50", "--transient", "50")
 BUILT = [name for name in COMMANDS if (Path("atlas/cli") / f"{name}.py").is_file()]
@@ -89,6 +91,17 @@ def test_every_command_explains_itself(name: str) -> None:
     printed = done(name, "--help")
     assert f"atlas {name}" in printed
     assert len(printed.splitlines()) > 5
+
+
+@pytest.mark.parametrize("name", ["draw", "bin", "site"])
+def test_help_lists_shadings_and_palettes_and_which_are_safe(name: str) -> None:
+    printed = " ".join(done(name, "--help").split()).replace("- ", "-")
+    assert f"How density becomes shade: {', '.join(SHADINGS)}" in printed
+    assert f"Colours of the shades: {', '.join(PALETTES)}" in printed
+    kinds = {palette.name: len(palette.safe_for) for palette in PALETTES.values()}
+    safe, half = ([name for name, count in kinds.items() if count == wanted] for wanted in (3, 2))
+    assert f"Safe for colour-blind readers: {', '.join(safe)}; for those blind" in printed
+    assert f"blind to red or green also: {', '.join(half)}." in printed
 
 
 def test_version() -> None:
@@ -252,7 +265,11 @@ WRONG_WORDS: list[tuple[tuple[str, ...], str]] = [
     (("draw", "logistic", "--across", "q=1:2", *TO), "no parameter or state variable 'q'; allowed: r, x"),
     (("draw", "logistic", "--up", "r=1:2", *TO), "'r' stands on both axes"),
     (("draw", "logistic", "--across", "x=0:1", "--up", "r=1:2", *TO), "this version draws a parameter"),
-    (("draw", "hassell", "--set", "beta", *TO), "--set: 'beta' sets nothing; write NAME=VALUE"),
+    (("draw", "{small}", *TO), "--across and --up: the family 'sound' has no view of its own; write for"),
+    (("draw", "{small}", *TO), "write for instance --across h=LOW:HIGH --up n=LOW:HIGH"),
+    (("draw", "{small}", "--across", "r=1:2", *TO), "of its own; write for instance --up n=LOW:HIGH"),
+    (("draw", "hassell", "--set", "beta", *TO), "'beta' sets nothing; write NAME=VALUE, for instance beta=6"),
+    (("draw", "tent", "--start", "0.3", *TO), "'0.3' sets nothing; write NAME=VALUE, for instance x=0.3"),
     (("draw", "hassell", "--set", "bета=1", *TO), "has no parameter"),
     (("draw", "hassell", "--set", "beta=x", *TO), "--set.beta: 'x' is not a number"),
     (("draw", "hassell", "--set", "beta=1", "--set", "beta=2", *TO), "--set: 'beta' is given twice"),

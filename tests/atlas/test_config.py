@@ -11,8 +11,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from atlas.config.load import Config, load, parse_config, plate_from_parts
+from atlas.config.load import Config, load, normalised, parse_config, plate_from_parts
 from atlas.errors import ConfigRefused
+from atlas.figure.layout import layout
+from atlas.figure.panels import request_of
 from atlas.reading.place import Place
 from atlas.reading.sheet import Size
 from atlas.reading.view_kinds import Levels
@@ -106,6 +108,38 @@ class TestRecords:
         tree = sound()
         tree["figures"]["both"]["panels"] = ["growth", "harvest"]
         assert parse_config(tree).figures["both"].panels == (("growth", "harvest"),)
+
+    @pytest.mark.parametrize(
+        ("keys", "defaults", "letters"),
+        [
+            ({"panels": ["growth"]}, {}, False),
+            ({"panels": [["growth"]]}, {}, False),
+            ({"panels": [["growth"]], "letters": True}, {}, True),
+            ({"panels": [["growth"]]}, {"letters": True}, True),
+            ({"panels": [["growth"], ["harvest"]]}, {}, True),
+            ({"panels": ["growth", "harvest"]}, {"letters": False}, False),
+        ],
+    )
+    def test_one_panel_carries_a_letter_only_when_asked(
+        self, keys: dict[str, Any], defaults: dict[str, Any], letters: bool
+    ):
+        tree = sound()
+        tree["figures"]["both"] = keys
+        tree["defaults"] |= defaults
+        figure = parse_config(tree).figures["both"]
+        assert figure.letters is letters
+        assert layout(request_of(figure)).panels[0].letter == ("a" if letters else "")
+
+    @pytest.mark.parametrize("given", ["tif", ["tif"], ["png", "tif"], ["png", "tiff"]])
+    def test_tif_is_another_word_for_tiff(self, given: Any):
+        tree = sound()
+        tree["plates"]["growth"]["formats"] = given
+        plate = parse_config(tree).plates["growth"]
+        assert plate.formats == (("png", "tiff") if len(given) == 2 else ("tiff",))
+        assert normalised(plate)["settings"]["formats"] == list(plate.formats)
+        tree["plates"]["growth"]["formats"] = ["tif", "tiff"]
+        with pytest.raises(ConfigRefused, match="a word is listed twice"):
+            parse_config(tree)
 
     def test_panels_with_equal_intervals_may_share_an_axis(self):
         tree = sound()

@@ -114,6 +114,14 @@ def test_wrong_values_are_refused_by_both(key: str, value: Any):
     assert not accepted_by_reader(tree)
 
 
+@pytest.mark.parametrize("given", ["tif", ["tif", "png"], "tiff", ["tiff"]])
+def test_tif_is_accepted_by_both(given: Any):
+    tree = sound()
+    tree["defaults"]["formats"] = given
+    assert VALIDATOR.is_valid(tree)
+    assert accepted_by_reader(tree)
+
+
 def test_normalised_settings_are_a_config_for_the_schema_too():
     for record in parse_config(sound()).outputs().values():
         form = normalised(record)
