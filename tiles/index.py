@@ -15,7 +15,7 @@ from tiles.codec import Encoded, decode, encode
 from tiles.errors import IndexRefused
 from tiles.grid import TILE, Address, Pair, key_of, number_of
 from tiles.pyramid import Counts
-from tiles.shading import Fit
+from tiles.shading import Fit, line_density
 from tiles.shading import fit as fit_densities
 from tiles.store import Store
 from tiles.strip import PER_COLUMN
@@ -209,6 +209,9 @@ class Index(Store):
     def fit_from(self, pair: Pair | None = None, shading: str = "equalised") -> Fit:
         """Fit a shading to all tiles of a level pair, by default the middle one.
 
+        Where ``lines`` of the header is true, branches of cycles get the highest shade, see
+        :func:`tiles.shading.line_density`.
+
         Returns
         -------
         Fit
@@ -222,7 +225,9 @@ class Index(Store):
             if counts is not None and numbers is not None:
                 tally.add(counts, numbers[0], height)
         values, often = tally.distinct()
-        return fit_densities(values, shading, often)
+        return fit_densities(
+            values, shading, often, line=line_density(height) if self.header.get("lines") else None
+        )
 
 
 def _place(address: Address) -> tuple[int, int, bytes, bytes]:

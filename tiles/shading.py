@@ -37,6 +37,7 @@ __all__ = [
 ]
 
 MISSING = LEVELS + 1
+LINE_SHARE = 1 / 50
 _BLOCK = 1 << 17
 _LONGEST_TABLE = 1 << 20
 
@@ -96,7 +97,13 @@ class Fit:
         return found
 
 
-def fit(density: NDArray[Any], shading: str = "equalised", weights: NDArray[Any] | None = None) -> Fit:
+def fit(
+    density: NDArray[Any],
+    shading: str = "equalised",
+    weights: NDArray[Any] | None = None,
+    *,
+    line: float | None = None,
+) -> Fit:
     """Fit a curve to densities.
 
     The curves are those of `tiles.curve`. If only one density occurs it gets the highest shade, if none
@@ -109,6 +116,9 @@ def fit(density: NDArray[Any], shading: str = "equalised", weights: NDArray[Any]
     shading : {"equalised", "logarithmic", "linear", "ink"}
     weights : ndarray of integers, same shape, optional
         How often each density occurs; default once.
+    line : float, optional
+        Density from which a cell belongs to a line, see :func:`line_density`: an equalised curve has its
+        highest shade there and is fitted to the other cells alone.
 
     Returns
     -------
@@ -129,20 +139,38 @@ def fit(density: NDArray[Any], shading: str = "equalised", weights: NDArray[Any]
     values = np.asarray(density, dtype=np.float64).reshape(-1)
     often = np.ones(values.size, np.uint64) if weights is None else np.asarray(weights, np.uint64).reshape(-1)
     values, often = distinct(values, often)
+    if line is not None and shading == "equalised" and values.size and values[-1] >= line:
+        below = int(np.searchsorted(values, line))
+        values = np.append(values[:below], line)
+        often = np.append(often[:below], np.uint64(1))
     return Fit(shading, thresholds(values, often, shading))
 
 
+def line_density(cell_height: float) -> float:
+    """Return the density from which a cell belongs to a line, such as a branch of a cycle.
+
+    It is that of a cell which holds a fiftieth of its column's samples. A chaotic band has such cells only at
+    its densest edges; a cycle has no others, and must not be drawn pale where little else is in the view.
+    """
+    return LINE_SHARE / cell_height
+
+
 def fit_counts(
-    counts: NDArray[Any], exposure: ArrayLike, cell_height: float, shading: str = "equalised"
+    counts: NDArray[Any],
+    exposure: ArrayLike,
+    cell_height: float,
+    shading: str = "equalised",
+    *,
+    line: float | None = None,
 ) -> Fit:
-    """Return ``fit(density(counts, exposure, cell_height), shading)`` from a histogram of the counts.
+    """Return ``fit(density(counts, exposure, cell_height), shading, line=line)`` from a histogram of counts.
 
     Parameters are those of :func:`density` and :func:`fit`; the result is the same to the last bit.
     """
     tally = Tally()
     tally.add(counts, exposure, cell_height)
     values, often = tally.distinct()
-    return fit(values, shading, often)
+    return fit(values, shading, often, line=line)
 
 
 def shade(density: NDArray[Any], fit: Fit) -> NDArray[np.uint8]:

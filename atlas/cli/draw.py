@@ -44,6 +44,8 @@ def command(family: str, out: tuple[Path, ...], **given: Any) -> None:
     given["set"] = settings_of(given.pop("set_"), "--set")
     plate = plate_of(drawn_family(family), **given)
     with Bar() as bar:
-        draw_plate(plate, out, workers=workers, memory=memory, reporter=bar)
+        made = draw_plate(plate, out, workers=workers, memory=memory, reporter=bar)
     for path in out:
         click.echo(str(path))
+    for remark in made.remarks:
+        click.echo(f"atlas: {remark}", err=True)

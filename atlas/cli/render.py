@@ -37,6 +37,8 @@ def command(
         )
     click.echo(outcome_table(outcomes))
     for outcome in outcomes:
+        for remark in outcome.remarks:
+            click.echo(f"atlas: {remark}", err=True)
         if outcome.status == "failed":
             click.echo(f"atlas: {outcome.message}", err=True)
     return 1 if any(outcome.status == "failed" for outcome in outcomes) else 0

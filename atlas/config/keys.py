@@ -81,7 +81,7 @@ JOB_KEYS: tuple[Key[Any], ...] = (
     Key(
         "values_per_column",
         Whole(1, 4096),
-        4,
+        32,
         "Parameter values, evenly spread, that each column of pixels averages over.",
         shared=True,
         counts=True,

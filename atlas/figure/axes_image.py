@@ -10,7 +10,7 @@ import numpy as np
 from atlas.figure.lettering import axis_text
 from tiles.number import exact
 from tiles.palette import Palette
-from tiles.shading import colour_table, fit_counts, shade_counts
+from tiles.shading import colour_table, fit_counts, line_density, shade_counts
 
 
 def draw_axes(
@@ -47,7 +47,8 @@ def draw_axes(
     counts = np.ascontiguousarray(dataset["counts"].to_numpy().T)
     exposure = dataset["exposure"].to_numpy()
     height = (math.log(top / bottom) if _is_log(up) else top - bottom) / up.size
-    shades = shade_counts(counts, exposure, height, fit_counts(counts, exposure, height, shading))
+    line = line_density(height) if "family" in dataset.attrs else None
+    shades = shade_counts(counts, exposure, height, fit_counts(counts, exposure, height, shading, line=line))
     colours = colour_table(palette, background=background, shading=shading)[shades.T]
     axes.set_xscale("log" if _is_log(across) else "linear")
     axes.set_yscale("log" if _is_log(up) else "linear")

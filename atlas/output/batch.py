@@ -11,8 +11,8 @@ from pathlib import Path
 from atlas.config.digests import digest
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.config.load import Config
-from atlas.errors import ConfigRefused
-from atlas.orbits.schedule import Schedule, default_workers, schedule
+from atlas.errors import ConfigRefused, shown
+from atlas.orbits.schedule import Schedule, schedule, threads
 from atlas.output.folders import check_files, check_folder, check_site
 from atlas.output.forecast import builders, need_of
 from atlas.output.ledger import Ledger
@@ -39,6 +39,8 @@ class Outcome:
         Counted for it in this run.
     message : str
         Why it failed.
+    remarks : tuple of str
+        What its maker should be told, such as samples that are not drawn.
     """
 
     name: str
@@ -47,6 +49,7 @@ class Outcome:
     seconds: float = 0.0
     samples: int = 0
     message: str = ""
+    remarks: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -99,7 +102,7 @@ def render(
     """
     out = Path(out)
     reporter = reporter or Silence()
-    planned = _plan(config, out, only, workers or default_workers(), parse_memory(memory))
+    planned = _plan(config, out, only, threads(workers), parse_memory(memory))
     check_folder(out)
     ledger = Ledger(out)
     outcomes = []
@@ -126,7 +129,7 @@ def select(config: Config, only: Sequence[str]) -> dict[str, Record]:
         raise ConfigRefused(f"{where}: there is nothing to render; add a plate under plates:")
     for name in only:
         if name not in outputs:
-            raise ConfigRefused(f"--only: {where} has no output '{name}'{nearest(name, outputs)}")
+            raise ConfigRefused(f"--only: {where} has no output {shown(name)}{nearest(name, outputs)}")
     return {name: record for name, record in outputs.items() if not only or name in only}
 
 
@@ -150,7 +153,7 @@ def needs(
     found = []
     for record in select(config, ()).values():
         with _named(config):
-            found.append((record, _checked_need(record, workers or default_workers(), budget)))
+            found.append((record, _checked_need(record, threads(workers), budget)))
     return found
 
 
@@ -218,5 +221,6 @@ def _make(one: _Planned, ledger: Ledger, opened: Schedule, reporter: Reporter) -
     except OSError as problem:
         message = str(OutputFailed(f"{one.name}: {problem.strerror or problem}; free some space or memory"))
     else:
-        return Outcome(one.name, one.kind, "made", time.monotonic() - begin, made.samples)
+        seconds = time.monotonic() - begin
+        return Outcome(one.name, one.kind, "made", seconds, made.samples, remarks=made.remarks)
     return Outcome(one.name, one.kind, "failed", time.monotonic() - begin, 0, message)

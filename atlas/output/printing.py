@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, Protocol
@@ -28,7 +28,7 @@ from atlas.output.folders import check_files, check_folder
 from atlas.output.reporter import Reporter, Silence
 from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
-from tiles.shading import Fit, colour_table, fit_counts, key_labels, shade_counts
+from tiles.shading import Fit, colour_table, fit_counts, key_labels, line_density, shade_counts
 from tiles.strip import Strip
 from tiles.window import Axis
 from tiles.window import View as Window
@@ -56,6 +56,15 @@ class Colours(Protocol):
     @property
     def missing(self) -> str | None:
         """Colour of cells without samples."""
+
+
+NOT_DRAWN = {
+    "below": "lie below the window",
+    "above": "lie above it",
+    "escaped": "escaped",
+    "unsettled": "had not settled",
+}
+LEAST_TOLD = 0.005
 
 
 @dataclass(frozen=True)
@@ -101,10 +110,11 @@ class Sheet:
 
 @dataclass(frozen=True)
 class Made:
-    """What became of an output: its samples and its certificate."""
+    """What became of an output: its samples, its certificate, and what its maker should be told."""
 
     samples: int
     record: dict[str, Any]
+    remarks: tuple[str, ...] = ()
 
 
 def sheet_of(record: Plate | Figure) -> Sheet:
@@ -196,7 +206,30 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     reporter.begin(sheet.record.name, "drawing", 0)
     rasters = {name: panel.raster for name, panel in panels.items()}
     draw(sheet.page, rasters, {name: panel.text for name, panel in panels.items()}, files, record)
-    return Made(sum(panel.sampled.total for panel in panels.values()), record)
+    remarks = [remark for name, panel in panels.items() for remark in remarks_on(name, panel.shares)]
+    return Made(sum(panel.sampled.total for panel in panels.values()), record, tuple(remarks))
+
+
+def remarks_on(name: str, shares: Mapping[str, float | int]) -> list[str]:
+    """Return what must not go unsaid of a picture: samples that are not drawn, and why, one sentence each."""
+    lost = {kind: float(shares[kind]) for kind in ("below", "above", "escaped", "unsettled")}
+    if sum(lost.values()) >= 1.0 - 1e-12:
+        parts = [f"{share:.3%} of the samples {NOT_DRAWN[kind]}" for kind, share in lost.items() if share > 0]
+        return [f"{name}: nothing is drawn: {', '.join(parts)}"]
+    found = []
+    if lost["escaped"] >= LEAST_TOLD:
+        found.append(f"{name}: {lost['escaped']:.2%} of the samples escaped and are not drawn")
+    if lost["unsettled"] >= LEAST_TOLD:
+        found.append(
+            f"{name}: {lost['unsettled']:.2%} of the samples had not settled and are not drawn; their "
+            "columns are marked at the frame, a higher transient_limit would settle more"
+        )
+    if shares.get("orbits_on_repelling_start"):
+        found.append(
+            f"{name}: {shares['orbits_on_repelling_start']} orbits start exactly on a repelling cycle and "
+            "stay there; move the start to see the attractor"
+        )
+    return found
 
 
 @dataclass(frozen=True)
@@ -231,10 +264,14 @@ def sampled_of(counter: OrbitCounter, histogram: Histogram) -> Sampled:
     return Sampled(counter.columns, counter.rows, histogram.samples, counter.exposure, histogram.filled)
 
 
-def shaded(colours: Colours, view: Window, strip: Strip) -> tuple[Fit, Raster]:
-    """Shade the counts of a view with a fit of its own; return the fit and the raster, top line first."""
+def shaded(colours: Colours, view: Window, strip: Strip, *, branches: bool = True) -> tuple[Fit, Raster]:
+    """Shade the counts of a view with a fit of its own; return the fit and the raster, top line first.
+
+    With ``branches``, branches of cycles get the highest shade, see :func:`tiles.shading.line_density`.
+    """
     height = view.up.cell_size(strip.counts.shape[1])
-    fit = fit_counts(strip.counts, strip.exposure, height, colours.shading)
+    line = line_density(height) if branches else None
+    fit = fit_counts(strip.counts, strip.exposure, height, colours.shading, line=line)
     table = colour_table(
         colours.palette, background=colours.background, missing=colours.missing, shading=colours.shading
     )
@@ -260,8 +297,9 @@ def panel_text(plate: Plate, fit: Fit) -> PanelText:
 
 def key_caption(up: Axis, unit: str = "") -> str:
     """Return the caption of a plate's colour key."""
-    per = f" per {unit}" if unit else ""
-    return f"density{per}{' of the logarithm' if up.scale == 'log' else ''}"
+    if up.scale == "log":
+        return f"density (share of samples per unit of ln {up.name})"
+    return f"density (share of samples per {unit or f'unit of {up.name}'})"
 
 
 def label_of(plate: Plate, axis: Axis) -> str:

@@ -24,7 +24,7 @@ from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_folder, check_site
-from atlas.output.printing import Colours, Made
+from atlas.output.printing import Colours, Made, key_caption, remarks_on
 from atlas.output.reporter import Reporter, Silence
 from atlas.output.whole_file import PARTS
 from atlas.reading.place import COMMAND_LINE
@@ -238,6 +238,8 @@ def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
         "note": job.family.note,
         "labels": {name: job.family.label_and_unit(name)[0] for name in names},
         "units": {name: job.family.label_and_unit(name)[1] for name in names},
+        "caption": key_caption(job.up, job.family.label_and_unit(job.up.name)[1]),
+        "lines": True,
         "plate": settings,
         "families": {} if _of_catalogue(job.family) else {job.family.name: job.family.as_config()},
         "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
@@ -259,7 +261,7 @@ def _made(job: TileSet, counter: OrbitCounter, index: Index) -> Made:
     record = certificate(
         "tile set", job.name, normalised(job), index.counts_digest(), shares, sampled.record()
     )
-    return Made(sampled.total, record)
+    return Made(sampled.total, record, tuple(remarks_on(job.name, shares)))
 
 
 def rebuild_site(

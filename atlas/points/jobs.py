@@ -119,5 +119,5 @@ def axis_label(axis: Axis) -> str:
 
 def caption(up: Axis) -> str:
     """Return what the colour key of a page shows."""
-    unit = "log unit" if up.scale == "log" else "unit"
-    return f"density (share of the column's points per {unit} of {up.name})"
+    unit = f"ln {up.name}" if up.scale == "log" else up.name
+    return f"density (share of the column's points per unit of {unit})"

@@ -10,13 +10,21 @@ from atlas.figure.layout import layout
 from atlas.figure.pieces import PanelText
 from atlas.figure.typeset import check_characters
 from atlas.output.folders import check_files, check_folder
-from atlas.output.printing import files_by_format, key_caption, shaded, sheet_memory
+from atlas.output.printing import files_by_format, shaded, sheet_memory
 from atlas.output.reporter import Reporter, Silence
 from atlas.plan import check_fits, parse_memory
 from atlas.points.cells import Grid
 from atlas.points.counting import Reading, count_points
 from atlas.points.intervals import REQUEST, AskedAxis, AxisGiven, view_of
-from atlas.points.jobs import PLATE_OPTIONS, PointsPlate, axis_label, name_of, options_of, settings_of
+from atlas.points.jobs import (
+    PLATE_OPTIONS,
+    PointsPlate,
+    axis_label,
+    caption,
+    name_of,
+    options_of,
+    settings_of,
+)
 from atlas.points.opening import table_of
 from atlas.points.record import Binned, binned
 from atlas.points.tables import ROWS_PER_CHUNK
@@ -96,7 +104,7 @@ def draw_points(
     reading = Reading(table, grid, ROWS_PER_CHUNK, reporter)
     reporter.begin(name, "counting", table.rows())
     histogram = count_points(reading)
-    fit, raster = shaded(plate, plate.view, histogram.strip)
+    fit, raster = shaded(plate, plate.view, histogram.strip, branches=False)
     made = binned(name, settings_of(plate), reading, histogram.digest())
     from atlas.figure.plate import draw
 
@@ -108,4 +116,4 @@ def draw_points(
 def _text(plate: PointsPlate, labels: tuple[str, str], fit: Fit) -> PanelText:
     if not plate.key:
         return PanelText(*labels)
-    return PanelText(*labels, key_labels(fit), key_caption(plate.view.up))
+    return PanelText(*labels, key_labels(fit), caption(plate.view.up))

@@ -56,7 +56,7 @@ class TestRecords:
     def test_defaults_of_the_program(self):
         plate = plate_from_parts("logistic", ("r", "2.8", 4), ("x", 0, 1))
         assert (plate.transient, plate.transient_limit, plate.samples) == (1000, 1_000_000, "auto")
-        assert (plate.values_per_column, plate.longest_period) == (4, 64)
+        assert (plate.values_per_column, plate.longest_period) == (32, 64)
         assert (plate.shading, plate.dpi, plate.formats) == ("equalised", 300, ("png",))
         assert plate.size == Size.parse("180x110")
         assert (plate.background, plate.missing, plate.title, plate.letter, plate.inset) == (None,) * 5

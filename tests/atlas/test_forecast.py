@@ -50,7 +50,7 @@ def test_the_peak_memory_is_the_predicted_one_within_a_quarter(config: Path, nam
         pytest.skip("only Linux tells the peak of a process that has ended")
     words = ["render", str(config), "--out", str(config.parent / "out"), "--only", name, "--workers", "2"]
     ran = subprocess.run([sys.executable, "-c", PEAK, *words], capture_output=True, text=True, check=True)
-    peak = 1024 * int(ran.stderr)
+    peak = 1024 * int(ran.stderr.split()[-1])
     predicted = {record.name: need.memory for record, need in needs(atlas.load(config), workers=2)}[name]
     assert 0.75 * peak < predicted < 1.25 * peak
 

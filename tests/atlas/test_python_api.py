@@ -174,7 +174,14 @@ def test_results_do_not_depend_on_workers_memory_or_how_numbers_are_written(ds: 
 
 def test_counts_are_those_of_a_plate_of_the_same_request(tmp_path: Path) -> None:
     plate = atlas.plate(
-        "logistic", ("r", "2.8", 4), ("x", 0, 1), size="320x200px", dpi=100, samples=200, transient=200
+        "logistic",
+        ("r", "2.8", 4),
+        ("x", 0, 1),
+        size="320x200px",
+        dpi=100,
+        samples=200,
+        transient=200,
+        values_per_column=4,
     )
     record = atlas.draw_plate(plate, [tmp_path / "a.png"]).record
     sampled = record["samples"]["plate"]
