@@ -51,7 +51,7 @@ def counted(
         Columns and rows.
     starts : iterable of numbers, optional
     **options
-        As `atlas.orbit_counts`.
+        As `atlas.orbit_counts`; four values a column unless another number is given.
 
     Returns
     -------
@@ -59,6 +59,7 @@ def counted(
     """
     if starts is not None:
         options["starts"] = [{"x": start} for start in starts]
+    options.setdefault("values_per_column", 4)
     view = atlas.View(across, up or UP[name])
     return atlas.orbit_counts(atlas.family(name), view, size=size, **options)
 
