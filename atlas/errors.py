@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from tiles.errors import Refusal
 
+INTERRUPTED = 130
+"""What a command returns to the shell after Ctrl-C."""
+
 
 class FormulaRefused(Refusal):
     """A text that is no formula of the closed language, or a formula beyond its bounds."""

@@ -17,6 +17,7 @@ LABELS_MEMORY, BYTES_PER_CELL = 60 << 20, 17
 DEFAULT_MEMORY = 2 << 30
 LEAST_MEMORY = 1 << 30
 EPSILON = 2.0**-53
+MOST_ORBITS = 1 << 17
 _UNITS = {"": 1, "B": 1, "KiB": 1 << 10, "MiB": 1 << 20, "GiB": 1 << 30, "TiB": 1 << 40}
 _UNITS |= {"kB": 10**3, "MB": 10**6, "GB": 10**9, "TB": 10**12}
 
@@ -63,6 +64,11 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
         raise PlanRefused(
             f"{lead}the family '{family.name}' has {len(family.states)} state variables; "
             "this version draws families of one"
+        )
+    if counter.orbits_per_column > MOST_ORBITS:
+        raise PlanRefused(
+            f"{lead}{counter.orbits_per_column} orbits a column are too many; use at most {MOST_ORBITS}, "
+            "fewer values_per_column or fewer starts"
         )
     if counter.exposure >= 1 << 32:
         most = ((1 << 32) - 1) // counter.orbits_per_column

@@ -26,7 +26,7 @@ TABLE = """
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
 10  atlas.output atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
-11  atlas.orbits.block
+12  atlas.orbits.block atlas.output.remarks
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
 12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger

@@ -11,10 +11,8 @@ from typing import Any, NoReturn
 import click
 
 from atlas.cli.sentences import no_command, sentence, unknown_command
-from atlas.errors import shown
+from atlas.errors import INTERRUPTED, shown
 from tiles.errors import Failure, Refusal
-
-INTERRUPTED = 130
 
 COMMANDS = {
     "render": "Render every plate, figure and tile set of a config.",

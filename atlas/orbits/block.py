@@ -19,16 +19,20 @@ How an orbit is treated, always by its own step numbers:
 
 from __future__ import annotations
 
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from types import ModuleType
 
 import numpy as np
 from numpy.typing import NDArray
 
+from atlas.orbits.lane_kernels import CHUNK
 from atlas.orbits.orbit_kernels import AGAIN, FILLED, READY, SLOW
 
 ROUND = 512
 LOOK_AHEAD = 4
+STEPS_AT_ONCE = 1 << 24
+"""Steps of all orbits together that one call of a kernel may take, so that an interrupt is soon heard."""
 
 
 @dataclass(frozen=True)
@@ -116,7 +120,9 @@ class Block:
         ready = []
         done, steps = 0, rules.transient
         while order.size and not self.stop[0]:
-            self.kernels.advance(self.x, self.c, self.key, order, done, steps, self.bound, self.outcome)
+            self._advance(self.kernels.advance, order, done, steps)
+            if self.stop[0]:
+                break
             done += steps
             if rules.repeats:
                 self._decide(order)
@@ -127,6 +133,20 @@ class Block:
                 break
             steps = min(max(done, 64), limit - done)
         return np.sort(np.concatenate(ready)) if ready else np.empty(0, np.int64)
+
+    def _advance(
+        self, kernel: Callable[..., None], order: NDArray[np.int64], before: int, steps: int
+    ) -> None:
+        """Advance orbits a stage in slices that end at escape tests; no slice changes a decision."""
+        for first, last in self._slices(order, steps):
+            kernel(self.x, self.c, self.key, order, before + first, last - first, self.bound, self.outcome)
+
+    def _slices(self, order: NDArray[np.int64], steps: int) -> Iterator[tuple[int, int]]:
+        each = max(1, STEPS_AT_ONCE // (CHUNK * max(1, order.size))) * CHUNK
+        for first in range(0, max(steps, 1), each):
+            if self.stop[0]:
+                return
+            yield first, min(first + each, steps)
 
     def _decide(self, order: NDArray[np.int64]) -> None:
         longest = self.rules.longest_period
@@ -186,16 +206,15 @@ class Block:
         transient, samples = self.rules.transient, self.rules.samples
         self.x[:, order] = self.start[:, order]
         self.outcome[order] = READY
-        self.kernels.advance_disturbed(
-            self.x, self.c, self.key, order, 0, transient, self.bound, self.outcome
-        )
+        self._advance(self.kernels.advance_disturbed, order, 0, transient)
         order = order[self.outcome[order] == READY]
         begin = self.x.copy()
         hit = np.zeros(self.outcome.size, np.int64)
-        self.kernels.sample_disturbed(
-            self.x, self.c, self.key, order, transient, samples, self.bound, self.outcome, hit,
-            self.target[0], self.trash, *self.window, self.target[1],
-        )  # fmt: skip
+        for first, last in self._slices(order, samples):
+            self.kernels.sample_disturbed(
+                self.x, self.c, self.key, order, transient + first, last - first, self.bound, self.outcome,
+                hit, self.target[0], self.trash, *self.window, self.target[1],
+            )  # fmt: skip
         self.kernels.take_back(
             begin, self.c, self.key, order, transient, samples, *self.window, *self.target, self.outcome
         )

@@ -14,6 +14,7 @@ from atlas.orbits.schedule import Schedule
 from tiles.strip import PER_COLUMN, Strip
 
 BLOCK_BYTES = 1 << 20
+BLOCK_ORBITS = 1 << 14
 
 Progress = Callable[[int], None]
 
@@ -63,7 +64,8 @@ def block_width(counter: OrbitCounter) -> int:
     """Return how many columns a block has: enough to fill the lanes, few enough to stay in the cache."""
     full = -(-LANES // counter.orbits_per_column)
     cached = min(256, BLOCK_BYTES // (4 * (counter.rows + 2)))
-    return full * max(2, cached // full)
+    few = max(1, BLOCK_ORBITS // counter.orbits_per_column)
+    return min(full * max(2, cached // full), few)
 
 
 def count_histogram(counter: OrbitCounter, schedule: Schedule, progress: Progress | None = None) -> Histogram:

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from atlas.orbits.orbit import OrbitCounter
+from tiles.strip import Strip
 
 ON_PLATES, IN_TILES = 48, 16
 """Mean counts aimed at, per cell of a column's occupied range; at least 8 are promised."""
@@ -26,13 +27,32 @@ def whole_height(rows: int, orbits_per_column: int, counts_per_cell: int) -> int
     return min(max(LEAST, math.ceil(counts_per_cell * rows / orbits_per_column)), MOST // orbits_per_column)
 
 
+LOOKED_AT = 256
+
+
+def counts_reached(strip: Strip) -> float:
+    """Return the median over columns of the mean counts per cell of the column's occupied range.
+
+    Some 256 columns are looked at; those without counts inside the view are passed over, and without any
+    there is nothing to miss: infinity.
+    """
+    chosen = strip.counts[:: max(1, len(strip.counts) // LOOKED_AT)]
+    means = []
+    for column in chosen:
+        occupied = np.flatnonzero(column)
+        if occupied.size:
+            means.append(float(column.sum(dtype=np.uint64)) / float(occupied[-1] - occupied[0] + 1))
+    return float(np.median(means)) if means else math.inf
+
+
 def automatic(
     counter: OrbitCounter, counts_per_cell: int = ON_PLATES, stop: NDArray[np.uint8] | None = None
 ) -> int:
     """Return the samples of each orbit that give the mean counts aimed at in every column.
 
     A pilot of 128 columns finds which part of the samples falls inside the view and over how many cells it
-    is spread. Columns with less than 1/64 of their samples inside do not raise the number further.
+    is spread. Columns with less than 1/64 of their samples inside do not raise the number further: a deep
+    zoom may stay below the mean aimed at, which :func:`counts_reached` tells afterwards.
 
     Parameters
     ----------

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any, Protocol
@@ -22,10 +22,12 @@ from atlas.figure.typeset import check_characters
 from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import Histogram, count_histogram
 from atlas.orbits.orbit import OrbitCounter
+from atlas.orbits.sampling import counts_reached
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_files, check_folder
-from atlas.output.reporter import Reporter, Silence
+from atlas.output.remarks import remark_on_samples, remarks_on
+from atlas.output.reporter import PREPARING, Reporter, Silence
 from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
 from tiles.shading import Fit, colour_table, fit_counts, key_labels, line_density, shade_counts
@@ -56,15 +58,6 @@ class Colours(Protocol):
     @property
     def missing(self) -> str | None:
         """Colour of cells without samples."""
-
-
-NOT_DRAWN = {
-    "below": "lie below the window",
-    "above": "lie above it",
-    "escaped": "escaped",
-    "unsettled": "had not settled",
-}
-LEAST_TOLD = 0.005
 
 
 @dataclass(frozen=True)
@@ -206,30 +199,8 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     reporter.begin(sheet.record.name, "drawing", 0)
     rasters = {name: panel.raster for name, panel in panels.items()}
     draw(sheet.page, rasters, {name: panel.text for name, panel in panels.items()}, files, record)
-    remarks = [remark for name, panel in panels.items() for remark in remarks_on(name, panel.shares)]
+    remarks = [remark for panel in panels.values() for remark in panel.remarks]
     return Made(sum(panel.sampled.total for panel in panels.values()), record, tuple(remarks))
-
-
-def remarks_on(name: str, shares: Mapping[str, float | int]) -> list[str]:
-    """Return what must not go unsaid of a picture: samples that are not drawn, and why, one sentence each."""
-    lost = {kind: float(shares[kind]) for kind in ("below", "above", "escaped", "unsettled")}
-    if sum(lost.values()) >= 1.0 - 1e-12:
-        parts = [f"{share:.3%} of the samples {NOT_DRAWN[kind]}" for kind, share in lost.items() if share > 0]
-        return [f"{name}: nothing is drawn: {', '.join(parts)}"]
-    found = []
-    if lost["escaped"] >= LEAST_TOLD:
-        found.append(f"{name}: {lost['escaped']:.2%} of the samples escaped and are not drawn")
-    if lost["unsettled"] >= LEAST_TOLD:
-        found.append(
-            f"{name}: {lost['unsettled']:.2%} of the samples had not settled and are not drawn; their "
-            "columns are marked at the frame, a higher transient_limit would settle more"
-        )
-    if shares.get("orbits_on_repelling_start"):
-        found.append(
-            f"{name}: {shares['orbits_on_repelling_start']} orbits start exactly on a repelling cycle and "
-            "stay there; move the start to see the attractor"
-        )
-    return found
 
 
 @dataclass(frozen=True)
@@ -241,21 +212,27 @@ class _Panel:
     shares: dict[str, float | int]
     sampled: Sampled
     digest: str
+    remarks: list[str]
 
 
 def _panel(sheet: Sheet, view: View, schedule: Schedule, reporter: Reporter) -> _Panel:
-    reporter.begin(sheet.record.name, "preparing", 0)
+    reporter.begin(sheet.record.name, PREPARING, 0)
     counter = resolved(view.plate, view.counter(), schedule)
     counter.warm()
     reporter.begin(sheet.record.name, "counting", counter.columns * counter.exposure)
     histogram = count_histogram(counter, schedule, reporter.advance)
     fit, raster = shaded(view.plate, counter.view, histogram.strip)
+    shares = histogram.shares()
+    remarks = remarks_on(view.name, shares)
+    if view.plate.samples == "auto":
+        remarks += remark_on_samples(view.name, histogram.samples, counts_reached(histogram.strip))
     return _Panel(
         raster,
         panel_text(view.plate, fit),
-        histogram.shares(),
+        shares,
         sampled_of(counter, histogram),
         histogram.digest(),
+        remarks,
     )
 
 

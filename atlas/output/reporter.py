@@ -4,6 +4,9 @@ from __future__ import annotations
 
 from typing import Protocol
 
+PREPARING = "preparing"
+"""The stage in which a map is compiled; nothing is written in it."""
+
 
 class Reporter(Protocol):
     """Listens to long work."""

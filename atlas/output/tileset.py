@@ -24,8 +24,9 @@ from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_folder, check_site
-from atlas.output.printing import Colours, Made, key_caption, remarks_on
-from atlas.output.reporter import Reporter, Silence
+from atlas.output.printing import Colours, Made, key_caption
+from atlas.output.remarks import remarks_on
+from atlas.output.reporter import PREPARING, Reporter, Silence
 from atlas.output.whole_file import PARTS
 from atlas.reading.place import COMMAND_LINE
 from atlas.reading.view_kinds import Levels, Pairs
@@ -106,7 +107,7 @@ def make_tile_set(
     OutputFailed
         When the disk is full or the folder is closed.
     """
-    reporter.begin(job.name, "preparing", 0)
+    reporter.begin(job.name, PREPARING, 0)
     counter = resolved(job, tile_counter(job), opened)
     counter.warm()
     source = StripSource(counter, opened, reporter)

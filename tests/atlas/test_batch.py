@@ -13,6 +13,7 @@ from typing import Any
 
 import pytest
 
+import atlas
 from atlas.output import ledger
 from atlas.output.certificate import read
 from tests.atlas.rendered import SMALL, command, config, files, render, statuses
@@ -292,3 +293,26 @@ def test_a_site_never_replaces_a_folder_of_other_files(out: Path) -> None:
     with pytest.raises(Refusal, match="holds other files"):
         render(out)
     assert (out / "tiles/site/notes.txt").read_text() == "mine"
+
+
+def test_what_is_not_drawn_is_said(tmp_path: Path) -> None:
+    """Blank windows, starts on a repelling cycle and too few counts in a zoom do not pass in silence."""
+    plates = {
+        "gone": {"across": ["r", "5", "6"], "up": ["x", "0", "1"]},
+        "aside": {"across": ["r", "2", "3"], "up": ["x", "2", "3"]},
+        "extinct": {"across": ["r", "2.5", "4"], "up": ["x", "0", "1"], "starts": [{"x": "0"}]},
+        "deep": {"across": ["r", "3.9", "4"], "up": ["x", "0.5", "0.50005"]},
+        "good": {"across": ["r", "3.6", "4"], "up": ["x", "0", "1"]},
+    }
+    config = {
+        "plates": {
+            name: {"family": "logistic", "size": "300x200px", "dpi": "100", **plate}
+            for name, plate in plates.items()
+        }
+    }
+    outcomes = {one.name: one.remarks for one in atlas.render(atlas.parse_config(config), tmp_path)}
+    assert [len(outcomes[name]) for name in plates] == [1, 1, 1, 1, 0]
+    assert "nothing is drawn: 100.000% of the samples escaped" in outcomes["gone"][0]
+    assert "lie below the window" in outcomes["aside"][0]
+    assert "start exactly on a repelling cycle" in outcomes["extinct"][0]
+    assert "counts a cell" in outcomes["deep"][0]

@@ -5,6 +5,7 @@ from __future__ import annotations
 import signal
 import subprocess
 import sys
+import time
 from collections import Counter
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -131,6 +132,7 @@ def test_an_interrupt_ends_long_orbits_at_once_and_keeps_what_was_finished(
     config: Path, tmp_path: Path, name: str, until: str
 ) -> None:
     with started("", until, config, tmp_path / "out", "rise", name) as process:
+        time.sleep(1.0)  # the kernels are at work
         interrupted(process)
     assert set(files(tmp_path / "out")) == {"rise.png", "rise.pdf"}
 
