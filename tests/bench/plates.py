@@ -31,7 +31,7 @@ def run() -> None:
     columns, rows = sheet_of(plate).views[0].columns, sheet_of(plate).views[0].rows
     plate = plate_from_parts(
         "logistic", ("r", "3.6", "4"), ("x", "0", "1"),
-        size="180x110", dpi=600, formats=["png"], samples=TOTAL // (4 * columns),
+        size="180x110", dpi=600, formats=["png"], samples=TOTAL // (plate.values_per_column * columns),
     )  # fmt: skip
     sheet = sheet_of(plate)
     with tempfile.TemporaryDirectory() as folder:
