@@ -21,7 +21,10 @@ SECONDS_PER_SLOW_CALL = 0.6e-9
 SECONDS_PER_PIXEL = {"png": 1.2e-8, "tiff": 3.5e-8, "pdf": 1.5e-8, "svg": 1.2e-8}
 SECONDS_PER_TILE = 1.5e-3
 OCCUPIED_TILES = 0.5
-BYTES_PER_WAITING_CELL = 1
+BYTES_PER_CELL_OF_DIAGONAL, BYTES_PER_CELL_OF_ALL_PAIRS, MOST_CELLS_WAITING = 0.5, 2.0, 1 << 24
+BYTES_PER_PIECE, BYTES_PER_EDGE = 60, 16
+"""Measured: what a task keeps of a tile column, above all its coarser halves (deep columns are mostly empty);
+the list of pieces where strips are narrower than a tile; the edges of cells."""
 
 
 def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:
@@ -63,19 +66,18 @@ def _need_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
     )
     seconds = _counting_seconds(counter) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
     at_once = builders(record, workers, budget)
-    memory = building_memory(counter.rows, at_once, block_width(counter))
+    memory = BASE_MEMORY + BYTES_PER_EDGE * counter.rows + at_once * _column_memory_of(record)
     return Need(record.cells, counter.columns * counter.exposure, seconds / at_once, memory)
 
 
 def builders(record: TileSet, workers: int, budget: int) -> int:
     """Return how many tile columns are built side by side within a memory budget, 1 at least."""
-    counter = tile_counter(record)
-    room = (budget - BASE_MEMORY) // _column_memory(counter.rows, block_width(counter))
+    room = (budget - BASE_MEMORY - BYTES_PER_EDGE * record.cells[1]) // _column_memory_of(record)
     return max(1, min(workers, room, 1 << record.levels.across))
 
 
-def building_memory(rows: int, workers: int, block: int = 0) -> int:
-    """Return the estimated peak memory of the process in bytes while a tile set is built.
+def building_memory(rows: int, workers: int) -> int:
+    """Return the estimated peak memory of the process in bytes while a tile set is built from other counts.
 
     Parameters
     ----------
@@ -83,16 +85,22 @@ def building_memory(rows: int, workers: int, block: int = 0) -> int:
         Cells along the up axis at the deepest level.
     workers : int
         Tile columns that are built side by side.
-    block : int
-        Columns that a kernel counts at once.
     """
-    return BASE_MEMORY + workers * _column_memory(rows, block)
+    return BASE_MEMORY + workers * _column_memory(rows, 0, BYTES_PER_CELL_OF_ALL_PAIRS)
 
 
-def _column_memory(rows: int, block: int) -> int:
-    """Return the memory of a tile column: its strip, the counts of a block, what waits for its tile."""
+def _column_memory_of(record: TileSet) -> int:
+    waiting = BYTES_PER_CELL_OF_DIAGONAL if record.pairs == "diagonal" else BYTES_PER_CELL_OF_ALL_PAIRS
+    counter = tile_counter(record)
+    return _column_memory(counter.rows, block_width(counter), waiting)
+
+
+def _column_memory(rows: int, block: int, waiting: float) -> int:
+    """Return the memory of a tile column: its strip, the counts of a block, what waits to be stored."""
     strip = strip_width(CELLS_PER_STRIP, rows)
-    return 4 * rows * (strip + min(strip, block) + 1) + BYTES_PER_WAITING_CELL * TILE * rows
+    pieces = rows // strip if strip < TILE else 0
+    kept = int(waiting * min(TILE * rows, MOST_CELLS_WAITING)) + BYTES_PER_PIECE * pieces
+    return 4 * rows * (strip + min(strip, block) + 1) + kept
 
 
 def _counting_seconds(counter: OrbitCounter) -> float:
