@@ -297,7 +297,7 @@ def test_a_site_never_replaces_a_folder_of_other_files(out: Path) -> None:
 
 def test_what_is_not_drawn_is_said(tmp_path: Path) -> None:
     """Blank windows, starts on a repelling cycle and too few counts in a zoom do not pass in silence."""
-    plates = {
+    plates: dict[str, dict[str, Any]] = {
         "gone": {"across": ["r", "5", "6"], "up": ["x", "0", "1"]},
         "aside": {"across": ["r", "2", "3"], "up": ["x", "2", "3"]},
         "extinct": {"across": ["r", "2.5", "4"], "up": ["x", "0", "1"], "starts": [{"x": "0"}]},

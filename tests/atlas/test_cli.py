@@ -204,9 +204,16 @@ def test_draw_writes_each_format_that_a_suffix_names(tmp_path: Path) -> None:
     assert not (tmp_path / ".parts").exists()
 
 
-def test_draw_sets_parameters_and_takes_the_familys_own_view(tmp_path: Path) -> None:
-    done("draw", "hassell", "--set", "beta=6", *DRAWN, "--out", tmp_path / "a.png")
-    assert read(tmp_path / "a.png")["config"]["settings"]["set"] == {"beta": "6"}
+def test_draw_sets_parameters(tmp_path: Path) -> None:
+    words = ("--across", "r=1.6:4.2", "--up", "n=0:3.5", "--set", "h=1/3", *DRAWN)
+    done("draw", SMALL, *words, "--out", tmp_path / "a.png")
+    assert read(tmp_path / "a.png")["config"]["settings"]["set"] == {"h": "1/3"}
+
+
+def test_draw_takes_the_familys_own_view(tmp_path: Path) -> None:
+    done("draw", "logistic", *DRAWN, "--out", tmp_path / "a.png")
+    made = read(tmp_path / "a.png")["config"]["settings"]
+    assert (made["across"]["name"], made["across"]["high"], made["up"]["name"]) == ("r", "4", "x")
 
 
 def test_draw_takes_the_only_family_of_a_config(tmp_path: Path) -> None:
@@ -320,9 +327,35 @@ def test_site_refuses_other_colours_and_folders_with_other_files(out: Path, tmp_
     assert "holds other files, which a site would replace" in refused(
         "site", index, "--out", tmp_path / "mine"
     )
+    assert ", such as 'notes.txt'; name a new folder" in refused("site", index, "--out", tmp_path / "mine")
     assert "cannot be used (Not a directory)" in refused("site", index, "--out", SMALL)
     assert "cannot be written to (it is a file)" in refused("site", index, "--out", SMALL / "site")
     assert {str(path.relative_to(tmp_path)) for path in tmp_path.rglob("*")} == {"mine", "mine/notes.txt"}
+
+
+@pytest.mark.parametrize(
+    ("held", "foreign"),
+    [
+        ({"page.js": "", "note.txt": "mine"}, "note.txt"),
+        ({"meta.js": "window.ATLAS_META = {};", "page.js": "", "thesis.tex": "mine"}, "thesis.tex"),
+        ({"meta.js": "mine", "page.js": ""}, "meta.js"),
+        ({"index.html": "mine", "page.js": ""}, "index.html"),
+    ],
+)
+def test_site_replaces_no_folder_that_holds_anything_else(
+    out: Path, tmp_path: Path, held: dict[str, str], foreign: str
+) -> None:
+    site = tmp_path / "mine"
+    site.mkdir()
+    for name, text in held.items():
+        (site / name).write_text(text)
+    told = refused("site", out / "tiles/index.sqlite", "--out", site)
+    assert f"which a site would replace, such as '{foreign}'; name a new folder" in told
+    assert {str(path.relative_to(tmp_path)) for path in tmp_path.rglob("*")} == {
+        "mine",
+        *(f"mine/{name}" for name in held),
+    }
+    assert {path.name: path.read_text() for path in site.iterdir()} == held
 
 
 # Wrong configs
