@@ -17,7 +17,7 @@ import pytest
 ROOT = Path(__file__).parents[1]
 
 TABLE = """
- 0  tiles tiles.page tiles.errors tiles.tasks tiles.colour_tables
+ 0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
  1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
  2  tiles.window tiles.pyramid tiles.curve
  3  tiles.codec tiles.shading tiles.stages

@@ -8,7 +8,6 @@ import shutil
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from functools import partial
-from importlib import resources
 from pathlib import Path
 from typing import Any
 
@@ -20,13 +19,13 @@ from tiles.errors import IndexRefused
 from tiles.grid import TILE, Address, Pair
 from tiles.index import Index
 from tiles.meta import LAYER, meta, runs_where, script
+from tiles.page_files import page_files
 from tiles.pyramid import Counts
 from tiles.shading import Fit, colour_table, shade_counts
 from tiles.store import Readers, written
 from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
-_PAGE_FILES = (".html", ".css", ".js")
 _SHORTEST_TABLE, _LONGEST_TABLE = 1 << 16, 1 << 20
 
 
@@ -204,9 +203,8 @@ def _write_page(
     colours: dict[str, str | None],
 ) -> None:
     """Write the page and its description, whose plate has the colours of this folder."""
-    for file in resources.files("tiles.page").iterdir():
-        if file.name.endswith(_PAGE_FILES):
-            (site / file.name).write_bytes(file.read_bytes())
+    for name, content in page_files().items():
+        (site / name).write_bytes(content)
     level = index.pairs[-1][0]
     marks = level, runs_where(_unsettled(index, level))
     plate = {**(index.header.get("plate") or {}), **colours}
