@@ -108,6 +108,21 @@ def number_of(blob: bytes) -> int:
     return int.from_bytes(blob[1:], "big")
 
 
+def middle_pair(pairs: Iterable[Pair]) -> Pair:
+    """Return the pair nearest to half the deepest levels; of equally near ones the coarsest.
+
+    Examples
+    --------
+    >>> middle_pair(level_pairs(4, 2, "all"))
+    (2, 1)
+    """
+    built = tuple(pairs)
+    across, up = (max(levels) for levels in zip(*built, strict=True))
+    return min(
+        built, key=lambda pair: ((2 * pair[0] - across) ** 2 + (2 * pair[1] - up) ** 2, sum(pair), pair)
+    )
+
+
 def level_pairs(
     across_level: int, up_level: int, pairs: str | Iterable[Pair] = "diagonal"
 ) -> tuple[Pair, ...]:

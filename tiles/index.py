@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from tiles.codec import Encoded, decode, encode
 from tiles.errors import IndexRefused
-from tiles.grid import TILE, Address, Pair, key_of, number_of
+from tiles.grid import TILE, Address, Pair, key_of, middle_pair, number_of
 from tiles.pyramid import Counts
 from tiles.shading import Fit, line_density
 from tiles.shading import fit as fit_densities
@@ -207,7 +207,7 @@ class Index(Store):
         return None if found is None else Fit.from_json(json.dumps(found))
 
     def fit_from(self, pair: Pair | None = None, shading: str = "equalised") -> Fit:
-        """Fit a shading to all tiles of a level pair, by default the middle one.
+        """Fit a shading to all tiles of a level pair, by default :func:`tiles.grid.middle_pair`.
 
         Where ``lines`` of the header is true, branches of cycles get the highest shade, see
         :func:`tiles.shading.line_density`.
@@ -217,7 +217,7 @@ class Index(Store):
         Fit
             The same as ``tiles.shading.fit`` makes of the densities of the whole mosaic.
         """
-        pair = self.pairs[len(self.pairs) // 2] if pair is None else pair
+        pair = middle_pair(self.pairs) if pair is None else pair
         height = self.view.up.cell_size(TILE << pair[1])
         tally = Tally()
         for address in list(self.addresses(pair)):

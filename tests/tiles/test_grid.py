@@ -5,7 +5,7 @@ from hypothesis import given
 from hypothesis import strategies as some
 
 from tiles.errors import TooLarge, WindowRefused
-from tiles.grid import Address, key_of, level_pairs, number_of
+from tiles.grid import Address, key_of, level_pairs, middle_pair, number_of
 
 
 @some.composite
@@ -74,3 +74,25 @@ def test_wrong_pairs_are_refused():
         level_pairs(1, 1, "diagonals")
     with pytest.raises(WindowRefused, match="outside the tile set"):
         level_pairs(1, 1, [(2, 0)])
+
+
+@pytest.mark.parametrize("pairs", ["all", "diagonal"])
+@pytest.mark.parametrize("level", range(1, 7))
+def test_the_middle_pair_is_half_as_deep(level, pairs):
+    assert middle_pair(level_pairs(level, level, pairs)) == (level // 2, level // 2)
+
+
+@pytest.mark.parametrize(
+    ("levels", "pairs", "middle"),
+    [
+        ((4, 2), "all", (2, 1)),
+        ((5, 2), "all", (2, 1)),
+        ((0, 3), "all", (0, 1)),
+        ((4, 2), "diagonal", (2, 0)),
+        ((1, 5), "diagonal", (0, 2)),
+        ((0, 0), "diagonal", (0, 0)),
+        ((4, 4), [(0, 0), (3, 3), (1, 1)], (1, 1)),
+    ],
+)
+def test_the_middle_pair_of_unequal_levels(levels, pairs, middle):
+    assert middle_pair(level_pairs(*levels, pairs)) == middle
