@@ -22,7 +22,7 @@ from tiles.meta import LAYER, meta, runs_where, script
 from tiles.page_files import page_files
 from tiles.pyramid import Counts
 from tiles.shading import Fit, colour_table, shade_counts
-from tiles.store import Readers, written
+from tiles.store import Readers, intact, written
 from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
@@ -68,7 +68,7 @@ def build_site(
     """
     unfinished = out_dir.parent / ".parts" / out_dir.name if unfinished is None else unfinished
     table = colour_table(palette, background=background, missing=missing, shading=shading)
-    with Index.open(index_path) as index:
+    with intact(index_path), Index.open(index_path) as index:
         fit = index.fit(shading) or index.fit_from(shading=shading)
         present = {pair: index.present(pair) for pair in index.pairs}
         shades = {up: Shades(fit, index.view.up.cell_size(TILE << up)) for _, up in index.pairs}

@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import sqlite3
 import threading
+import zlib
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from functools import partial
@@ -228,6 +229,17 @@ def written(path: Path) -> Iterator[None]:
         raise OutputFailed(
             f"{path}: cannot be written: {reason}; free some space or give another folder"
         ) from problem
+
+
+@contextmanager
+def intact(path: Path) -> Iterator[None]:
+    """Turn what reading a damaged index raises into an :class:`IndexRefused` that names the file."""
+    try:
+        yield
+    except (sqlite3.DatabaseError, KeyError, ValueError, zlib.error) as problem:
+        if isinstance(problem, sqlite3.OperationalError):
+            raise
+        raise IndexRefused(f"{path} is damaged or no tile index; render it again") from problem
 
 
 @contextmanager

@@ -1,8 +1,11 @@
 """The static folder shows exactly the counts of the index, and appears whole."""
 
+import contextlib
 import json
 import os
+import shutil
 import signal
+import sqlite3
 import subprocess
 import sys
 from importlib import resources
@@ -285,3 +288,19 @@ def test_a_folder_that_cannot_be_made_is_reported(tmp_path, index_path):
     (tmp_path / "file").touch()
     with pytest.raises(OutputFailed, match="cannot be written"):
         build_site(index_path, tmp_path / "file" / "site")
+
+
+@pytest.mark.parametrize("damage", ["pages", "header"])
+def test_a_damaged_index_is_refused_in_one_sentence(tmp_path, index_path, damage):
+    index = tmp_path / "damaged.sqlite"
+    shutil.copy(index_path, index)
+    if damage == "pages":
+        data = bytearray(index.read_bytes())
+        data[4096:] = b"\xff" * (len(data) - 4096)
+        index.write_bytes(bytes(data))
+    else:
+        with contextlib.closing(sqlite3.connect(index)) as db, db:
+            db.execute("UPDATE records SET json = '{}' WHERE name = 'header'")
+    with pytest.raises(IndexRefused, match="is damaged or no tile index"):
+        build_site(index, tmp_path / "site")
+    assert not (tmp_path / "site").exists()
