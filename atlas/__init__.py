@@ -13,16 +13,23 @@ if TYPE_CHECKING:
     from atlas.config.load import load as load
     from atlas.config.load import parse_config as parse_config
     from atlas.config.load import plate_from_parts
+    from atlas.config.schema import schema as schema
+    from atlas.families.catalogue import NAMES
     from atlas.families.catalogue import family as family
     from atlas.figure.axes_image import draw_axes as draw_axes
     from atlas.orbits.counts import orbit_counts as orbit_counts
+    from atlas.output.batch import needs as needs
     from atlas.output.batch import render as render
     from atlas.output.certificate import read
     from atlas.output.printing import draw_plate as draw_plate
+    from atlas.output.tileset import rebuild_site as rebuild_site
     from atlas.points.binning import bin_points as bin_points
+    from atlas.points.plates import draw_points as draw_points
+    from atlas.points.tile_sets import tile_points as tile_points
     from tiles.window import Axis as Axis
     from tiles.window import View as View
 
+    family_names = NAMES
     plate = plate_from_parts
     read_certificate = read
 
@@ -32,13 +39,19 @@ _HOMES = {
     "bin_points": ("atlas.points.binning", "bin_points"),
     "draw_axes": ("atlas.figure.axes_image", "draw_axes"),
     "draw_plate": ("atlas.output.printing", "draw_plate"),
+    "draw_points": ("atlas.points.plates", "draw_points"),
     "family": ("atlas.families.catalogue", "family"),
+    "family_names": ("atlas.families.catalogue", "NAMES"),
     "load": ("atlas.config.load", "load"),
+    "needs": ("atlas.output.batch", "needs"),
     "orbit_counts": ("atlas.orbits.counts", "orbit_counts"),
     "parse_config": ("atlas.config.load", "parse_config"),
     "plate": ("atlas.config.load", "plate_from_parts"),
     "read_certificate": ("atlas.output.certificate", "read"),
+    "rebuild_site": ("atlas.output.tileset", "rebuild_site"),
     "render": ("atlas.output.batch", "render"),
+    "schema": ("atlas.config.schema", "schema"),
+    "tile_points": ("atlas.points.tile_sets", "tile_points"),
 }
 __all__ = sorted(_HOMES)
 

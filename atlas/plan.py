@@ -79,11 +79,13 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
     _check_depth(counter.view.across, counter.columns * counter.rules.values_per_column, 2.0, lead)
     _check_depth(counter.view.up, counter.rows, 8.0, lead)
     low, high = float(counter.view.across.low), float(counter.view.across.high)
+    # measured: in a narrower view the rounding of the map moves orbits by more than a cell
     needed = 5.0 * counter.rows * EPSILON * max(abs(low), abs(high))
     if high - low < needed:
         raise PlanRefused(
             f"{lead}the axis '{counter.view.across.name}' is {high - low:.1e} wide, finer than float64 "
-            f"can resolve on {counter.rows} rows; make it at least {needed:.1e} wide"
+            f"can resolve on {counter.rows} rows: rounding in the map grows to a cell of the picture; "
+            f"use fewer rows, or make it at least {needed:.1e} wide"
         )
 
 

@@ -9,6 +9,7 @@ from atlas.config.load import Plate, load, plate_from_parts
 from atlas.errors import ConfigRefused, shown
 from atlas.families.catalogue import family as catalogued
 from atlas.families.reader import Family
+from atlas.reading.place import COMMAND_LINE
 
 
 def drawn_family(given: str) -> Family:
@@ -35,7 +36,9 @@ def plate_of(
     if left is None or right is None:
         raise ConfigRefused(_no_view(family, left is None, right is None))
     starts = [{name: value} for name, value in start] or None
-    return plate_from_parts(family, left, right, starts=starts, name=family.name, **options)
+    return plate_from_parts(
+        family, left, right, starts=starts, name=family.name, place=COMMAND_LINE, **options
+    )
 
 
 def _no_view(family: Family, across: bool, up: bool) -> str:

@@ -27,9 +27,17 @@ def command(
     """Rebuild the static folder of a tile set from INDEX, in other colours if you like; no orbit is run."""
     from atlas.cli.progress import Bar
     from atlas.output.tileset import rebuild_site
+    from atlas.reading.place import COMMAND_LINE
 
     with Bar() as bar:
         rebuild_site(
-            index, out, shading=shading, palette=palette, background=background, workers=workers, reporter=bar
+            index,
+            out,
+            shading=shading,
+            palette=palette,
+            background=background,
+            workers=workers,
+            reporter=bar,
+            place=COMMAND_LINE,
         )
     click.echo(f"{out / 'index.html'}")

@@ -18,7 +18,7 @@ from atlas.errors import ConfigRefused
 from atlas.families import catalogue
 from atlas.families.reader import Family, family_from_config
 from atlas.reading.kinds import Text
-from atlas.reading.place import COMMAND_LINE, Place, shown
+from atlas.reading.place import COMMAND_LINE, REQUEST, Place, path_of, shown
 from atlas.reading.section import text_keys
 from atlas.reading.yaml_text import LARGEST_FILE, read_yaml
 from tiles.errors import nearest
@@ -90,8 +90,9 @@ def load(path: str | os.PathLike[str]) -> Config:
     ConfigRefused, FamilyRefused, FormulaRefused
         With one sentence that names the file, the place, what was found and what is allowed.
     """
+    path = path_of(path, REQUEST.at("path"))
     where = errors.shown(os.fspath(path), LONGEST_PATH)[1:-1]
-    return parse_config(_file_content(Path(path), where), where, path=Path(path))
+    return parse_config(_file_content(path, where), where, path=path)
 
 
 def parse_config(
@@ -201,7 +202,7 @@ def plate_from_parts(
     set: Mapping[str, Any] | None = None,
     starts: Sequence[Mapping[str, Any]] | None = None,
     name: str = "plate",
-    place: Place = COMMAND_LINE,
+    place: Place = REQUEST,
     **options: Any,
 ) -> Plate:
     """Return a plate without any file, checked as one from a file is.
@@ -219,7 +220,7 @@ def plate_from_parts(
     name : str
         Name of the output.
     place : Place
-        How a refusal calls the parts: ``--across`` by default, ``across`` with ``Place()``.
+        How a refusal calls the parts: ``across`` by default, ``--across`` with ``COMMAND_LINE``.
     **options
         Any other key of a plate in a config; None means not given.
 

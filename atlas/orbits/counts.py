@@ -22,7 +22,7 @@ from atlas.output.certificate import as_text, certificate
 from atlas.output.certificate_reader import KEY
 from atlas.plan import check_arrays, parse_memory
 from atlas.reading.kinds import Whole
-from atlas.reading.place import Place, shown
+from atlas.reading.place import REQUEST, Place, shown
 from tiles.number import Exact
 from tiles.strip import PER_COLUMN, Strip
 from tiles.tally import density
@@ -100,7 +100,9 @@ def orbit_counts(
     >>> ds.counts.dims
     ('x', 'r')
     """
-    place = Place()
+    place = REQUEST
+    if not isinstance(view, View):
+        raise place.at("view").refusal(f"{shown(view)} is no view; write atlas.View(across=..., up=...)")
     columns, rows = _cells(size, place.at("size"))
     check_arrays((columns, rows), parse_memory(memory))
     job = plate_from_parts(

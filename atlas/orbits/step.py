@@ -8,10 +8,12 @@ import os
 import sys
 import tempfile
 from dataclasses import dataclass
+from functools import cache
 from pathlib import Path
 from types import ModuleType
 
 from atlas.arithmetic.float64 import POLYNOMIALS, StraightLine, hoist
+from atlas.errors import FormulaRefused
 from atlas.families.reader import Family
 from atlas.formula.tree import Node, free_names
 
@@ -56,6 +58,7 @@ class StepSource:
         return [f"c{k}" for k in range(self.coefficients)]
 
 
+@cache
 def step_source(family: Family) -> StepSource:
     """Write the source of a family's step, of its Jacobian and of its coefficients.
 
@@ -66,10 +69,18 @@ def step_source(family: Family) -> StepSource:
     Returns
     -------
     StepSource
+
+    Raises
+    ------
+    FormulaRefused
+        When the step has no derivative.
     """
     states = [state.name for state in family.states]
     steps = list(family.inlined_step())
-    slopes = [entry for row in family.jacobian() for entry in row]
+    try:
+        slopes = [entry for row in family.jacobian() for entry in row]
+    except FormulaRefused as problem:
+        raise FormulaRefused(f"families.{family.name}.step: {problem}") from None
     trees, constants = hoist([*steps, *slopes], states)
     names = {name: f"x{k}" for k, name in enumerate(states)}
     names |= {f"coefficient {k}": f"c{k}" for k in range(len(constants))}

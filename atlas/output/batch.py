@@ -2,24 +2,29 @@
 
 from __future__ import annotations
 
+import os
 import time
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from atlas.config.digests import digest
 from atlas.config.jobs import Figure, Plate, TileSet
-from atlas.config.load import Config
+from atlas.config.load import Config, load
 from atlas.errors import ConfigRefused, shown
 from atlas.orbits.schedule import Schedule, schedule, threads
+from atlas.orbits.step import step_source
 from atlas.output.folders import check_files, check_folder, check_site
-from atlas.output.forecast import builders, need_of
+from atlas.output.forecast import builders, need_of, room_of
 from atlas.output.ledger import Ledger
 from atlas.output.printing import Made, check_lettering, make_sheet, sheet_of
 from atlas.output.reporter import Reporter, Silence
 from atlas.output.tileset import Places, make_tile_set
 from atlas.plan import Need, check_fits, parse_memory
+from atlas.reading.place import REQUEST, path_of
+from atlas.reading.place import shown as named
 from tiles.errors import Failure, OutputFailed, Refusal, nearest
 
 Record = Plate | TileSet | Figure
@@ -62,7 +67,7 @@ class _Planned:
 
 
 def render(
-    config: Config,
+    config: Config | Path | str,
     out: Path | str = "out",
     *,
     only: Sequence[str] = (),
@@ -75,8 +80,8 @@ def render(
 
     Parameters
     ----------
-    config : Config
-        From `atlas.load`.
+    config : Config or path
+        From `atlas.load`, or the file to load.
     out : path
         The folder; made if it is not there.
     only : sequence of str
@@ -100,15 +105,19 @@ def render(
     Refusal
         When the request is wrong; then nothing was rendered.
     """
-    out = Path(out)
+    config, out = _config_of(config), path_of(out, REQUEST.at("out"))
     reporter = reporter or Silence()
     planned = _plan(config, out, only, threads(workers), parse_memory(memory))
-    check_folder(out)
     ledger = Ledger(out)
+    unchanged = {
+        one.name for one in planned if not force and ledger.unchanged(one.name, one.request, one.files)
+    }
+    _check_derivatives(config, [one.name for one in planned if one.name not in unchanged])
+    check_folder(out)
     outcomes = []
     with schedule(workers) as opened:
         for one in planned:
-            if not force and ledger.unchanged(one.name, one.request, one.files):
+            if one.name in unchanged:
                 outcomes.append(Outcome(one.name, one.kind, "skipped"))
             else:
                 outcomes.append(_make(one, ledger, opened, reporter))
@@ -134,13 +143,13 @@ def select(config: Config, only: Sequence[str]) -> dict[str, Record]:
 
 
 def needs(
-    config: Config, *, workers: int | None = None, memory: str | int | None = None
+    config: Config | Path | str, *, workers: int | None = None, memory: str | int | None = None
 ) -> list[tuple[Record, Need]]:
     """Return the outputs of a config and what each needs, without computing anything.
 
     Parameters
     ----------
-    config : Config
+    config : Config or path
     workers, memory
         As for :func:`render`.
 
@@ -149,19 +158,36 @@ def needs(
     Refusal
         Where :func:`render` would refuse the config.
     """
-    budget = parse_memory(memory)
+    config, budget = _config_of(config), parse_memory(memory)
     found = []
     for record in select(config, ()).values():
         with _named(config):
-            found.append((record, _checked_need(record, threads(workers), budget)))
+            found.append((record, _checked(need_of(record, threads(workers), budget), record, budget)))
     return found
+
+
+def _config_of(given: Any) -> Config:
+    if isinstance(given, Config):
+        return given
+    if isinstance(given, str | os.PathLike):
+        return load(given)
+    raise REQUEST.at("config").refusal(f"{named(given)} is no config; write atlas.load(path) or a path")
+
+
+def _check_derivatives(config: Config, names: Sequence[str]) -> None:
+    """Refuse formulas without a derivative, looked for only where something will be made."""
+    outputs = config.outputs()
+    for record in (outputs[name] for name in names):
+        for job in record.plates.values() if isinstance(record, Figure) else (record,):
+            with _named(config):
+                step_source(job.family)
 
 
 def _plan(config: Config, out: Path, only: Sequence[str], workers: int, budget: int) -> list[_Planned]:
     planned = []
     for record in select(config, only).values():
         with _named(config):
-            _checked_need(record, workers, budget)
+            _checked(room_of(record, workers, budget), record, budget)
         planned.append(_planned(record, out, workers, budget))
     return planned
 
@@ -175,8 +201,7 @@ def _named(config: Config) -> Iterator[None]:
         raise type(problem)(f"{config.path}: {problem}" if config.path else str(problem)) from None
 
 
-def _checked_need(record: Record, workers: int, budget: int) -> Need:
-    need = need_of(record, workers, budget)
+def _checked(need: Need, record: Record, budget: int) -> Need:
     check_fits(record.name, need.pixels, need.memory, budget)
     if not isinstance(record, TileSet):
         check_lettering(sheet_of(record))

@@ -6,6 +6,8 @@ the arrays that are alive at the peak, over what the libraries take by themselve
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
@@ -27,8 +29,8 @@ BYTES_PER_PIECE, BYTES_PER_EDGE = 60, 16
 the list of pieces where strips are narrower than a tile; the edges of cells."""
 
 
-def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:
-    """Return what an output needs.
+def room_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:
+    """Return what an output needs, except the time, for which its formulas would have to be read closely.
 
     With ``samples: auto`` the samples are those of a view that holds the whole attractor; a zoom into a part
     of it takes more.
@@ -47,27 +49,32 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
         When the output cannot be laid out or counted at all.
     """
     if isinstance(record, TileSet):
-        return _need_of_tile_set(record, workers, budget)
-    width, height = record.pixels
+        return _room_of_tile_set(record, workers, budget)
     sheet = sheet_of(record)
-    samples, seconds = 0, 0.0
-    for view in sheet.views:
-        counter = view.counter()
-        samples += counter.columns * counter.exposure
-        seconds += _counting_seconds(counter) / workers
+    counters = [view.counter() for view in sheet.views]
+    samples = sum(counter.columns * counter.exposure for counter in counters)
+    return Need(record.pixels, samples, 0.0, sheet.memory)
+
+
+def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:
+    """Return what an output needs: what :func:`room_of` says, and the time."""
+    room = room_of(record, workers, budget)
+    if isinstance(record, TileSet):
+        pairs = level_pairs(record.levels.across, record.levels.up, record.pairs)
+        tiles = sum(2 ** (across + up) for across, up in pairs)
+        seconds = _counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
+        return replace(room, seconds=seconds / builders(record, workers, budget))
+    width, height = record.pixels
+    seconds = sum(_counting_seconds(view.counter()) for view in sheet_of(record).views) / workers
     seconds += sum(SECONDS_PER_PIXEL[form] for form in record.formats) * width * height
-    return Need((width, height), samples, seconds, sheet.memory)
+    return replace(room, seconds=seconds)
 
 
-def _need_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
+def _room_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
     counter = tile_counter(record)
-    tiles = sum(
-        2 ** (across + up) for across, up in level_pairs(record.levels.across, record.levels.up, record.pairs)
-    )
-    seconds = _counting_seconds(counter) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
     at_once = builders(record, workers, budget)
     memory = BASE_MEMORY + BYTES_PER_EDGE * counter.rows + at_once * _column_memory_of(record)
-    return Need(record.cells, counter.columns * counter.exposure, seconds / at_once, memory)
+    return Need(record.cells, counter.columns * counter.exposure, 0.0, memory)
 
 
 def builders(record: TileSet, workers: int, budget: int) -> int:

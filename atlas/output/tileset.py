@@ -28,13 +28,13 @@ from atlas.output.printing import Colours, Made, key_caption
 from atlas.output.remarks import remarks_on
 from atlas.output.reporter import PREPARING, Reporter, Silence
 from atlas.output.whole_file import PARTS
-from atlas.reading.place import COMMAND_LINE
+from atlas.reading.place import REQUEST, Place, path_of
 from atlas.reading.view_kinds import Levels, Pairs
 from tiles.build import build
 from tiles.column import Source
 from tiles.index import Index
 from tiles.site import build_site
-from tiles.store import written
+from tiles.store import intact, written
 from tiles.strip import PER_COLUMN, Strip
 from tiles.window import View
 
@@ -266,26 +266,29 @@ def _made(job: TileSet, counter: OrbitCounter, index: Index) -> Made:
 
 
 def rebuild_site(
-    index: Path,
-    site: Path,
+    index: Path | str,
+    site: Path | str,
     *,
     shading: str | None = None,
     palette: str | None = None,
     background: str | None = None,
     workers: int | None = None,
     reporter: Reporter | None = None,
+    place: Place = REQUEST,
 ) -> None:
     """Write the static folder of a finished index again, by default in the colours that it was made with.
 
     Parameters
     ----------
-    index, site : Path
+    index, site : path
         The index file, and the folder to write.
     shading, palette, background : str, optional
     workers : int, optional
         Threads.
     reporter : Reporter, optional
         Hears of the progress.
+    place : Place
+        How a refusal calls the colours.
 
     Raises
     ------
@@ -296,19 +299,22 @@ def rebuild_site(
     OutputFailed
         When the disk is full or the folder is closed.
     """
+    index, site = path_of(index, place.at("index")), path_of(site, place.at("site"))
     given = {"shading": shading, "palette": palette, "background": background, "missing": None}
     chosen = {
-        key.name: key.read(given[key.name], COMMAND_LINE.at(key.name))
+        key.name: key.read(given[key.name], place.at(key.name))
         for key in JOB_KEYS
         if given.get(key.name) is not None
     }
     check_site(site)
-    with Index.open(index) as opened_index:
-        plate = opened_index.header.get("plate") or {}
+    with intact(index):
+        with Index.open(index) as opened_index:
+            plate = opened_index.header.get("plate") or {}
+        columns = _tile_columns(index)
     check_folder(site.parent)
     colours = {name: chosen.get(name, plate.get(name)) for name in given}
     reporter = reporter or Silence()
-    reporter.begin(site.name, "tiles", _tile_columns(index))
+    reporter.begin(site.name, "tiles", columns)
     with schedule(workers) as opened:
         make_site(index, site, colours, opened, reporter)
     with contextlib.suppress(OSError):

@@ -12,10 +12,11 @@ from atlas.output.reporter import Silence
 from atlas.plan import check_arrays, parse_memory
 from atlas.points.cells import Grid
 from atlas.points.counting import Reading, count_points
-from atlas.points.intervals import REQUEST, AskedAxis, AxisGiven, view_of
+from atlas.points.intervals import AskedAxis, AxisGiven, view_of
 from atlas.points.opening import table_of
 from atlas.points.record import binned, samples
 from atlas.points.tables import ROWS_PER_CHUNK
+from atlas.reading.place import REQUEST, shown
 from tiles.window import View
 
 
@@ -75,6 +76,8 @@ def bin_points(
     """
     place = REQUEST
     axes = (view.across, view.up) if isinstance(view, View) else view
+    if not isinstance(axes, tuple | list) or len(axes) != 2:
+        raise place.at("view").refusal(f"{shown(axes)} is no view; write atlas.View(across=..., up=...)")
     across, up = (AskedAxis.read(one, place.at(key)) for one, key in zip(axes, ("across", "up"), strict=True))
     columns, rows = (int(cells) for cells in size)
     check_arrays((columns, rows), parse_memory(memory))

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from atlas.errors import PointsRefused, shown
 from atlas.points.tables import Table
+from atlas.reading.place import REQUEST as REQUEST
 from atlas.reading.place import Place
 from atlas.reading.section import read_section
 from atlas.reading.view_kinds import AXIS_KEYS
@@ -23,7 +24,6 @@ from tiles.window import Axis, Scale, View
 
 _KEYS = tuple(replace(key, required=key.name == "name") for key in AXIS_KEYS)
 _DIGITS = 2
-REQUEST = Place()
 
 AxisGiven = Axis | str | Iterable[Any] | Mapping[str, Any]
 

@@ -15,7 +15,7 @@ from atlas.output.reporter import Reporter, Silence
 from atlas.plan import check_fits, parse_memory
 from atlas.points.cells import Grid
 from atlas.points.counting import Reading, count_points
-from atlas.points.intervals import REQUEST, AskedAxis, AxisGiven, view_of
+from atlas.points.intervals import AskedAxis, AxisGiven, view_of
 from atlas.points.jobs import (
     PLATE_OPTIONS,
     PointsPlate,
@@ -28,7 +28,7 @@ from atlas.points.jobs import (
 from atlas.points.opening import table_of
 from atlas.points.record import Binned, binned
 from atlas.points.tables import ROWS_PER_CHUNK
-from atlas.reading.place import Place
+from atlas.reading.place import REQUEST, Place
 from tiles.shading import Fit, key_labels
 
 READING_MEMORY = 64 << 20

@@ -18,13 +18,13 @@ from atlas.output.tileset import Places, build_tile_set
 from atlas.plan import check_fits, parse_memory
 from atlas.points.cells import Grid
 from atlas.points.counting import Reading
-from atlas.points.intervals import REQUEST, AskedAxis, AxisGiven, view_of
+from atlas.points.intervals import AskedAxis, AxisGiven, view_of
 from atlas.points.jobs import TILE_SET_OPTIONS, PointsTileSet, caption, name_of, options_of, settings_of
 from atlas.points.opening import table_of
 from atlas.points.record import Binned, binned, points_config
 from atlas.points.spool import Spool
 from atlas.points.tables import ROWS_PER_CHUNK
-from atlas.reading.place import Place
+from atlas.reading.place import REQUEST, Place
 from atlas.reading.view_kinds import Levels
 from tiles.index import Index
 

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from pathlib import Path
 from typing import Any
 
 from atlas import errors
@@ -58,6 +60,15 @@ class Place:
 
 
 COMMAND_LINE = Place(option=True)
+REQUEST = Place()
+"""A call from Python, whose refusals name the keyword."""
+
+
+def path_of(given: Any, place: Place) -> Path:
+    """Return what was given as a path, refused when it is none."""
+    if isinstance(given, str | os.PathLike):
+        return Path(given)
+    raise place.refusal(f"{shown(given)} is no path; write a text such as 'fishery.yaml' or a Path")
 
 
 def brief(text: str) -> str:

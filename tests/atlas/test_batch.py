@@ -7,6 +7,7 @@ import json
 import os
 import shutil
 import subprocess
+import sys
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
@@ -316,3 +317,20 @@ def test_what_is_not_drawn_is_said(tmp_path: Path) -> None:
     assert "lie below the window" in outcomes["aside"][0]
     assert "start exactly on a repelling cycle" in outcomes["extinct"][0]
     assert "counts a cell" in outcomes["deep"][0]
+
+
+def test_a_step_without_a_derivative_is_refused_with_its_place(tmp_path: Path) -> None:
+    bad = {"state": {"x": {"start": 0.3}}, "parameters": {"r": {"default": 1}}, "step": {"x": "r / (x - x)"}}
+    plate = {"family": "bad", "across": ["r", 1, 2], "up": ["x", 0, 1], "size": "300x200px"}
+    given = config(families={"bad": bad}, plates={"bad": plate}, tile_sets={}, figures={})
+    object.__setattr__(given, "path", Path("small.yaml"))
+    for call in (lambda: render(tmp_path / "out", given), lambda: atlas.needs(given)):
+        with pytest.raises(Refusal, match=r"^small\.yaml: families\.bad\.step: the formula divides by"):
+            call()
+    assert not (tmp_path / "out").exists()
+
+
+def test_a_render_that_skips_everything_reads_no_derivative(out: Path) -> None:
+    script = f"import atlas, sys\natlas.render({str(SMALL)!r}, {str(out)!r})\nprint('sympy' in sys.modules)"
+    ran = subprocess.run([sys.executable, "-c", script], capture_output=True, text=True, check=True)
+    assert ran.stdout == "False\n"

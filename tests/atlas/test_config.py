@@ -15,7 +15,7 @@ from atlas.config.load import Config, load, normalised, parse_config, plate_from
 from atlas.errors import ConfigRefused
 from atlas.figure.layout import layout
 from atlas.figure.panels import request_of
-from atlas.reading.place import Place
+from atlas.reading.place import COMMAND_LINE
 from atlas.reading.sheet import Size
 from atlas.reading.view_kinds import Levels
 from atlas.reading.yaml_text import LARGEST_FILE, read_yaml
@@ -279,12 +279,12 @@ class TestParts:
     def test_refusals_name_the_option(self, change: dict[str, Any], words: str):
         parts: dict[str, Any] = {"family": "logistic", "across": ("r", "2.8", 4), "up": ("x", 0, 1)}
         with pytest.raises(ConfigRefused) as caught:
-            plate_from_parts(**(parts | change))
+            plate_from_parts(**(parts | change), place=COMMAND_LINE)
         assert str(caught.value).startswith(words)
 
     def test_from_python_the_key_is_named(self):
         with pytest.raises(ConfigRefused, match=r"^across: axis 'r'"):
-            plate_from_parts("logistic", ("r", 4, 1), ("x", 0, 1), place=Place())
+            plate_from_parts("logistic", ("r", 4, 1), ("x", 0, 1))
 
 
 HOSTILE = st.one_of(

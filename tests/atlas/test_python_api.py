@@ -59,19 +59,39 @@ def _record(folder: Path) -> Any:
     return atlas.read_certificate(folder / "a.png")
 
 
+POINTS = {"dose": [0.5, 1.5, 1.5], "response": [0.2, 0.2, 0.9]}
+AXES: tuple[Any, Any] = ("dose", 0, 2), ("response", 0, 1)
+
+
+def _tiled(folder: Path) -> Any:
+    return atlas.tile_points(POINTS, *AXES, folder, name="tiled", levels=1)
+
+
+def _rebuilt(folder: Path) -> bytes:
+    _tiled(folder)
+    atlas.rebuild_site(str(folder / "tiled/index.sqlite"), str(folder / "again"), palette="grey")
+    return (folder / "again/index.html").read_bytes()
+
+
 CALLS: dict[str, Callable[[Path], Any]] = {
     "Axis": lambda folder: atlas.Axis.make(("r", 0, "1/3")),
     "View": lambda folder: atlas.View(across=("r", "2.8", "4"), up=("x", 0, 1)),
     "bin_points": _points,
     "draw_axes": lambda folder: atlas.draw_axes(_axes(), logistic()).get_array().tolist(),
     "draw_plate": lambda folder: atlas.draw_plate(_plate(folder), [folder / "a.png"]),
+    "draw_points": lambda folder: atlas.draw_points(POINTS, *AXES, [folder / "a.png"], name="points"),
     "family": lambda folder: atlas.family("ricker"),
+    "family_names": lambda folder: atlas.family_names,
     "load": lambda folder: atlas.load(SMALL),
+    "needs": lambda folder: [record.name for record, _ in atlas.needs(SMALL)],
     "orbit_counts": lambda folder: logistic(),
     "parse_config": lambda folder: atlas.parse_config(SMALL.read_bytes()),
     "plate": _plate,
     "read_certificate": _record,
+    "rebuild_site": _rebuilt,
     "render": lambda folder: [one.name for one in atlas.render(config(), folder, only=["rise"])],
+    "schema": lambda folder: atlas.schema(),
+    "tile_points": _tiled,
 }
 
 
@@ -361,3 +381,37 @@ def test_a_config_holds_families_plates_tile_sets_and_figures() -> None:
     assert list(found.tile_sets) == ["tiles"]
     assert list(found.figures) == ["both"]
     assert found.plates["rise"].view == VIEW
+
+
+# Calls instead of commands
+
+
+def test_a_path_is_rendered_as_the_config_it_names(tmp_path: Path) -> None:
+    (made,) = atlas.render(str(SMALL), str(tmp_path), only=["rise"])
+    assert (made.name, made.status) == ("rise", "made")
+
+
+NO_ARGUMENT: list[tuple[Callable[[], Any], str]] = [
+    (lambda: atlas.load(3), "path: '3' is no path"),  # type: ignore[arg-type]
+    (lambda: atlas.render(3), "config: '3' is no config"),  # type: ignore[arg-type]
+    (lambda: atlas.render(SMALL, 5), "out: '5' is no path"),  # type: ignore[arg-type]
+    (lambda: atlas.render("nowhere.yaml"), "nowhere.yaml: there is no such file"),
+    (lambda: atlas.orbit_counts(atlas.family("tent"), (("r", 1, 2), ("x", 0, 1)), **QUICK), "view: a list"),  # type: ignore[arg-type]
+    (lambda: atlas.bin_points({"a": [1]}, ("a",), size=(2, 2)), "view: a list is no view"),  # type: ignore[arg-type]
+    (lambda: atlas.plate("logistic", ("r", 4, 1), ("x", 0, 1)), "across: axis 'r'"),
+    (lambda: atlas.rebuild_site("a.sqlite", "site", palette="gray"), "palette: 'gray'"),
+    (lambda: atlas.rebuild_site(3, "site"), "index: '3' is no path"),  # type: ignore[arg-type]
+]
+
+
+@pytest.mark.parametrize(("call", "sentence"), NO_ARGUMENT)
+def test_a_wrong_argument_gets_one_sentence(call: Callable[[], Any], sentence: str) -> None:
+    with pytest.raises(Refusal) as caught:
+        call()
+    assert str(caught.value).startswith(sentence)
+
+
+def test_a_zoom_beyond_float64_says_why_and_what_to_do() -> None:
+    view = atlas.View(across=("r", "3.9", "3.900000000001"), up=("x", 0, 1))
+    with pytest.raises(Refusal, match=r"rounding in the map grows to a cell.*use fewer rows, or make it at"):
+        atlas.orbit_counts(atlas.family("logistic"), view, size=(4, 4000))
