@@ -15,11 +15,13 @@ from PIL import Image
 import atlas
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.config.load import Config, load, parse_config
+from atlas.config.schema import key_rows
 from atlas.figure.layout import layout
 from atlas.figure.panels import request_of
 from atlas.output.certificate_reader import read
 from atlas.reading.sheet import Size
 from atlas.reading.view_kinds import Levels
+from tiles.palette import PALETTES
 
 ROOT = Path(__file__).parents[2]
 CONFIGS = sorted((ROOT / "configs").glob("*.yaml"))
@@ -103,3 +105,12 @@ def test_readme_has_configs() -> None:
 @pytest.mark.parametrize("block", BLOCKS, ids=lambda block: block.split(":")[0])
 def test_a_config_of_the_readme_is_accepted(block: str) -> None:
     assert parse_config(block, "README.md").outputs()
+
+
+def test_the_readme_lists_every_key_with_its_default_and_every_palette() -> None:
+    for row in key_rows():
+        assert re.search(
+            rf"^\| .*{row.section.replace('_', ' ')}.* \| `{row.name}` \| {row.default} \|", README, re.M
+        ), row
+    for name in PALETTES:
+        assert f"`{name}`" in README
