@@ -47,15 +47,16 @@ def run() -> None:
     report("two threads against one, counting", "1.8 x", f"{counting[1] / counting[2]:.2f} x")
 
 
-def _count(sheet: Sheet, workers: int) -> Histogram:
-    view = sheet.views[0]
-    with schedule(workers) as opened:
-        return count_histogram(resolved(view.plate, view.counter(), opened), opened)
-
-
 def _counting(sheet: Sheet) -> dict[int, float]:
-    _count(sheet, 2)
-    times = best_times({"1": lambda: _count(sheet, 1), "2": lambda: _count(sheet, 2)}, 6)
+    view = sheet.views[0]
+    counter = resolved(view.plate, view.counter())
+
+    def count(workers: int) -> Histogram:
+        with schedule(workers) as opened:
+            return count_histogram(counter, opened)
+
+    count(2)
+    times = best_times({"1": lambda: count(1), "2": lambda: count(2)}, 6)
     return {1: times["1"], 2: times["2"]}
 
 
