@@ -11,7 +11,6 @@ import numpy as np
 from PIL import Image
 
 from atlas.config.load import plate_from_parts
-from atlas.orbits.counting import resolved
 from atlas.orbits.histogram import Histogram, count_histogram
 from atlas.orbits.schedule import schedule
 from atlas.output.printing import Sheet, make_sheet, sheet_of
@@ -49,7 +48,7 @@ def run() -> None:
 
 def _counting(sheet: Sheet) -> dict[int, float]:
     view = sheet.views[0]
-    counter = resolved(view.plate, view.counter())
+    counter = view.counter()
 
     def count(workers: int) -> Histogram:
         with schedule(workers) as opened:
