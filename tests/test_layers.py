@@ -30,7 +30,7 @@ TABLE = """
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
 12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger
-13  atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation atlas.formula.symbolic
+13  atlas.formula.algebra atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation atlas.formula.symbolic
 13  atlas.arithmetic.float64 atlas.reading.kinds atlas.reading.yaml_text atlas.reading.sheet
 13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader atlas.points.tables
 14  atlas.formula.differentiation atlas.reading.section atlas.figure.boxes

@@ -4,11 +4,10 @@ from __future__ import annotations
 
 from typing import Any
 
+from atlas.formula.algebra import ONE, ZERO, difference, negative, product
 from atlas.formula.symbolic import from_sympy, gathered, symbol, to_sympy
 from atlas.formula.tree import Binary, Call, Compare, Name, Node, Number, Unary, free_names, whole
 
-ZERO: Node = whole(0)
-ONE: Node = whole(1)
 _SMOOTH = ("exp", "log", "sqrt", "sin", "cos", "tan", "tanh")
 _PLAIN = 1000
 
@@ -98,19 +97,17 @@ def _of_branches(node: Call, name: str) -> Node:
         case "where":
             return _where(args[0], derivative(args[1], name), derivative(args[2], name))
         case "abs":
-            slope = Call("where", (Compare("<", args[0], ZERO), _negative(ONE), ONE))
-            return _product(slope, derivative(args[0], name))
+            slope = Call("where", (Compare("<", args[0], ZERO), negative(ONE), ONE))
+            return product(slope, derivative(args[0], name))
         case "min" | "max":
             return _of_extreme(node, name)
         case "mod":
             rate, modulus = derivative(args[0], name), derivative(args[1], name)
             held = Call("floor", (Binary("/", args[0], args[1]),))
-            return _difference(rate, _product(held, modulus))
+            return difference(rate, product(held, modulus))
         case "atan2":
             up, across = args
-            turning = _difference(
-                _product(across, derivative(up, name)), _product(up, derivative(across, name))
-            )
+            turning = difference(product(across, derivative(up, name)), product(up, derivative(across, name)))
             radius = Binary("+", Binary("**", across, whole(2)), Binary("**", up, whole(2)))
             return ZERO if turning == ZERO else Binary("/", turning, radius)
         case _:
@@ -129,23 +126,3 @@ def _of_extreme(node: Call, name: str) -> Node:
 
 def _where(condition: Node, a: Node, b: Node) -> Node:
     return a if a == b else Call("where", (condition, a, b))
-
-
-def _negative(node: Node) -> Node:
-    if node == ZERO:
-        return node
-    return node.a if isinstance(node, Unary) and node.op == "-" else Unary("-", node)
-
-
-def _product(a: Node, b: Node) -> Node:
-    if ZERO in (a, b):
-        return ZERO
-    if a == ONE:
-        return b
-    return a if b == ONE else Binary("*", a, b)
-
-
-def _difference(a: Node, b: Node) -> Node:
-    if b == ZERO:
-        return a
-    return _negative(b) if a == ZERO else Binary("-", a, b)
