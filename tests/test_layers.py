@@ -26,6 +26,7 @@ TABLE = """
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
 10  atlas.output atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
+10  atlas.config.draws
 12  atlas.orbits.block atlas.output.remarks
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
@@ -33,18 +34,21 @@ TABLE = """
 13  atlas.formula.algebra atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation atlas.formula.symbolic
 13  atlas.arithmetic.float64 atlas.reading.kinds atlas.reading.yaml_text atlas.reading.sheet
 13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader atlas.points.tables
-14  atlas.formula.differentiation atlas.reading.section atlas.figure.boxes
+14  atlas.formula.differentiation atlas.orbits.volumes atlas.reading.section atlas.figure.boxes
 14  atlas.points.files atlas.points.cells
 15  atlas.formula.expression atlas.reading.view_kinds atlas.figure.pieces atlas.figure.vector_files
-15  atlas.points.opening
-16  atlas.families.kinds atlas.families.map_family atlas.reading.sheet_kinds atlas.figure.painting
-16  atlas.points.intervals
-17  atlas.families.keys atlas.config.keys atlas.figure.raster_files atlas.figure.typeset
+15  atlas.points.opening atlas.reading.orbit_kinds
+16  atlas.families.kinds atlas.families.records atlas.families.patterns atlas.families.wrapping
+16  atlas.reading.sheet_kinds atlas.figure.painting
+16  atlas.points.intervals atlas.reading.start_kinds
+17  atlas.families.keys atlas.families.map_family atlas.families.checks
+17  atlas.config.keys atlas.figure.raster_files atlas.figure.typeset
 18  atlas.families.reader atlas.config.names
-19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.schema
+19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.view_kind
+19  atlas.config.schema
 20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
 21  atlas.points.jobs
-21  atlas.orbits.kernel_source atlas.config.load atlas.output.certificate atlas.figure.margins
+21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate atlas.figure.margins
 21  atlas.figure.insets
 22  atlas.orbits.orbit atlas.config.remake atlas.figure.layout atlas.figure.drawing
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate

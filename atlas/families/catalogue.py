@@ -152,6 +152,20 @@ ROWS: Mapping[str, Mapping[str, Any]] = {
         "note": "Conjugate to the logistic map by c = r (2 - r) / 4. The start 0 is mapped onto the "
         "repelling fixed point 2 at c = -2.",
     },
+    "forced_logistic": {
+        "title": "Forced logistic map",
+        "state": {"x": {"start": "0.5", "label": "scaled population", "domain": ["0", "1"]}},
+        "parameters": {
+            "a": {"default": "3.4", "label": "growth rate in the steps of a"},
+            "b": {"default": "3.9", "label": "growth rate in the steps of b"},
+            "r": {"pattern": ["a", "b"], "label": "growth rate"},
+        },
+        "step": {"x": "r * x * (1 - x)"},
+        "across": ["a", "2", "4"],
+        "up": ["b", "2", "4"],
+        "source": "M. Markus and B. Hess 1989, Comput. Graph. 13, 553-558 (citation from memory)",
+        "note": "Where two attractors coexist the picture depends on the phase of the pattern.",
+    },
 }
 
 NAMES: tuple[str, ...] = tuple(ROWS)

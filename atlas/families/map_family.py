@@ -3,56 +3,17 @@
 from __future__ import annotations
 
 import json
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 from hashlib import blake2b
+from math import lcm
 from typing import Any
 
+from atlas.families.records import Observable, Parameter, Pattern, State
+from atlas.families.wrapping import wrapped
 from atlas.formula.expression import Node, derivative, substitute, unparse
 from tiles.number import Exact
 from tiles.window import Axis
-
-
-@dataclass(frozen=True)
-class State:
-    """A state variable.
-
-    Attributes
-    ----------
-    name : str
-        As formulas write it.
-    start : Exact
-        Where orbits start unless told otherwise.
-    label, unit : str
-        What figures print beside the symbol; empty when there is nothing to say.
-    domain : pair of Exact, optional
-        The closed interval in which the variable means something.
-    """
-
-    name: str
-    start: Exact
-    label: str = ""
-    unit: str = ""
-    domain: tuple[Exact, Exact] | None = None
-
-
-@dataclass(frozen=True)
-class Parameter:
-    """A parameter.
-
-    Attributes
-    ----------
-    name : str
-        As formulas write it.
-    default : Exact
-        The value it has unless told otherwise.
-    label, unit : str
-        What figures print beside the symbol; empty when there is nothing to say.
-    """
-
-    name: str
-    default: Exact
-    label: str = ""
-    unit: str = ""
 
 
 @dataclass(frozen=True)
@@ -66,13 +27,19 @@ class Family:
     states : tuple of State
         One to three state variables, by name.
     parameters : tuple of Parameter
-        By name.
+        Those with one value for all time, by name.
     helpers : tuple of (str, Node)
         Named expressions, each after those that it uses.
     step : tuple of Node
         The next value of each state variable, in the order of ``states``.
     escape : Exact
         Positive; an orbit has escaped when a state variable is not below it in size.
+    patterns : tuple of Pattern
+        Parameters that follow a repeating list in time, by name.
+    observables : tuple of Observable
+        By name.
+    extinct : tuple of (str, Exact)
+        State variables, by name, with the positive size below which each counts as extinct.
     source, note : str
         Where the family comes from, and what to beware of.
     across, up : Axis, optional
@@ -92,6 +59,9 @@ class Family:
     helpers: tuple[tuple[str, Node], ...]
     step: tuple[Node, ...]
     escape: Exact
+    patterns: tuple[Pattern, ...] = ()
+    observables: tuple[Observable, ...] = ()
+    extinct: tuple[tuple[str, Exact], ...] = ()
     source: str = ""
     note: str = ""
     across: Axis | None = None
@@ -104,28 +74,107 @@ class Family:
 
     @property
     def parameter_names(self) -> tuple[str, ...]:
-        """The names of the parameters."""
+        """The names of the plain parameters."""
         return tuple(parameter.name for parameter in self.parameters)
 
+    @property
+    def pattern_names(self) -> tuple[str, ...]:
+        """The names of the parameters that follow a pattern."""
+        return tuple(pattern.name for pattern in self.patterns)
+
+    @property
+    def observable_names(self) -> tuple[str, ...]:
+        """The names of the observables."""
+        return tuple(observable.name for observable in self.observables)
+
     def label_and_unit(self, name: str) -> tuple[str, str]:
-        """Return what figures print beside the symbol of a state variable or parameter."""
-        for state in self.states:
-            if state.name == name:
-                return state.label, state.unit
-        for parameter in self.parameters:
-            if parameter.name == name:
-                return parameter.label, parameter.unit
+        """Return what figures print beside a symbol; two empty texts for a name that the family lacks."""
+        for named in (*self.states, *self.parameters, *self.patterns, *self.observables):
+            if named.name == name:
+                return named.label, named.unit
         return "", ""
 
+    def word(self) -> tuple[dict[str, str | Exact], ...]:
+        """Return what every pattern is at each time, over the combined length of all patterns.
+
+        Returns
+        -------
+        tuple of dict
+            Entry n holds in the step from x(n) to x(n + 1), and again after as many steps as there are
+            entries: the least common multiple of the patterns' lengths, not more than
+            :data:`atlas.families.patterns.LONGEST_WORD`. One empty entry without patterns.
+
+        Examples
+        --------
+        >>> from atlas.families.catalogue import family
+        >>> family("forced_logistic").word()
+        ({'r': 'a'}, {'r': 'b'})
+        """
+        length = lcm(*(len(pattern.entries) for pattern in self.patterns))
+        return tuple(
+            {pattern.name: pattern.entries[time % len(pattern.entries)] for pattern in self.patterns}
+            for time in range(length)
+        )
+
+    def with_patterns(self, given: Mapping[str, Sequence[str | Exact]]) -> Family:
+        """Return the family with other entries of some patterns.
+
+        Parameters
+        ----------
+        given : mapping of str to sequence
+            Entries by the name of their pattern, checked by
+            :func:`atlas.families.patterns.check_patterns`.
+
+        Returns
+        -------
+        Family
+
+        Raises
+        ------
+        KeyError
+            When the family has no such pattern.
+        """
+        if unknown := sorted(set(given) - set(self.pattern_names)):
+            raise KeyError(unknown[0])
+        patterns = tuple(
+            replace(pattern, entries=tuple(given.get(pattern.name, pattern.entries)))
+            for pattern in self.patterns
+        )
+        return replace(self, patterns=patterns)
+
     def inlined_step(self) -> tuple[Node, ...]:
-        """Return the step formulas with every helper written out."""
+        """Return the step formulas with every helper written out and no periodic variable brought back."""
+        written = self._written_helpers()
+        return tuple(substitute(node, written) for node in self.step)
+
+    def wrapped_step(self) -> tuple[Node, ...]:
+        """Return the step formulas with helpers written out and periodic variables brought back.
+
+        A periodic variable of the interval [low, high) becomes ``low + mod(f - low, high - low)``. In
+        float64 a value just below ``low`` can be rounded onto ``high``.
+        """
+        steps = zip(self.inlined_step(), self.states, strict=True)
+        return tuple(wrapped(node, state.wrap) if state.wrap else node for node, state in steps)
+
+    def inlined_observable(self, name: str) -> Node:
+        """Return the formula of an observable with every helper written out.
+
+        Raises
+        ------
+        KeyError
+            When the family has no such observable.
+        """
+        nodes = {observable.name: observable.node for observable in self.observables}
+        return substitute(nodes[name], self._written_helpers())
+
+    def _written_helpers(self) -> dict[str, Node]:
         written: dict[str, Node] = {}
         for name, node in self.helpers:
             written[name] = substitute(node, written)
-        return tuple(substitute(node, written) for node in self.step)
+        return written
 
     def jacobian(self) -> tuple[tuple[Node, ...], ...]:
-        """Return the exact derivative of the step, helpers written out.
+        """Return the exact derivative of the step, helpers written out; wrapping changes none of it.
 
         Returns
         -------
@@ -155,11 +204,14 @@ class Family:
         steps = zip(self.state_names, self.step, strict=True)
         config: dict[str, Any] = {
             "title": self.title,
-            "state": {state.name: _state_config(state) for state in self.states},
-            "parameters": {parameter.name: _parameter_config(parameter) for parameter in self.parameters},
+            "state": {state.name: state.as_config() for state in self.states},
+            "parameters": {one.name: one.as_config() for one in self.parameters}
+            | {one.name: one.as_config() for one in self.patterns},
             "helpers": {name: unparse(node) for name, node in self.helpers},
             "step": {name: unparse(node) for name, node in steps},
+            "observables": {one.name: one.as_config() for one in self.observables},
             "escape": str(self.escape),
+            "extinct": {name: str(threshold) for name, threshold in self.extinct},
             "source": self.source,
             "note": self.note,
             "across": _axis_config(self.across),
@@ -171,17 +223,6 @@ class Family:
         """Return 32 hexadecimal digits that tell two families apart, their names left aside."""
         text = json.dumps(self.as_config(), sort_keys=True, ensure_ascii=True, separators=(",", ":"))
         return blake2b(text.encode("ascii"), digest_size=16).hexdigest()
-
-
-def _state_config(state: State) -> dict[str, Any]:
-    domain = [str(end) for end in state.domain] if state.domain else None
-    entry = {"label": state.label, "unit": state.unit, "start": str(state.start), "domain": domain}
-    return {key: value for key, value in entry.items() if value}
-
-
-def _parameter_config(parameter: Parameter) -> dict[str, Any]:
-    entry = {"default": str(parameter.default), "label": parameter.label, "unit": parameter.unit}
-    return {key: value for key, value in entry.items() if value}
 
 
 def _axis_config(axis: Axis | None) -> Any:

@@ -2,35 +2,31 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Collection, Mapping
 from typing import Any
 
 from atlas.errors import FormulaRefused
-from atlas.families.keys import FAMILY_KEYS
-from atlas.families.map_family import Family, Parameter, State
-from atlas.formula.expression import (
-    IDENTIFIER,
-    Node,
-    Size,
-    check_powers,
-    free_names,
-    is_identifier,
-    parse,
-    size,
+from atlas.families.checks import (
+    OUTPUT_NAMES,
+    check_extinct,
+    check_name,
+    check_names,
+    check_states,
+    check_view,
 )
+from atlas.families.keys import FAMILY_KEYS
+from atlas.families.map_family import Family
+from atlas.families.patterns import check_patterns
+from atlas.families.records import Observable, Parameter, Pattern, State
+from atlas.formula.expression import Node, Size, check_powers, free_names, parse, size
 from atlas.reading.place import Place, shown
 from atlas.reading.section import read_section
 from tiles.errors import nearest
 
-__all__ = ["Family", "Parameter", "State", "family_from_config"]
+__all__ = ["OUTPUT_NAMES", "Family", "Observable", "Parameter", "Pattern", "State", "family_from_config"]
 
 MOST_NODES = 1000
 DEEPEST = 120
-OUTPUT_NAMES = frozenset(
-    {"counts", "density", "exposure", "below", "above", "escaped", "unsettled", "collapsed", "fate", "period"}
-)
-"""Variables of the datasets whose dimensions carry the names of state variables and parameters."""
 
 
 def family_from_config(name: str, mapping: Mapping[str, Any], *, where: str = "") -> Family:
@@ -68,20 +64,25 @@ def family_from_config(name: str, mapping: Mapping[str, Any], *, where: str = ""
     ['x -> x / 2']
     """
     place = _place(where)
-    _check_name(name, place, "a family")
+    check_name(name, place, "a family")
     values = read_section(FAMILY_KEYS, mapping, place)
-    _check_names(values, place)
+    check_names(values, place)
     states = tuple(State(key, **entry) for key, entry in values["state"].items())
-    parameters = tuple(Parameter(key, **entry) for key, entry in values["parameters"].items())
-    _check_starts(states, values["escape"], place)
-    _check_view(values, place)
+    check_states(states, values["escape"], place.at("state"))
+    check_extinct(values, place.at("extinct"))
+    check_view(values, place)
+    parameters, patterns = _parameters(values, place.at("parameters"))
+    helpers = _helpers(values, place.at("helpers"))
     family = Family(
         name=name,
         title=values["title"] or name.replace("_", " "),
         states=states,
         parameters=parameters,
-        helpers=_helpers(values, place.at("helpers")),
+        helpers=helpers,
         step=_steps(values, place.at("step")),
+        patterns=patterns,
+        observables=_observables(values, helpers, place.at("observables")),
+        extinct=tuple(values["extinct"].items()),
         **{key: values[key] for key in ("escape", "source", "note", "across", "up")},
     )
     _check_written_out(family, place)
@@ -93,56 +94,13 @@ def _place(where: str) -> Place:
     return Place(file, (path,) if path else ())
 
 
-def _check_names(values: Mapping[str, Any], place: Place) -> None:
-    sections = {"state": "a state variable", "parameters": "a parameter", "helpers": "a helper"}
-    seen: dict[str, str] = {}
-    for section, what in sections.items():
-        for name in values[section]:
-            spot = place.at(section)
-            _check_name(name, spot, what)
-            if not is_identifier(name):
-                raise spot.refusal(f"{shown(name)} belongs to the formula language; name {what} otherwise")
-            if section != "helpers" and name in OUTPUT_NAMES:
-                raise spot.refusal(
-                    f"{shown(name)} is a variable of the results; name {what} otherwise and label it so"
-                )
-            if name in seen:
-                raise spot.refusal(f"{shown(name)} is {seen[name]} already; every name stands for one thing")
-            seen[name] = what
-
-
-def _check_name(name: Any, place: Place, what: str) -> None:
-    if not isinstance(name, str) or not re.fullmatch(IDENTIFIER, name):
-        raise place.refusal(
-            f"{shown(name)} cannot name {what}; write a letter, then letters, digits and underscores, "
-            "at most 40 in all"
-        )
-
-
-def _check_starts(states: Collection[State], escape: Any, place: Place) -> None:
-    for state in states:
-        spot = place.at("state").at(state.name).at("start")
-        if abs(float(state.start)) >= float(escape):
-            raise spot.refusal(f"{state.start} is not below the escape bound {escape} in size")
-        if state.domain and not state.domain[0] <= state.start <= state.domain[1]:
-            low, high = state.domain
-            raise spot.refusal(f"{state.start} lies outside the domain from {low} to {high}")
-
-
-def _check_view(values: Mapping[str, Any], place: Place) -> None:
-    axes = {key: values[key] for key in ("across", "up") if values[key] is not None}
-    known = [*values["parameters"], *values["state"]]
-    for key, axis in axes.items():
-        if axis.name not in known:
-            hint = nearest(axis.name, known)
-            raise place.at(key).refusal(
-                f"{shown(axis.name)} is neither a parameter nor a state variable{hint}"
-            )
-    if len({axis.name for axis in axes.values()}) != len(axes):
-        raise place.at("up").refusal(f"{shown(axes['up'].name)} stands on both axes; name two different ones")
-    if len(axes) == 1:
-        given, missing = sorted(("across", "up"), key=lambda key: key not in axes)
-        raise place.refusal(f"'{given}' is given without '{missing}'; a default view needs both")
+def _parameters(values: Mapping[str, Any], place: Place) -> tuple[tuple[Parameter, ...], tuple[Pattern, ...]]:
+    entries = {name: dict(entry) for name, entry in values["parameters"].items()}
+    plain = {name: entry for name, entry in entries.items() if "default" in entry}
+    lists = {name: entry.pop("pattern") for name, entry in entries.items() if name not in plain}
+    check_patterns(lists, plain, place)
+    parameters = tuple(Parameter(name, **entry) for name, entry in plain.items())
+    return parameters, tuple(Pattern(name, lists[name], **entries[name]) for name in lists)
 
 
 def _helpers(values: Mapping[str, Any], place: Place) -> tuple[tuple[str, Node], ...]:
@@ -184,17 +142,42 @@ def _steps(values: Mapping[str, Any], place: Place) -> tuple[Node, ...]:
     return tuple(parse(given[name], names, where=str(place.at(name))) for name in states)
 
 
+def _observables(
+    values: Mapping[str, Any], helpers: Collection[tuple[str, Node]], place: Place
+) -> tuple[Observable, ...]:
+    changing = {name for name, entry in values["parameters"].items() if "pattern" in entry}
+    names = {*values["state"], *values["parameters"], *values["helpers"]}
+    for name, node in helpers:
+        if free_names(node) & changing:
+            changing.add(name)
+    found = []
+    for name, entry in values["observables"].items():
+        node = parse(entry["formula"], names, where=str(place.at(name)))
+        if used := sorted(free_names(node) & changing):
+            raise place.at(name).refusal(
+                f"{shown(used[0])} follows a pattern in time; an observable is a formula of the state and of "
+                "parameters with a default"
+            )
+        found.append(Observable(name, node, entry["label"], entry["unit"]))
+    return tuple(found)
+
+
 def _check_written_out(family: Family, place: Place) -> None:
     sizes: dict[str, Size] = {}
     for name, node in family.helpers:
         sizes[name] = _checked_size(node, sizes, place.at("helpers").at(name))
-    for name, node in zip(family.state_names, family.step, strict=True):
-        _checked_size(node, sizes, place.at("step").at(name))
-    for name, node in zip(family.state_names, family.inlined_step(), strict=True):
+    steps = {
+        place.at("step").at(name): node for name, node in zip(family.state_names, family.step, strict=True)
+    }
+    observed = {place.at("observables").at(one.name): one.node for one in family.observables}
+    for spot, node in [*steps.items(), *observed.items()]:
+        _checked_size(node, sizes, spot)
+    written = [*family.inlined_step(), *map(family.inlined_observable, family.observable_names)]
+    for spot, node in zip([*steps, *observed], written, strict=True):
         try:
             check_powers(node)
         except FormulaRefused as problem:
-            raise FormulaRefused(f"{place.at('step').at(name)}: {problem}") from None
+            raise FormulaRefused(f"{spot}: {problem}") from None
 
 
 def _checked_size(node: Node, sizes: Mapping[str, Size], place: Place) -> Size:
