@@ -42,10 +42,11 @@ TABLE = """
 16  atlas.reading.sheet_kinds atlas.figure.painting
 16  atlas.points.intervals atlas.reading.start_kinds
 17  atlas.families.keys atlas.families.map_family atlas.families.checks
-17  atlas.config.keys atlas.figure.raster_files atlas.figure.typeset
-18  atlas.families.reader atlas.config.names
+17  atlas.config.settings atlas.figure.raster_files atlas.figure.typeset
+18  atlas.families.reader atlas.config.keys
 19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.view_kind
-19  atlas.config.schema
+19  atlas.config.names
+20  atlas.config.schema
 20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
 21  atlas.points.jobs
 21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate atlas.figure.margins

@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Collection, Mapping
 from dataclasses import replace
 from typing import Any
 
+from atlas.config.draws import KINDS, PLANES, kind_of_view
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.config.keys import FIGURE_KEYS, PLATE_KEYS, TILE_SET_KEYS
 from atlas.config.names import checked_name
-from atlas.config.view_rules import checked_set, checked_starts, drawn_view
+from atlas.config.view_kind import checked_draw, checked_palette, drawn_view
+from atlas.config.view_rules import checked_extinct, checked_set, checked_starts, with_patterns
 from atlas.families.reader import Family
 from atlas.reading.place import Place, shown
-from atlas.reading.section import read_section
+from atlas.reading.section import Key, read_section
 from atlas.reading.sheet import Inset
 from atlas.reading.view_kinds import Levels, Pairs
 from tiles.errors import nearest
@@ -46,8 +48,7 @@ def read_plate(
     """
     checked_name(name, place)
     values = read_section(PLATE_KEYS, given, place, defaults)
-    limit_given = "transient_limit" in given or "transient_limit" in (defaults or {})
-    job = _job(values, place, family_of, limit_given)
+    job = _job(PLATE_KEYS, values, given, place, family_of, defaults or {})
     if job["inset"] is not None:
         job["inset"] = _fitted(job["inset"], job["view"], place.at("inset"))
     return Plate(name=name, **job)
@@ -59,8 +60,7 @@ def read_tile_set(
     """Read one tile set; parameters and refusals are those of :func:`read_plate`."""
     checked_name(name, place)
     values = read_section(TILE_SET_KEYS, given, place, defaults)
-    limit_given = "transient_limit" in given or "transient_limit" in (defaults or {})
-    job = _job(values, place, family_of, limit_given)
+    job = _job(TILE_SET_KEYS, values, given, place, family_of, defaults or {})
     _check_pairs(job["pairs"], job["levels"], place.at("pairs"))
     return TileSet(name=name, **job)
 
@@ -87,22 +87,79 @@ def read_figure(
     return figure
 
 
-def _job(values: dict[str, Any], place: Place, family_of: FamilyOf, limit_given: bool) -> dict[str, Any]:
+def _job(
+    keys: tuple[Key[Any], ...],
+    values: dict[str, Any],
+    given: Mapping[str, Any],
+    place: Place,
+    family_of: FamilyOf,
+    defaults: Mapping[str, Any],
+) -> dict[str, Any]:
     job = dict(values)
-    family = family_of(job["family"], place.at("family"))
+    family = with_patterns(family_of(job["family"], place.at("family")), job["set"], place.at("set"))
     view = drawn_view(family, job.pop("across"), job.pop("up"), place)
-    if job["transient_limit"] < job["transient"]:
-        if limit_given:
-            raise place.at("transient_limit").refusal(
-                f"the limit {job['transient_limit']} is below the transient {job['transient']}; raise it"
-            )
-        job["transient_limit"] = job["transient"]
+    draw = checked_draw(family, view, job["draw"], place.at("draw"))
+    kind = kind_of_view(draw, view.across.name in family.parameter_names, job["follow"])
+    job = _of_its_kind(keys, job, given, kind, place)
+    limit_given = "transient_limit" in given or "transient_limit" in defaults
+    job["transient_limit"] = _limit(job, limit_given, place.at("transient_limit"))
+    if job["extinct"] is None:
+        job["extinct"] = dict(family.extinct) if kind in PLANES else {}
+    starts = checked_starts(family, job["starts"], place.at("starts"))
+    if kind == "basin" and len(starts) > 1:
+        raise place.at("starts").refusal(
+            f"{len(starts)} starts are given and a basin chart starts from each of its cells; "
+            "give one, for the state variables on no axis"
+        )
     return job | {
         "family": family,
         "view": view,
+        "draw": draw,
         "set": checked_set(family, job["set"], view, place.at("set")),
-        "starts": checked_starts(family, job["starts"], place.at("starts")),
+        "starts": starts,
+        "extinct": checked_extinct(family, job["extinct"], place.at("extinct")),
+        "palette": checked_palette(draw, job["palette"], "palette" in given, place.at("palette")),
     }
+
+
+def _of_its_kind(
+    keys: tuple[Key[Any], ...],
+    job: dict[str, Any],
+    given: Collection[str],
+    kind: str,
+    place: Place,
+) -> dict[str, Any]:
+    """Return the values with those that do not belong to the kind of view at their defaults.
+
+    A value given for this very output is refused then, unless it says nothing; a common default is passed
+    over.
+    """
+    job = dict(job)
+    for key in keys:
+        if not key.only_for or kind in key.only_for:
+            continue
+        value = job[key.name]
+        if key.name in given and value != key.default and value not in ({}, None):
+            homes = " and ".join(KINDS[home] for home in key.only_for)
+            raise place.at(key.name).refusal(
+                f"{_value_text(key, value)} belongs to {homes}, and this is {KINDS[kind]}; leave it away"
+            )
+        job[key.name] = key.default
+    return job
+
+
+def _value_text(key: Key[Any], value: Any) -> str:
+    written = key.write(value)
+    if isinstance(written, dict):
+        return "'" + ", ".join(f"{name}: {entry}" for name, entry in written.items()) + "'"
+    return f"'{str(written).lower() if isinstance(written, bool) else written}'"
+
+
+def _limit(job: Mapping[str, Any], given: bool, place: Place) -> int:
+    transient, limit = int(job["transient"]), int(job["transient_limit"])
+    if limit < transient and given:
+        raise place.refusal(f"the limit {limit} is below the transient {transient}; raise it")
+    return max(transient, limit)
 
 
 def _fitted(inset: Inset, view: View, place: Place) -> Inset:

@@ -6,13 +6,14 @@ import json
 from hashlib import blake2b
 from typing import Any
 
+from atlas.config.draws import PLANES
 from atlas.config.jobs import COUNTING_VERSION, Figure, Job, Plate, TileSet
 from atlas.config.keys import FIGURE_KEYS, JOB_KEYS, PLATE_KEYS, TILE_SET_KEYS
-from atlas.families.reader import Family
 from atlas.reading.section import Key
 from tiles.window import Axis
 
-_PRINTED_ONLY = {"name", "title", "source", "note", "across", "up"}
+_PRINTED_ONLY = {"name", "title", "source", "note", "across", "up", "extinct"}
+"""Of a family: what is printed alone, and what the settings of a job repeat."""
 _GIVEN_ELSEWHERE = {"label", "unit", "domain", "start", "default"}
 
 
@@ -68,11 +69,11 @@ def counting_digest(job: Job, columns: int, rows: int, *, samples: int | None = 
     samples : int, optional
         What ``samples: auto`` comes to at this resolution.
     """
-    decisive = {key.name: _value(key, job) for key in JOB_KEYS if key.counts}
+    decisive = {key.name: _value(key, job) for key in JOB_KEYS if key.counts and _belongs(key, job)}
     decisive |= {
         "across": _interval(job.across),
         "up": _interval(job.up),
-        "family": _mathematics(job.family),
+        "family": _mathematics(job),
         "set": {name: str(value) for name, value in job.parameters().items()},
         "resolution": [columns, rows],
         "counting": COUNTING_VERSION,
@@ -92,17 +93,32 @@ def _value(key: Key[Any], record: Job | Figure) -> Any:
     return key.write(getattr(record, key.name))
 
 
+def _belongs(key: Key[Any], job: Job) -> bool:
+    """Return whether a key says anything of a job; so that new keys leave the digests of old jobs alone."""
+    if key.name in ("follow", "record", "by_attractor"):
+        return bool(getattr(job, key.name))
+    if key.name == "draw":
+        return job.kind in PLANES
+    return not key.only_for or job.kind in key.only_for
+
+
 def _interval(axis: Axis) -> list[str]:
     return [axis.name, str(axis.low), str(axis.high), axis.scale]
 
 
-def _mathematics(family: Family) -> dict[str, Any]:
-    config = {key: value for key, value in family.as_config().items() if key not in _PRINTED_ONLY}
+def _mathematics(job: Job) -> dict[str, Any]:
+    config = {key: value for key, value in job.family.as_config().items() if key not in _PRINTED_ONLY}
     for section in ("state", "parameters"):
         config[section] = {
             name: {key: value for key, value in entry.items() if key not in _GIVEN_ELSEWHERE}
             for name, entry in config.get(section, {}).items()
         }
+    axes = (job.across.name, job.up.name)
+    config["observables"] = {
+        name: entry["formula"] if isinstance(entry, dict) else entry
+        for name, entry in config.get("observables", {}).items()
+        if name in axes
+    }
     return config
 
 

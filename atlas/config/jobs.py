@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
 
+from atlas.config.draws import kind_of_view
 from atlas.families.reader import Family
+from atlas.reading.orbit_kinds import Record
 from atlas.reading.sheet import Inset, Size
 from atlas.reading.sheet_kinds import Panels
 from atlas.reading.view_kinds import Levels, Pairs
@@ -17,7 +19,7 @@ COUNTING_VERSION = 1
 
 @dataclass(frozen=True, kw_only=True)
 class Job:
-    """One view of one family, how its orbits are run and how their density is shaded.
+    """One view of one family, how its orbits are run and how the result is coloured.
 
     Attributes
     ----------
@@ -26,7 +28,7 @@ class Job:
     family : Family
         The map.
     view : View
-        A parameter across and a state variable up.
+        A parameter across and a state variable or observable up, two parameters, or two of the latter.
     set : dict of str to Exact
         Parameters given a value, sorted by name.
     starts : tuple of dict of str to Exact
@@ -39,6 +41,18 @@ class Job:
         Parameter values in each column.
     longest_period : int
         Longest cycle looked for.
+    draw : str
+        What is drawn, one of `atlas.config.draws.DRAWS` that the axes allow.
+    follow : "up", "down", "both" or None
+        Whether each column starts where its neighbour ended, and in which direction.
+    record : Record or None
+        Which states are counted; all without it.
+    by_attractor : bool
+        Whether the density is split by attractor.
+    extinct : dict of str to Exact
+        Sizes below which state variables count as extinct, sorted by name; empty but in planes and basins.
+    steps : int
+        Steps looked at after the transient in planes and basins.
     shading, palette : str
         Names out of `tiles.shading.SHADINGS` and `tiles.palette.PALETTES`.
     background, missing : str or None
@@ -57,6 +71,12 @@ class Job:
     samples: int | str
     values_per_column: int
     longest_period: int
+    draw: str = "density"
+    follow: str | None = None
+    record: Record | None = None
+    by_attractor: bool = False
+    extinct: dict[str, Exact] = field(default_factory=dict)
+    steps: int = 2000
     shading: str
     palette: str
     background: str | None
@@ -72,6 +92,11 @@ class Job:
     def up(self) -> Axis:
         """The vertical axis."""
         return self.view.up
+
+    @property
+    def kind(self) -> str:
+        """The kind of view: ``histogram``, ``follow``, ``portrait``, ``plane`` or ``basin``."""
+        return kind_of_view(self.draw, self.across.name in self.family.parameter_names, self.follow)
 
     def parameters(self) -> dict[str, Exact]:
         """Return the value of every parameter that runs along no axis, given or the family's default."""
@@ -101,6 +126,8 @@ class Plate(Job):
         Whether a colour key is drawn.
     letter : str or None
         Panel letter.
+    supersampling : int
+        Points along each side of a pixel of a plane or basin; 1 elsewhere.
     inset : Inset or None
         A magnified part of the window.
     """
@@ -111,6 +138,7 @@ class Plate(Job):
     font_size: float
     key: bool
     letter: str | None
+    supersampling: int = 1
     inset: Inset | None
 
     @property

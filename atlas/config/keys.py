@@ -8,11 +8,15 @@ from __future__ import annotations
 from fractions import Fraction
 from typing import Any
 
+from atlas.config.draws import DENSITIES, DRAWS, FOLLOWED, PLANES
+from atlas.config.settings import SettingsKind
 from atlas.reading.kinds import Colour, Measure, OrWord, Text, Truth, Whole, Word, Words
+from atlas.reading.orbit_kinds import NumbersKind, RecordKind
 from atlas.reading.section import Key
 from atlas.reading.sheet import Size
-from atlas.reading.sheet_kinds import InsetKind, PanelsKind, SizeKind
-from atlas.reading.view_kinds import AxisKind, Levels, LevelsKind, NumbersKind, PairsKind, StartsKind
+from atlas.reading.sheet_kinds import FactorKind, InsetKind, PanelsKind, SizeKind
+from atlas.reading.start_kinds import StartsKind
+from atlas.reading.view_kinds import AxisKind, Levels, LevelsKind, PairsKind
 from tiles.grid import PAIRS
 from tiles.palette import PALETTES
 from tiles.shading import SHADINGS
@@ -49,10 +53,69 @@ JOB_KEYS: tuple[Key[Any], ...] = (
         True,
         counts=True,
     ),
-    Key("across", AxisKind(), None, "Horizontal axis: a parameter with its interval.", True, counts=True),
-    Key("up", AxisKind(), None, "Vertical axis: a state variable with its interval.", True, counts=True),
-    Key("set", NumbersKind("parameters"), {}, "Values of parameters that run along no axis.", counts=True),
-    Key("starts", StartsKind(), None, "States that every column is run from.", counts=True),
+    Key(
+        "across",
+        AxisKind(),
+        None,
+        "Horizontal axis: a parameter, state variable or observable with its interval.",
+        True,
+        counts=True,
+    ),
+    Key(
+        "up",
+        AxisKind(),
+        None,
+        "Vertical axis: a parameter, state variable or observable with its interval.",
+        True,
+        counts=True,
+    ),
+    Key(
+        "draw",
+        Word(tuple(DRAWS)),
+        None,
+        f"What is drawn: {', '.join(DRAWS)}; by default density, or fate over two parameters.",
+        counts=True,
+    ),
+    Key("set", SettingsKind(), {}, "Values of parameters and patterns that run along no axis.", counts=True),
+    Key(
+        "starts",
+        StartsKind(),
+        None,
+        "States that orbits start from: a list, or a grid over a box.",
+        counts=True,
+    ),
+    Key(
+        "follow",
+        Word(FOLLOWED),
+        None,
+        "Each column starts where its neighbour ended: up, down or both ways along the parameter.",
+        counts=True,
+        only_for=("histogram", "follow"),
+    ),
+    Key(
+        "record",
+        RecordKind(),
+        None,
+        "Counts only every so many steps, at a phase: {every: 12, phase: 3}.",
+        counts=True,
+        only_for=("histogram", "portrait"),
+    ),
+    Key(
+        "by_attractor",
+        Truth(),
+        False,
+        "Whether the density of each attractor has a colour of its own.",
+        counts=True,
+        only_for=("histogram", "portrait"),
+    ),
+    Key(
+        "extinct",
+        NumbersKind("state variables", above_zero=True),
+        None,
+        "Sizes below which a state variable counts as extinct; by default the family's.",
+        counts=True,
+        only_for=PLANES,
+    ),
     _TITLE,
     Key(
         "transient",
@@ -77,6 +140,16 @@ JOB_KEYS: tuple[Key[Any], ...] = (
         "Samples of each orbit; auto gives a mean of at least 8 counts in each cell of the occupied range.",
         shared=True,
         counts=True,
+        only_for=DENSITIES,
+    ),
+    Key(
+        "steps",
+        Whole(64, 10**9),
+        2000,
+        "Steps looked at after the transient in parameter planes and basin charts.",
+        shared=True,
+        counts=True,
+        only_for=PLANES,
     ),
     Key(
         "values_per_column",
@@ -85,6 +158,7 @@ JOB_KEYS: tuple[Key[Any], ...] = (
         "Parameter values, evenly spread, that each column of pixels averages over.",
         shared=True,
         counts=True,
+        only_for=("histogram", "follow"),
     ),
     Key(
         "longest_period",
@@ -100,8 +174,9 @@ JOB_KEYS: tuple[Key[Any], ...] = (
         "equalised",
         f"How density becomes shade: {', '.join(SHADINGS)}.",
         shared=True,
+        only_for=DENSITIES,
     ),
-    Key("palette", Word(tuple(PALETTES)), "blue", "Colours of the shades, light to dark.", shared=True),
+    Key("palette", Word(tuple(PALETTES)), None, "Colours; by default those for what is drawn.", shared=True),
     Key("background", Colour(), None, "Colour of empty cells; by default the palette's.", shared=True),
     Key(
         "missing",
@@ -120,6 +195,14 @@ PLATE_KEYS: tuple[Key[Any], ...] = (
     _FONT,
     Key("key", Truth(), False, "Whether a colour key stands beside the picture.", shared=True),
     Key("letter", Text(3), None, "Panel letter at the upper left corner."),
+    Key(
+        "supersampling",
+        FactorKind((1, 2, 4)),
+        1,
+        "Points along each side of a pixel of a parameter plane or basin chart, whose colours are mixed.",
+        shared=True,
+        only_for=PLANES,
+    ),
     Key("inset", InsetKind(), None, "A part of the window, magnified and drawn over a corner."),
 )
 

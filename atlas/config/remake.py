@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+from atlas.config.assembly import read_figure
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.config.load import parse_config
 from atlas.reading.place import Place
@@ -25,25 +26,18 @@ def from_normalised(given: Mapping[str, Any], where: str = "record") -> Plate | 
     ConfigRefused, FamilyRefused, FormulaRefused
         When it is not such a result.
     """
-    config = parse_config(_as_config(given, Place(where)), where)
-    return config.outputs()[str(given["name"])]
-
-
-def _as_config(given: Mapping[str, Any], place: Place) -> dict[str, Any]:
-    sections = {"plate": "plates", "tile set": "tile_sets", "figure": "figures"}
+    place = Place(where)
     try:
-        section, name = sections[given["kind"]], str(given["name"])
-        settings = {key: value for key, value in given["settings"].items() if value is not None}
-        parts = [_as_config(plate, place) for plate in given.get("plates", {}).values()]
-        config: dict[str, Any] = {"families": {}, "plates": {}, "tile_sets": {}, "figures": {}}
-        if section != "figures":
-            config["families"][settings["family"]] = {
-                key: value for key, value in given["family"].items() if key != "name"
-            }
+        kind, name, settings = given["kind"], str(given["name"]), given["settings"]
+        settings = {key: value for key, value in settings.items() if value is not None}
+        if kind == "figure":
+            plates = {name: from_normalised(plate, where) for name, plate in given["plates"].items()}
+            return read_figure(
+                name, settings, place, {n: p for n, p in plates.items() if isinstance(p, Plate)}
+            )
+        section = {"plate": "plates", "tile set": "tile_sets"}[kind]
+        family = {key: value for key, value in given["family"].items() if key != "name"}
+        config = {"families": {settings["family"]: family}, section: {name: settings}}
     except (KeyError, TypeError, AttributeError):
         raise place.refusal("this is no complete record of a plate, a tile set or a figure") from None
-    for part in parts:
-        config["families"] |= part["families"]
-        config["plates"] |= part["plates"]
-    config[section][name] = settings
-    return config
+    return parse_config(config, where).outputs()[name]

@@ -1,62 +1,42 @@
-"""What a family allows: which views of it are drawn, which parameters are set, where orbits start."""
+"""What a family allows: which parameters are set, where orbits start, which sizes count as extinct."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 
+from atlas.config.settings import Setting
+from atlas.families.patterns import check_patterns
 from atlas.families.reader import Family
 from atlas.reading.place import Place, shown
 from tiles.errors import nearest
 from tiles.number import Exact
-from tiles.window import Axis, View
-
-DRAWN = "this version draws a parameter across and a state variable up"
+from tiles.window import View
 
 
-def drawn_view(family: Family, across: Axis, up: Axis, place: Place) -> View:
-    """Return the view of two axes, if it is of a kind that this version draws.
-
-    Parameters
-    ----------
-    family : Family
-        Whose parameters and state variables the axes name.
-    across, up : Axis
-        The axes.
-    place : Place
-        Where the keys ``across`` and ``up`` stand.
+def with_patterns(family: Family, given: Mapping[str, Setting], place: Place) -> Family:
+    """Return the family with the patterns that ``set`` gives it.
 
     Raises
     ------
     ConfigRefused
-        When an axis names nothing that the family has, both name the same, or the kinds of axis are not
-        a parameter across and a state variable up.
+        For a pattern that the family does not have, for an entry that is no plain parameter of it, and when
+        its patterns repeat together too late.
     """
-    kinds = [_kind_of_axis(family, axis, place.at(key)) for key, axis in (("across", across), ("up", up))]
-    if across.name == up.name:
-        raise place.at("up").refusal(
-            f"{shown(up.name)} stands on both axes; a view needs a parameter across and a state variable up"
-        )
-    if kinds != ["parameter", "state variable"]:
-        raise place.at("across").refusal(
-            f"a {kinds[0]} ({across.name}) across and a {kinds[1]} ({up.name}) up cannot be drawn; {DRAWN}"
-        )
-    return View(across, up)
+    patterns = {name: entries for name, entries in given.items() if not isinstance(entries, Exact)}
+    for name in patterns:
+        if name in family.parameter_names:
+            raise place.at(name).refusal(f"{shown(name)} is a plain parameter, no pattern; write a number")
+        if name not in family.pattern_names:
+            hint = nearest(name, family.pattern_names) if family.patterns else ", and no pattern at all"
+            raise place.refusal(f"the family '{family.name}' has no pattern {shown(name)}{hint}")
+    if not patterns:
+        return family
+    changed = family.with_patterns(patterns)
+    check_patterns({one.name: one.entries for one in changed.patterns}, changed.parameter_names, place)
+    return changed
 
 
-def _kind_of_axis(family: Family, axis: Axis, place: Place) -> str:
-    parameters = [parameter.name for parameter in family.parameters]
-    states = [state.name for state in family.states]
-    if axis.name in parameters:
-        return "parameter"
-    if axis.name in states:
-        return "state variable"
-    hint = nearest(axis.name, [*parameters, *states])
-    raise place.refusal(
-        f"the family '{family.name}' has no parameter or state variable {shown(axis.name)}{hint}"
-    )
-
-
-def checked_set(family: Family, given: Mapping[str, Exact], view: View, place: Place) -> dict[str, Exact]:
+def checked_set(family: Family, given: Mapping[str, Setting], view: View, place: Place) -> dict[str, Exact]:
     """Return the values given to parameters, sorted by name.
 
     Raises
@@ -64,14 +44,21 @@ def checked_set(family: Family, given: Mapping[str, Exact], view: View, place: P
     ConfigRefused
         For a name that is no parameter of the family and for one that runs along an axis.
     """
-    names = [parameter.name for parameter in family.parameters]
-    for name in given:
+    letters = {pattern.name: pattern.entries for pattern in family.patterns}
+    numbers = {name: value for name, value in given.items() if isinstance(value, Exact)}
+    for name in numbers:
         if name in (view.across.name, view.up.name):
             raise place.at(name).refusal(f"{shown(name)} already runs along an axis; remove it here")
-        if name not in names:
-            hint = nearest(name, names)
+        if name in letters:
+            now = ", ".join(map(str, letters[name]))
+            raise place.at(name).refusal(
+                f"{shown(name)} is the pattern [{now}], which no number can replace; "
+                f"set its letters, or write {{pattern: [{numbers[name]}]}}"
+            )
+        if name not in family.parameter_names:
+            hint = nearest(name, [*family.parameter_names, *letters])
             raise place.refusal(f"the family '{family.name}' has no parameter {shown(name)}{hint}")
-    return dict(sorted(given.items()))
+    return dict(sorted(numbers.items()))
 
 
 def checked_starts(
@@ -82,7 +69,8 @@ def checked_starts(
     Raises
     ------
     ConfigRefused
-        For a name that is no state variable and for a start beyond the escape bound.
+        For a name that is no state variable, for a start beyond the escape bound and for one outside the
+        interval to which the variable is wrapped.
     """
     own = {state.name: state.start for state in family.states}
     starts = []
@@ -96,5 +84,35 @@ def checked_starts(
                 raise spot.at(name).refusal(
                     f"the start {value} lies beyond the escape bound {family.escape}; start inside it"
                 )
+            _check_wrapped(family, name, value, spot.at(name))
         starts.append({**own, **start})
     return tuple(starts)
+
+
+def _check_wrapped(family: Family, name: str, start: Exact, place: Place) -> None:
+    for state in family.states:
+        if state.name == name and state.wrap and not state.wrap[0] <= start < state.wrap[1]:
+            low, high = state.wrap
+            raise place.refusal(
+                f"the start {start} lies outside {low} to {high}, to which {shown(name)} is wrapped; "
+                f"start at {low} or more and below {high}"
+            )
+
+
+def checked_extinct(family: Family, given: Mapping[str, Exact], place: Place) -> dict[str, Exact]:
+    """Return the sizes below which state variables count as extinct, sorted by name.
+
+    Raises
+    ------
+    ConfigRefused
+        For a name that is no state variable and for a size that is not below the escape bound.
+    """
+    for name, size in given.items():
+        if name not in family.state_names:
+            hint = nearest(name, family.state_names)
+            raise place.refusal(f"the family '{family.name}' has no state variable {shown(name)}{hint}")
+        if float(size) >= float(family.escape):
+            raise place.at(name).refusal(
+                f"{size} is not below the escape bound {family.escape}; write a size that is"
+            )
+    return dict(sorted(given.items()))

@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from atlas.config.draws import KINDS
 from atlas.config.jobs import Job, TileSet
+from atlas.errors import PlanRefused
 from atlas.orbits.orbit import OrbitCounter, Rules
 from atlas.orbits.sampling import IN_TILES, ON_PLATES, automatic, whole_height
 from atlas.orbits.schedule import Schedule
@@ -21,6 +23,7 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     ------
     PlanRefused
     """
+    _refuse_what_is_not_drawn_yet(job)
     samples = job.samples
     if not isinstance(samples, int):
         samples = whole_height(rows, job.values_per_column * len(job.starts), counts_per_cell(job))
@@ -28,6 +31,28 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     counter = OrbitCounter(job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts)
     check_counter(counter, job.name)
     return counter
+
+
+# To be deleted as the kinds of view come to be drawn.
+def _refuse_what_is_not_drawn_yet(job: Job) -> None:
+    """Refuse what configs can ask for and this version does not draw."""
+    what = ""
+    if job.kind != "histogram":
+        what = KINDS[job.kind]
+    elif job.record:
+        what = "a density of recorded states"
+    elif job.by_attractor:
+        what = "a density by attractor"
+    elif job.up.name not in job.family.state_names:
+        what = "a density of an observable"
+    elif job.family.patterns:
+        what = "a map with a pattern"
+    elif any(state.wrap for state in job.family.states):
+        what = "a map with a wrapped state variable"
+    if what:
+        raise PlanRefused(
+            f"{job.name}: {what} is not drawn by this version; draw the density of a state variable"
+        )
 
 
 def resolved(job: Job, counter: OrbitCounter, schedule: Schedule) -> OrbitCounter:

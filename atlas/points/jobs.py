@@ -9,6 +9,7 @@ from typing import Any
 
 from atlas.config.keys import PLATE_KEYS, TILE_SET_KEYS
 from atlas.config.names import checked_name
+from atlas.config.view_kind import checked_palette
 from atlas.figure.lettering import axis_text, plain
 from atlas.figure.panels import PlateRequest
 from atlas.points.tables import Table
@@ -20,7 +21,8 @@ from tiles.grid import TILE
 from tiles.window import Axis, View
 
 _OF_ORBITS = {"family", "across", "up", "set", "starts", "transient", "transient_limit", "samples"}
-_OF_ORBITS |= {"values_per_column", "longest_period", "formats", "inset"}
+_OF_ORBITS |= {"values_per_column", "longest_period", "formats", "inset", "draw", "follow", "record", "steps"}
+_OF_ORBITS |= {"by_attractor", "extinct", "supersampling"}
 PLATE_OPTIONS: tuple[Key[Any], ...] = tuple(key for key in PLATE_KEYS if key.name not in _OF_ORBITS)
 TILE_SET_OPTIONS: tuple[Key[Any], ...] = tuple(key for key in TILE_SET_KEYS if key.name not in _OF_ORBITS)
 
@@ -78,14 +80,16 @@ class PointsTileSet(PointsJob):
 
 
 def options_of(keys: tuple[Key[Any], ...], given: Mapping[str, Any], place: Place) -> dict[str, Any]:
-    """Return the value of every option; one that is None takes its default.
+    """Return the value of every option; one that is None takes its default, the palette that of densities.
 
     Raises
     ------
     ConfigRefused
         For an unknown option and for a wrong value.
     """
-    return read_section(keys, {name: value for name, value in given.items() if value is not None}, place)
+    found = read_section(keys, {name: value for name, value in given.items() if value is not None}, place)
+    palette = checked_palette("density", found["palette"], True, place.at("palette"))
+    return found | {"palette": palette}
 
 
 def settings_of(job: PointsPlate | PointsTileSet) -> dict[str, Any]:

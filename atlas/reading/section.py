@@ -33,6 +33,8 @@ class Key(Generic[T]):
         Whether ``defaults:`` may hold it for every output.
     counts : bool
         Whether it changes the counts, and not only how they are drawn.
+    only_for : tuple of str
+        Kinds of view that it belongs to; empty where it belongs to all.
     """
 
     name: str
@@ -42,6 +44,7 @@ class Key(Generic[T]):
     required: bool = False
     shared: bool = False
     counts: bool = False
+    only_for: tuple[str, ...] = ()
 
     def read(self, given: Any, place: Place) -> T:
         """Return the value given at ``place``, which is that of the key itself."""

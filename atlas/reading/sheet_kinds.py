@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Any
 
-from atlas.reading.kinds import Kind, Measure, Schema, Word
+from atlas.reading.kinds import Kind, Measure, Schema, Whole, Word
 from atlas.reading.place import Place, shown
 from atlas.reading.section import Key, read_section, section_schema
 from atlas.reading.sheet import CORNERS, SIZE_PATTERN, Inset, Size
@@ -64,6 +64,26 @@ class SizeKind(Kind[Size]):
 
     def write(self, value: Size) -> Any:
         return str(value)
+
+
+@dataclass(frozen=True)
+class FactorKind(Kind[int]):
+    """One whole number of a short list."""
+
+    choices: tuple[int, ...]
+
+    @property
+    def allowed(self) -> str:
+        return f"one of {', '.join(map(str, self.choices))}"
+
+    def read(self, given: Any, place: Place) -> int:
+        number = Whole(min(self.choices), max(self.choices)).read(given, place)
+        if number not in self.choices:
+            raise place.refusal(f"{shown(given)} is not {self.allowed}")
+        return number
+
+    def schema(self) -> Schema:
+        return Whole(min(self.choices), max(self.choices)).schema()
 
 
 Panels = tuple[tuple[str, ...], ...]

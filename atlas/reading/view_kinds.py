@@ -1,4 +1,4 @@
-"""Kinds of value that say what is computed: axes, settings of parameters, starts, levels of a tile set."""
+"""Kinds of value that say what is computed: axes and levels of a tile set."""
 
 from __future__ import annotations
 
@@ -8,12 +8,10 @@ from typing import Any, NamedTuple
 
 from atlas.reading.kinds import NUMBER_SCHEMA, Kind, Number, Schema, Text, Whole, Word
 from atlas.reading.place import Place, shown
-from atlas.reading.section import Key, read_section, section_schema, text_keys
+from atlas.reading.section import Key, read_section, section_schema
 from tiles.errors import WindowRefused
-from tiles.number import Exact
 from tiles.window import Axis
 
-MOST_STARTS = 4096
 DEEPEST_LEVEL = 200
 NUMBER = Number()
 
@@ -22,7 +20,7 @@ AXIS_KEYS: tuple[Key[Any], ...] = (
         "name",
         Text(what="a name"),
         None,
-        "The parameter or state variable that runs along the axis.",
+        "The parameter, state variable or observable that runs along the axis.",
         required=True,
     ),
     Key("low", NUMBER, None, "Lower end.", required=True),
@@ -64,50 +62,6 @@ class AxisKind(Kind[Axis]):
     def write(self, value: Axis) -> Any:
         written = {key.name: key.write(getattr(value, key.name)) for key in self.keys}
         return {name: text for name, text in written.items() if text is not None}
-
-
-@dataclass(frozen=True)
-class NumbersKind(Kind[dict[str, Exact]]):
-    """A mapping of names to numbers."""
-
-    of: str
-
-    @property
-    def allowed(self) -> str:
-        return f"a mapping of {self.of} to numbers"
-
-    def read(self, given: Any, place: Place) -> dict[str, Exact]:
-        return {name: NUMBER.read(given[name], place.at(name)) for name in text_keys(given, place)}
-
-    def schema(self) -> Schema:
-        return {"type": "object", "additionalProperties": dict(NUMBER_SCHEMA)}
-
-    def write(self, value: dict[str, Exact]) -> Any:
-        return {name: NUMBER.write(number) for name, number in sorted(value.items())}
-
-
-@dataclass(frozen=True)
-class StartsKind(Kind[tuple[dict[str, Exact], ...]]):
-    """A list of states."""
-
-    @property
-    def allowed(self) -> str:
-        return "a list of states such as [{x: 0.3}, {x: 0.7}]"
-
-    def read(self, given: Any, place: Place) -> tuple[dict[str, Exact], ...]:
-        if not isinstance(given, list | tuple) or not given:
-            raise place.refusal(f"{shown(given)} is not {self.allowed}")
-        if len(given) > MOST_STARTS:
-            raise place.refusal(f"{len(given)} starts are too many; at most {MOST_STARTS} are allowed")
-        one = NumbersKind("state variables")
-        return tuple(one.read(entry, place.at(number)) for number, entry in enumerate(given, 1))
-
-    def schema(self) -> Schema:
-        one = NumbersKind("state variables").schema()
-        return {"type": "array", "items": one, "minItems": 1, "maxItems": MOST_STARTS}
-
-    def write(self, value: tuple[dict[str, Exact], ...]) -> Any:
-        return [NumbersKind("state variables").write(start) for start in value]
 
 
 class Levels(NamedTuple):

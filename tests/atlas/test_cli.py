@@ -272,7 +272,7 @@ WRONG_WORDS: list[tuple[tuple[str, ...], str]] = [
     (("draw", "logistic", "--across", "r=1:inf", *TO), "--across.high: 'inf' is not a number"),
     (("draw", "logistic", "--across", "q=1:2", *TO), "no parameter or state variable 'q'; allowed: r, x"),
     (("draw", "logistic", "--up", "r=1:2", *TO), "'r' stands on both axes"),
-    (("draw", "logistic", "--across", "x=0:1", "--up", "r=1:2", *TO), "this version draws a parameter"),
+    (("draw", "logistic", "--across", "x=0:1", "--up", "r=1:2", *TO), "(r) up cannot be drawn; swap the axes"),
     (("draw", "{small}", *TO), "--across and --up: the family 'sound' has no view of its own; write for"),
     (("draw", "{small}", *TO), "write for instance --across h=LOW:HIGH --up n=LOW:HIGH"),
     (("draw", "{small}", "--across", "r=1:2", *TO), "of its own; write for instance --up n=LOW:HIGH"),

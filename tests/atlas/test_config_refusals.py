@@ -90,7 +90,7 @@ WRONG: list[tuple[Callable[[dict[str, Any]], dict[str, Any]], str, Any, str]] = 
     (GROWTH, "across", ["q", 1, 2], "across: the family 'sound' has no parameter or state variable 'q'"),
     (GROWTH, "across", ["n", 1, 2], "'n' stands on both axes"),
     (GROWTH, "up", ["r", 1, 2], "'r' stands on both axes"),
-    (GROWTH, "up", ["h", 0, 1], "this version draws a parameter across and a state variable up"),
+    (GROWTH, "up", ["h", 0, 1], "plates.growth.set.h: 'h' already runs along an axis"),
     (GROWTH, "across", {"name": "r", "low": 1, "hihg": 2}, "the key 'hihg' is unknown; did you mean 'high'?"),
     (GROWTH, "across", {"name": "r", "low": 1}, "plates.growth.across: the key 'high' is missing"),
     (GROWTH, "across", {"name": "r", "low": 0, "high": 2, "scale": "log"}, "a log axis cannot start at 0"),
