@@ -15,12 +15,17 @@ How an orbit is treated, always by its own step numbers:
 4. Otherwise every following state is counted, in rounds of 512; a repeat found in a round fills the rest.
    After the last round it is looked at ahead once more, up to ``longest_period``, for a collapse in that
    round. An escape or a collapse takes back what was counted.
+
+Where only every so many-th state is recorded, the transient is prolonged to the phase asked for, and from then on
+*state*, *repeat*, *period* and *round* mean recorded states. Where parameters follow a pattern, states are the
+same only at the same place in the pattern, and extensions are whole patterns.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
+from math import lcm
 from types import ModuleType
 
 import numpy as np
@@ -51,6 +56,8 @@ class Rules:
         Longest period that is looked for where an orbit converges slowly.
     repeats : bool
         Whether exact repeats end an orbit; False only to measure the bare kernel.
+    every, phase : int
+        Only states whose number of steps, divided by ``every``, leaves ``phase`` are recorded.
     """
 
     transient: int = 1000
@@ -59,18 +66,20 @@ class Rules:
     values_per_column: int = 4
     longest_period: int = 64
     repeats: bool = True
+    every: int = 1
+    phase: int = 0
 
 
 @dataclass(frozen=True)
-class Window:
-    """The counted axis, as kernels take it.
+class CountedAxis:
+    """One counted axis, as kernels take it.
 
     Attributes
     ----------
-    axis : (float, float, float)
+    numbers : (float, float, float)
         Low end, inverse cell size, and how near to an edge the exact edges decide, in cells; of the logarithm
         on a log axis.
-    edges : ndarray of float64, shape (rows + 1,)
+    edges : ndarray of float64, shape (cells + 1,)
         Each exact and rounded once.
     half_cell : float
         In units of the axis, or of the logarithm.
@@ -78,10 +87,34 @@ class Window:
         Whether the axis is logarithmic.
     """
 
-    axis: tuple[float, float, float]
+    numbers: tuple[float, float, float]
     edges: NDArray[np.float64]
     half_cell: float
     relative: bool
+
+
+@dataclass(frozen=True)
+class Orbits:
+    """Orbits side by side, as kernels take them.
+
+    Attributes
+    ----------
+    start : ndarray of float64, shape (states, orbits)
+    c : ndarray of float64, shape (rows, orbits)
+        Coefficients of every letter of the pattern.
+    word : ndarray of int64, shape (length,)
+        Letter that holds at each time.
+    key : ndarray of uint64, shape (orbits,)
+        Seeds of the disturbance.
+    bound : float
+        Where an orbit has escaped.
+    """
+
+    start: NDArray[np.float64]
+    c: NDArray[np.float64]
+    word: NDArray[np.int64]
+    key: NDArray[np.uint64]
+    bound: float
 
 
 class Block:
@@ -91,34 +124,36 @@ class Block:
         self,
         kernels: ModuleType,
         rules: Rules,
-        window: Window,
-        bound: float,
-        start: NDArray[np.float64],
-        c: NDArray[np.float64],
-        key: NDArray[np.uint64],
+        axes: Sequence[CountedAxis],
+        orbits: Orbits,
         base: NDArray[np.int32],
         counts: NDArray[np.uint32],
         stop: NDArray[np.uint8],
     ) -> None:
-        orbits = start.shape[1]
-        self.kernels, self.rules, self.bound = kernels, rules, bound
-        self.half_cell, self.relative = window.half_cell, window.relative
-        self.window = (window.axis, window.edges)
-        self.start, self.x, self.c, self.key, self.stop = start, start.copy(), c, key, stop
+        number = orbits.start.shape[1]
+        self.kernels, self.rules, self.stop = kernels, rules, stop
+        self.bound, self.key, self.start = orbits.bound, orbits.key, orbits.start
+        self.x, self.map = orbits.start.copy(), (orbits.c, orbits.word)
+        self.half = np.array([axis.half_cell for axis in axes])
+        self.relative = np.array([axis.relative for axis in axes])
+        self.window = tuple(part for axis in axes for part in (axis.numbers, axis.edges))
         self.target = (base, counts)
-        self.trash = counts.size - window.edges.size - 1
-        self.outcome = np.full(orbits, READY, np.int8)
-        self.again = np.zeros(orbits, np.bool_)
-        self.filled = np.zeros(orbits, np.int64)
-        self.on_repelling = np.zeros(1, np.int64)
+        self.trash = counts.size - int(np.prod([axis.edges.size + 1 for axis in axes]))
+        self.outcome = np.full(number, READY, np.int8)
+        self.again = np.zeros(number, np.bool_)
+        self.filled = np.zeros(number, np.int64)
+        self.on_repelling = np.zeros(number, np.bool_)
+        self.transient = rules.transient + (rules.phase - rules.transient) % rules.every
+        self.unit = lcm(rules.every, orbits.word.size)
+        self.longest = max(rules.longest_period, self.unit // rules.every)
 
     def settle(self) -> NDArray[np.int64]:
         """Run the transients and their extensions; return the orbits that are ready for sampling."""
         rules = self.rules
-        limit = max(rules.transient, rules.transient_limit)
+        limit = max(self.transient, rules.transient_limit)
         order = np.arange(self.outcome.size)
         ready = []
-        done, steps = 0, rules.transient
+        done, steps = 0, self.transient
         while order.size and not self.stop[0]:
             self._advance(self.kernels.advance, order, done, steps)
             if self.stop[0]:
@@ -131,7 +166,7 @@ class Block:
             order = order[outcome == SLOW]
             if done >= limit:
                 break
-            steps = min(max(done, 64), limit - done)
+            steps = self.unit * -(-min(max(done, 64), limit - done) // self.unit)
         return np.sort(np.concatenate(ready)) if ready else np.empty(0, np.int64)
 
     def _advance(
@@ -139,23 +174,23 @@ class Block:
     ) -> None:
         """Advance orbits a stage in slices that end at escape tests; no slice changes a decision."""
         for first, last in self._slices(order, steps):
-            kernel(self.x, self.c, self.key, order, before + first, last - first, self.bound, self.outcome)
+            kernel(self.x, *self.map, self.key, order, before + first, last - first, self.bound, self.outcome)
 
     def _slices(self, order: NDArray[np.int64], steps: int) -> Iterator[tuple[int, int]]:
-        each = max(1, STEPS_AT_ONCE // (CHUNK * max(1, order.size))) * CHUNK
+        each = max(1, STEPS_AT_ONCE // (CHUNK * self.rules.every * max(1, order.size))) * CHUNK
         for first in range(0, max(steps, 1), each):
             if self.stop[0]:
                 return
             yield first, min(first + each, steps)
 
     def _decide(self, order: NDArray[np.int64]) -> None:
-        longest = self.rules.longest_period
+        longest, before = self.longest, self.transient
         seen = (np.zeros(self.outcome.size, np.int64), *self._seen())
-        self.kernels.returns(self.x, self.c, order, longest, max(LOOK_AHEAD * longest, 64), *seen)
-        rules = (self.rules.samples, self.half_cell, self.relative)
+        self.kernels.returns(self.x, *self.map, order, before, longest, max(LOOK_AHEAD * longest, 64), *seen)
+        rules = (self.rules.samples, self.half, self.relative)
         self.kernels.settle(
-            self.x, self.c, self.start, order, seen, rules, *self.window, *self.target, self.outcome,
-            self.on_repelling,
+            self.x, *self.map, self.start, order, before, seen, rules, *self.window, *self.target,
+            self.outcome, self.on_repelling,
         )  # fmt: skip
         done = order[self.outcome[order] == FILLED]
         self.filled[done] = self.rules.samples
@@ -163,31 +198,34 @@ class Block:
 
     def sample(self, order: NDArray[np.int64]) -> None:
         """Count the states of settled orbits, in rounds after which finished orbits drop out."""
-        samples, done = self.rules.samples, 0
+        samples, every, done = self.rules.samples, self.rules.every, 0
         begin = self.x.copy()
         hit = np.zeros(self.outcome.size, np.int64)
         while order.size and done < samples and not self.stop[0]:
             steps = min(ROUND, samples - done)
             self.kernels.sample(
-                self.x, self.c, self.key, order, 0, steps, self.bound, self.outcome, hit, self.target[0],
-                self.trash, *self.window, self.target[1],
+                self.x, *self.map, self.key, order, self.transient + done * every, steps, self.bound,
+                self.outcome, hit, self.target[0], self.trash, *self.window, self.target[1],
             )  # fmt: skip
             done += steps
             if not self.rules.repeats:
                 hit[:] = 0
             order = self._finish(order, begin, hit, done)
         if self.rules.repeats and order.size and not self.stop[0]:
-            longest = self.rules.longest_period
-            self.kernels.returns(self.x, self.c, order, longest, longest, hit, *self._seen())
+            now = self.transient + done * every
+            self.kernels.returns(
+                self.x, *self.map, order, now, self.longest, self.longest, hit, *self._seen()
+            )
             self._finish(order, begin, hit, done)
 
     def _finish(
         self, order: NDArray[np.int64], begin: NDArray[np.float64], hit: NDArray[np.int64], done: int
     ) -> NDArray[np.int64]:
         """Decide after a round, and return the orbits that go on."""
+        rules = (self.transient, self.rules.samples, done)
         self.kernels.finish(
-            self.x, self.c, begin, self.key, order, hit, (self.rules.samples, done), *self.window,
-            *self.target, self.outcome, self.filled,
+            self.x, *self.map, begin, self.key, order, hit, rules, *self.window, *self.target, self.outcome,
+            self.filled,
         )  # fmt: skip
         self.again[order[self.outcome[order] == AGAIN]] = True
         going_on: NDArray[np.int64] = order[self.outcome[order] == READY]
@@ -203,7 +241,7 @@ class Block:
         order = np.flatnonzero(self.again)
         if not order.size or self.stop[0]:
             return
-        transient, samples = self.rules.transient, self.rules.samples
+        transient, samples, every = self.transient, self.rules.samples, self.rules.every
         self.x[:, order] = self.start[:, order]
         self.outcome[order] = READY
         self._advance(self.kernels.advance_disturbed, order, 0, transient)
@@ -212,9 +250,9 @@ class Block:
         hit = np.zeros(self.outcome.size, np.int64)
         for first, last in self._slices(order, samples):
             self.kernels.sample_disturbed(
-                self.x, self.c, self.key, order, transient + first, last - first, self.bound, self.outcome,
-                hit, self.target[0], self.trash, *self.window, self.target[1],
+                self.x, *self.map, self.key, order, transient + first * every, last - first, self.bound,
+                self.outcome, hit, self.target[0], self.trash, *self.window, self.target[1],
             )  # fmt: skip
         self.kernels.take_back(
-            begin, self.c, self.key, order, transient, samples, *self.window, *self.target, self.outcome
+            begin, *self.map, self.key, order, transient, samples, *self.window, *self.target, self.outcome
         )

@@ -1,21 +1,23 @@
 """Source of the kernels that advance and count many orbits together, in lanes.
 
-Words in capitals are expanded by `atlas.orbits.kernel_source` for the state variables and coefficients of a
-family. Every lane follows its own orbit, so the result does not depend on which orbits share a group.
+Words in capitals are expanded by `atlas.orbits.kernel_source` for the state variables, the coefficients, the
+patterns and the axes of a view. Every lane follows its own orbit, so the result does not depend on which orbits
+share a group. Numbers of steps are those of the map; where only every so many-th state is recorded, SKIP runs
+those between.
 """
 
 CHUNK = 16
 """Steps between two escape tests, counted from the start of a stage."""
 
 PART = 8
-"""Steps between two visits to the histogram; a divisor of CHUNK."""
+"""Recorded states between two visits to the histogram; a divisor of CHUNK."""
 
 ADVANCE = '''
 @compiled
-def advance(x, c, key, order, before, steps, bound, outcome):
+def advance(x, c, word, key, order, before, steps, bound, outcome):
     """Advance the orbits of order; outcome becomes GONE where a test finds one outside the bound."""
     lx = np.empty((NX, LANES))
-    lc = np.empty((NC, LANES))
+    lc = np.empty((ROWS, LANES))
     lg = np.empty(LANES, np.bool_)
     lk = np.empty(LANES, np.uint64)
     for first in range(0, order.size, LANES):
@@ -24,7 +26,7 @@ def advance(x, c, key, order, before, steps, bound, outcome):
             m = order[first + min(l, lanes - 1)]
             for k in range(NX):
                 lx[k, l] = x[k, m]
-            for k in range(NC):
+            for k in range(ROWS):
                 lc[k, l] = c[k, m]
             lg[l] = False
             lk[l] = key[m]
@@ -33,14 +35,17 @@ def advance(x, c, key, order, before, steps, bound, outcome):
         while done < steps:
             now = min(CHUNK, steps - done)
             for part in range(now // UNROLL):
+                PHASE n
                 for l in range(LANES):
                     LOAD
-                    for k in range(UNROLL):
-                        STEP n + k + 1
+                    REPEAT
+                    STEP n + KTH + 1
+                    END_REPEAT
                     STORE
                 n += UNROLL
             BEGIN_REST
             for part in range(now % UNROLL):
+                PHASE n
                 for l in range(LANES):
                     LOAD
                     STEP n + 1
@@ -63,11 +68,11 @@ def advance(x, c, key, order, before, steps, bound, outcome):
 
 RETURNS = '''
 @compiled
-def returns(x, c, order, longest, window, repeat, period, gap, size):
+def returns(x, c, word, order, before, longest, window, repeat, period, gap, size):
     """Look ahead from each orbit's state: the first exact repeat, and the nearest return up to a period."""
     lx = np.empty((NX, LANES))
     rx = np.empty((NX, LANES))
-    lc = np.empty((NC, LANES))
+    lc = np.empty((ROWS, LANES))
     lr = np.empty(LANES)
     lp = np.empty(LANES)
     lg = np.empty(LANES)
@@ -81,14 +86,18 @@ def returns(x, c, order, longest, window, repeat, period, gap, size):
                 lx[k, l] = x[k, m]
                 rx[k, l] = x[k, m]
                 ls[l] = max(ls[l], abs(x[k, m]))
-            for k in range(NC):
+            for k in range(ROWS):
                 lc[k, l] = c[k, m]
             lr[l] = 0.0
             lp[l] = 0.0
             lg[l] = np.inf
+        t = before
         for n in range(1, window + 1):
             number = float(n)
             beyond = 0.0 if n <= longest else np.inf
+            FAR n
+            SKIP t
+            PHASE t + EVERY - 1
             for l in range(LANES):
                 LOAD
                 STEP 0
@@ -100,6 +109,7 @@ def returns(x, c, order, longest, window, repeat, period, gap, size):
                 lp[l] = number if nearer else lp[l]
                 largest = LARGEST
                 ls[l] = largest if largest - beyond > ls[l] else ls[l]
+            t += EVERY
         for l in range(lanes):
             m = order[first + l]
             repeat[m] = int(lr[l])
@@ -111,18 +121,22 @@ def returns(x, c, order, longest, window, repeat, period, gap, size):
 
 SAMPLE = '''
 @compiled
-def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, axis, edges, counts):
-    """Advance the orbits of order and count every state; note the first return to where each stood."""
-    low, inverse, slack = axis
-    top = float(edges.size - 1)
+def sample(x, c, word, key, order, before, steps, bound, outcome, hit, base, trash, AXES, counts):
+    """Record and count states of the orbits of order; note the first return to where each stood."""
+    low0, inverse0, slack0 = axis0
+    top0 = float(edges0.size - 1)
+    SECOND low1, inverse1, slack1 = axis1
+    SECOND top1 = float(edges1.size - 1)
+    SECOND stride = np.int32(edges0.size + 1)
     lx = np.empty((NX, LANES))
     rx = np.empty((NX, LANES))
-    lc = np.empty((NC, LANES))
+    lc = np.empty((ROWS, LANES))
     lg = np.empty(LANES, np.bool_)
     lh = np.empty(LANES)
     lb = np.empty(LANES, np.int32)
     lk = np.empty(LANES, np.uint64)
-    seen = np.empty((PART, LANES))
+    seen0 = np.empty((PART, LANES))
+    SECOND seen1 = np.empty((PART, LANES))
     cell = np.empty((PART, LANES), np.int32)
     flat = cell.reshape(-1)
     for first in range(0, order.size, LANES):
@@ -132,7 +146,7 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
             for k in range(NX):
                 lx[k, l] = x[k, m]
                 rx[k, l] = x[k, m]
-            for k in range(NC):
+            for k in range(ROWS):
                 lc[k, l] = c[k, m]
             lg[l] = False
             lh[l] = np.inf
@@ -144,46 +158,64 @@ def sample(x, c, key, order, before, steps, bound, outcome, hit, base, trash, ax
             now = min(PART, steps - done)
             for part in range(now // UNROLL):
                 at = part * UNROLL
+                SKIP n
+                PHASE n + EVERY - 1
                 for l in range(LANES):
                     LOAD
                     h = lh[l]
-                    for k in range(UNROLL):
-                        STEP n + at + k + 1
-                        seen[at + k, l] = UP
-                        number = float(done + at + k + 1)
-                        number = number if SAME else np.inf
-                        h = number if number < h else h
+                    REPEAT
+                    STEP n + KTH + EVERY
+                    seen0[at + KTH, l] = SHOWN0
+                    SECOND seen1[at + KTH, l] = SHOWN1
+                    NUMBER done + at + KTH + 1
+                    number = number if SAME else np.inf
+                    h = number if number < h else h
+                    END_REPEAT
                     STORE
                     lh[l] = h
+                n += UNROLL * EVERY
             BEGIN_REST
             for k in range(now - now % UNROLL, now):
+                PHASE n
                 for l in range(LANES):
                     LOAD
-                    STEP n + k + 1
+                    STEP n + 1
                     STORE
-                    seen[k, l] = UP
-                    number = float(done + k + 1)
+                    seen0[k, l] = SHOWN0
+                    SECOND seen1[k, l] = SHOWN1
+                    NUMBER done + k + 1
                     number = number if SAME else np.inf
                     lh[l] = number if number < lh[l] else lh[l]
+                n += 1
             END_REST
             near = False
             for k in range(now):
                 for l in range(LANES):
-                    t = (SCALED(seen[k, l]) - low) * inverse
+                    t = (SCALED0(seen0[k, l]) - low0) * inverse0
                     q = np.floor(t)
                     f = t - q
-                    near = near | (f < slack) | (f > 1.0 - slack)
+                    near = near | (f < slack0) | (f > 1.0 - slack0)
                     q = q if q > -1.0 else -1.0
-                    q = q if q < top else top
+                    q = q if q < top0 else top0
                     cell[k, l] = lb[l] + np.int32(q)
+            BEGIN_SECOND
+            for k in range(now):
+                for l in range(LANES):
+                    t = (SCALED1(seen1[k, l]) - low1) * inverse1
+                    q = np.floor(t)
+                    f = t - q
+                    near = near | (f < slack1) | (f > 1.0 - slack1)
+                    q = q if q > -1.0 else -1.0
+                    q = q if q < top1 else top1
+                    cell[k, l] += stride * (np.int32(q) + np.int32(1))
+            END_SECOND
             if near:
                 for k in range(now):
                     for l in range(LANES):
-                        cell[k, l] = lb[l] + np.int32(cell_of(seen[k, l], axis, edges) - 1)
+                        cell[k, l] = lb[l] - np.int32(1) + np.int32(CELL_SEEN)
             for j in range(now * LANES):
                 counts[np.uint32(flat[j])] += np.uint32(1)
             done += now
-            n += now
             if done % CHUNK == 0 or done == steps:
                 for l in range(LANES):
                     LOAD

@@ -16,10 +16,11 @@ from numpy.typing import NDArray
 
 import atlas.arithmetic.functions as functions
 from atlas.families.reader import Family
-from atlas.orbits.block import Block, Window
+from atlas.orbits.block import Block, CountedAxis, Orbits
 from atlas.orbits.block import Rules as Rules
 from atlas.orbits.kernel_source import kernel_source
 from atlas.orbits.orbit_kernels import GONE, SLOW
+from atlas.orbits.setting import Setting, counted_axis, hashed
 from atlas.orbits.step import StepSource, load_module, step_source
 from tiles.errors import Failure, TooLarge
 from tiles.number import Exact
@@ -90,15 +91,13 @@ class OrbitCounter:
         self.rows = rows
         self.rules = rules
         self.lanes = lanes
+        self.setting = Setting(family, set, starts)
         self._local = threading.local()
-        self.fixed = {one.name: float(one.default) for one in family.parameters}
-        self.fixed |= {name: float(value) for name, value in (set or {}).items()}
-        self.starts = np.array(
-            [
-                [float(start.get(state.name, state.start)) for state in family.states]
-                for start in (starts or [{}])
-            ]
-        )
+
+    @property
+    def starts(self) -> NDArray[np.float64]:
+        """Initial conditions, shape (starts, states)."""
+        return self.setting.starts
 
     @property
     def orbits_per_column(self) -> int:
@@ -113,26 +112,15 @@ class OrbitCounter:
     @cached_property
     def module(self) -> ModuleType:
         """The compiled kernels of the family for this view."""
-        states = [state.name for state in self.family.states]
         text = kernel_source(
-            self._source,
-            states.index(self.view.up.name),
-            log=self.view.up.scale == "log",
-            lanes=self.lanes,
+            self._source, [self.view.up.scale == "log"], lanes=self.lanes, every=self.rules.every
         )
         return load_module(text, Path(functions.__file__).read_text() + numba_version)
 
     @cached_property
-    def window(self) -> Window:
+    def window(self) -> CountedAxis:
         """The cells of ``up`` as kernels take them."""
-        up = self.view.up
-        edges = up.edges(self.rows)
-        cell, relative = up.cell_size(self.rows), up.scale == "log"
-        low, high = float(edges[0]), float(edges[-1])
-        if relative:
-            low, high = float(np.log(low)), float(np.log(high))
-        slack = 4e-15 * (self.rows + 2.0 * max(abs(low), abs(high)) / cell)
-        return Window((low, 1.0 / cell, slack), edges, 0.5 * cell, relative)
+        return counted_axis(self.view.up, self.rows)
 
     def at(self, columns: int, rows: int, rules: Rules) -> OrbitCounter:
         """Return a counter of the same orbits at another resolution and under other rules."""
@@ -149,9 +137,8 @@ class OrbitCounter:
 
     def warm(self) -> None:
         """Compile the kernels, so that a later timing or progress bar does not include it."""
-        few = OrbitCounter(
-            self.family, self.view, self.columns, self.rows, Rules(0, 0, 1, 1), lanes=self.lanes
-        )
+        few_rules = Rules(0, 0, 1, 1, every=self.rules.every)
+        few = OrbitCounter(self.family, self.view, self.columns, self.rows, few_rules, lanes=self.lanes)
         few.__dict__["module"] = self.module
         counts = np.zeros(2 * (self.rows + 2), np.uint32)
         block = few._run(0, 1, counts, np.zeros(1, np.uint8))
@@ -215,7 +202,7 @@ class OrbitCounter:
             unsettled=samples_of(outcomes == SLOW),
             collapsed=block.again.reshape(outcomes.shape).sum(axis=1, dtype=np.uint64),
         )
-        return Counted(strip, int(block.filled.sum()), int(block.on_repelling[0]))
+        return Counted(strip, int(block.filled.sum()), int(block.on_repelling.sum()))
 
     def _scratch(self, size: int) -> NDArray[np.uint32]:
         """Return zeros that this thread uses again for its next strip."""
@@ -227,13 +214,9 @@ class OrbitCounter:
         return counts
 
     def _run(self, first: int, last: int, counts: NDArray[np.uint32], stop: NDArray[np.uint8]) -> Block:
-        start, parameters = self._orbits(first, last)
-        c = np.empty((max(self._source.coefficients, 1), start.shape[1]))
-        self.module.coefficients(parameters, c)
         stride = np.int32(self.rows + 2)
         base = np.repeat(np.arange(last - first, dtype=np.int32) * stride, self.orbits_per_column)
-        key, bound = self._keys(first, last), float(self.family.escape)
-        block = Block(self.module, self.rules, self.window, bound, start, c, key, base, counts, stop)
+        block = Block(self.module, self.rules, (self.window,), self.orbits(first, last), base, counts, stop)
         ready = block.settle()
         block.sample(ready)
         block.run_again()
@@ -241,16 +224,14 @@ class OrbitCounter:
 
     @cached_property
     def _source(self) -> StepSource:
-        return step_source(self.family)
+        return step_source(self.family, (self.view.up.name,))
 
-    def _orbits(self, first: int, last: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-        starts = self.starts
-        values = self._values(first, last)
-        x = np.tile(starts.T, values.size)
-        parameters = np.empty((len(self.fixed), values.size * len(starts)))
-        for row, (name, value) in zip(parameters, self.fixed.items(), strict=True):
-            row[:] = np.repeat(values, len(starts)) if name == self.view.across.name else value
-        return np.ascontiguousarray(x), parameters
+    def orbits(self, first: int, last: int) -> Orbits:
+        """Return the orbits of the columns ``first … last - 1``: column by column, value by value."""
+        values, starts = self._values(first, last), self.starts
+        varying = {self.view.across.name: np.repeat(values, len(starts))}
+        start = np.tile(starts.T, values.size)
+        return self.setting.orbits(self.module, self._source, start, self._keys(first, last), varying)
 
     def _values(self, first: int, last: int) -> NDArray[np.float64]:
         across, each = self.view.across, self.rules.values_per_column
@@ -268,11 +249,3 @@ class OrbitCounter:
         values = np.arange(self.rules.values_per_column, dtype=np.uint64)[None, :, None]
         starts = np.arange(len(self.starts), dtype=np.uint64)[None, None, :]
         return hashed(hashed(hashed(columns) ^ values) ^ starts).reshape(-1)
-
-
-def hashed(numbers: NDArray[np.uint64]) -> NDArray[np.uint64]:
-    """Return well-mixed 64-bit numbers (finaliser of SplitMix64, Steele, Lea & Flood 2014)."""
-    z = numbers + np.uint64(0x9E3779B97F4A7C15)
-    z = (z ^ (z >> np.uint64(30))) * np.uint64(0xBF58476D1CE4E5B9)
-    z = (z ^ (z >> np.uint64(27))) * np.uint64(0x94D049BB133111EB)
-    return z ^ (z >> np.uint64(31))

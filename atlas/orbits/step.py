@@ -7,6 +7,7 @@ import importlib.util
 import os
 import sys
 import tempfile
+from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
@@ -16,36 +17,71 @@ from atlas.arithmetic.float64 import POLYNOMIALS, StraightLine, hoist
 from atlas.errors import FormulaRefused
 from atlas.families.reader import Family
 from atlas.formula.tree import Node, free_names
+from atlas.orbits.volumes import carried, compounds, lengths
+from tiles.number import Exact
 
 HEADER = f"""\
 import numpy as np
 from numba import njit
-from atlas.arithmetic.functions import {", ".join(POLYNOMIALS)}
+from atlas.arithmetic.functions import bits_of, float_from, {", ".join(POLYNOMIALS)}
 
 inlined = njit(inline="always", error_model="numpy")
 compiled = njit(nogil=True, error_model="numpy", cache=True)
+
+
+@inlined
+def around(difference, width):
+    d = abs(difference)
+    other = width - d
+    return d if d < other else other
+
+
+@inlined
+def exponent_of(x):
+    return float(((bits_of(x) >> 52) & 2047) - 1023)
+
+
+@inlined
+def two_to(exponent):
+    return float_from((int(exponent) + 1023) << 52)
 """
 
 
 @dataclass(frozen=True)
 class StepSource:
-    """Source of the functions ``step``, ``slope`` and ``coefficients`` of a family.
+    """Source of the functions of a family that kernels call.
 
     Attributes
     ----------
     text : str
-        ``step(x0…, c0…)`` returns the next state, ``slope(x0…, c0…)`` the Jacobian row by row, and
-        ``coefficients(parameters, out)`` fills what depends on parameters alone, once per parameter value.
+        ``step(x0…, c0…)`` returns the next state, ``slope(x0…, c0…)`` the Jacobian row by row,
+        ``carry(x0…, v0…, c0…)`` the next state and what becomes of the vectors that the compound matrices of
+        the Jacobian map (see `atlas.orbits.volumes`), ``minors(x0…, c0…)`` the entries of those matrices,
+        ``lift(x0…, c0…)`` the next state before periodic variables are wrapped, ``drawn0``, ``drawn1`` the
+        drawn observables, and ``coefficients(parameters, out)`` fills what depends on parameters alone, once
+        per parameter value.
     states, coefficients : int
         How many state variables and coefficients there are.
     slow_calls : int
         Calls of polynomial functions in a step.
+    drawn : tuple of str
+        Expressions of what the axes show: ``x0``, or a call of ``drawn0``.
+    widths : tuple of float
+        Length of the interval of each periodic state variable; 0 for the others.
+    word : tuple of int
+        Number of the set of coefficients that holds at each time, repeating.
+    letters : tuple of mapping of str to str or Exact
+        What the patterns are in each of these sets.
     """
 
     text: str
     states: int
     coefficients: int
     slow_calls: int
+    drawn: tuple[str, ...]
+    widths: tuple[float, ...]
+    word: tuple[int, ...]
+    letters: tuple[Mapping[str, str | Exact], ...]
 
     @property
     def state_names(self) -> list[str]:
@@ -57,14 +93,26 @@ class StepSource:
         """Identifiers of the coefficients: ``c0``, ``c1`` …"""
         return [f"c{k}" for k in range(self.coefficients)]
 
+    @property
+    def vector_names(self) -> list[str]:
+        """Identifiers of the components of the vectors that compound matrices carry: ``v0``, ``v1`` …"""
+        return [f"v{k}" for k in range(sum(lengths(self.states)))]
+
+    @property
+    def rows(self) -> int:
+        """Rows of the array of coefficients of all letters; at least 1."""
+        return max(self.coefficients, 1) * len(self.letters)
+
 
 @cache
-def step_source(family: Family) -> StepSource:
-    """Write the source of a family's step, of its Jacobian and of its coefficients.
+def step_source(family: Family, drawn: tuple[str, ...] = ()) -> StepSource:
+    """Write the source of a family's step, of its derivatives and of its coefficients.
 
     Parameters
     ----------
     family : Family
+    drawn : tuple of str
+        State variables and observables that the axes show.
 
     Returns
     -------
@@ -75,20 +123,59 @@ def step_source(family: Family) -> StepSource:
     FormulaRefused
         When the step has no derivative.
     """
-    states = [state.name for state in family.states]
-    steps = list(family.inlined_step())
+    states = list(family.state_names)
+    steps, lifted = list(family.wrapped_step()), list(family.inlined_step())
     try:
-        slopes = [entry for row in family.jacobian() for entry in row]
+        matrices = compounds(family.jacobian())
     except FormulaRefused as problem:
         raise FormulaRefused(f"families.{family.name}.step: {problem}") from None
-    trees, constants = hoist([*steps, *slopes], states)
-    names = {name: f"x{k}" for k, name in enumerate(states)}
-    names |= {f"coefficient {k}": f"c{k}" for k in range(len(constants))}
-    arguments = ", ".join(names.values())
-    step, slow = _function("step", arguments, trees[: len(steps)], names)
-    slope, _ = _function("slope", arguments, trees[len(steps) :], names)
-    text = "\n\n".join((step, slope, _coefficients(family, constants)))
-    return StepSource(text, len(states), len(constants), slow)
+    vectors = [f"vector {k}" for k in range(sum(lengths(len(states))))]
+    minors = [entry for matrix in matrices for row in matrix for entry in row]
+    observed = [name for name in drawn if name not in states]
+    parts = {
+        "step": steps,
+        "slope": minors[: len(states) ** 2],
+        "carry": steps + carried(matrices, vectors),
+        "minors": minors,
+        "lift": lifted,
+        **{f"drawn{k}": [family.inlined_observable(name)] for k, name in enumerate(observed)},
+    }
+    trees, constants = hoist([tree for part in parts.values() for tree in part], [*states, *vectors])
+    numbers = {f"coefficient {k}": f"c{k}" for k in range(len(constants))}
+    variables = {name: f"x{k}" for k, name in enumerate(states)}
+    carrying = {name: f"v{k}" for k, name in enumerate(vectors)}
+    texts, slow = [], {}
+    for name, part in parts.items():
+        names = variables | (carrying if name == "carry" else {}) | numbers
+        text, slow[name] = _function(name, ", ".join(names.values()), trees[: len(part)], names)
+        trees = trees[len(part) :]
+        texts.append(text)
+    call = ", ".join([*variables.values(), *numbers.values()])
+    expressions = [
+        variables[name] if name in variables else f"drawn{observed.index(name)}({call})" for name in drawn
+    ]
+    letters, word = _letters(family)
+    return StepSource(
+        "\n\n".join([*texts, _coefficients(family, constants)]),
+        len(states),
+        len(constants),
+        slow["step"],
+        tuple(expressions),
+        tuple(float(state.wrap[1]) - float(state.wrap[0]) if state.wrap else 0.0 for state in family.states),
+        word,
+        letters,
+    )
+
+
+def _letters(family: Family) -> tuple[tuple[Mapping[str, str | Exact], ...], tuple[int, ...]]:
+    """Return the different settings of all patterns, and which of them holds at each time."""
+    found: list[Mapping[str, str | Exact]] = []
+    word = []
+    for setting in family.word():
+        if setting not in found:
+            found.append(setting)
+        word.append(found.index(setting))
+    return tuple(found), tuple(word)
 
 
 def _function(name: str, arguments: str, trees: list[Node], names: dict[str, str]) -> tuple[str, int]:
@@ -100,7 +187,7 @@ def _function(name: str, arguments: str, trees: list[Node], names: dict[str, str
 
 
 def _coefficients(family: Family, constants: list[Node]) -> str:
-    names = {parameter.name: f"p{k}" for k, parameter in enumerate(family.parameters)}
+    names = {name: f"p{k}" for k, name in enumerate(parameter_rows(family))}
     body = StraightLine(names)
     used = sorted({name for tree in constants for name in free_names(tree)}, key=list(names).index)
     loads = [f"{names[name]} = parameters[{list(names).index(name)}, m]" for name in used]
@@ -109,6 +196,11 @@ def _coefficients(family: Family, constants: list[Node]) -> str:
     lines = [f"        {line}" for line in [*loads, *body.lines, *stores]] or ["        pass"]
     head = "@compiled\ndef coefficients(parameters, out):\n    for m in range(parameters.shape[1]):"
     return "\n".join([head, *lines])
+
+
+def parameter_rows(family: Family) -> list[str]:
+    """Return the names of the rows of the parameters that ``coefficients`` takes: plain ones, then patterns."""
+    return [*family.parameter_names, *(pattern.name for pattern in family.patterns)]
 
 
 def cache_folder() -> Path:

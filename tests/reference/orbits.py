@@ -171,7 +171,7 @@ class Twin:
         if not ratio < 1:
             return False
         left = 4.0 * turns[0] * ratio / (1.0 - ratio)
-        return (left / abs(x) if self.relative else left) > self.half_cell
+        return (left / abs(x) if self.relative else left) / self.half_cell > 1.0
 
     def _disturbed(self, seed: int, value: float, start: float, rules: Rules) -> list[float]:
         def step(x: float, n: int) -> float:
