@@ -39,6 +39,7 @@ TABLE = """
 15  atlas.formula.expression atlas.reading.view_kinds atlas.figure.pieces atlas.figure.vector_files
 15  atlas.points.opening atlas.reading.orbit_kinds
 16  atlas.families.kinds atlas.families.records atlas.families.patterns atlas.families.wrapping
+16  atlas.families.rows_one_variable atlas.families.rows_several_variables
 16  atlas.reading.sheet_kinds atlas.figure.painting
 16  atlas.points.intervals atlas.reading.start_kinds
 17  atlas.families.keys atlas.families.map_family atlas.families.checks

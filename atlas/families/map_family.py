@@ -89,9 +89,11 @@ class Family:
 
     def label_and_unit(self, name: str) -> tuple[str, str]:
         """Return what figures print beside a symbol; two empty texts for a name that the family lacks."""
-        for named in (*self.states, *self.parameters, *self.patterns, *self.observables):
-            if named.name == name:
-                return named.label, named.unit
+        named: list[State | Parameter | Pattern | Observable] = [*self.states, *self.parameters]
+        named += [*self.patterns, *self.observables]
+        for one in named:
+            if one.name == name:
+                return one.label, one.unit
         return "", ""
 
     def word(self) -> tuple[dict[str, str | Exact], ...]:

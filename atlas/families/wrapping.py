@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from fractions import Fraction
 
-from atlas.formula.expression import Binary, Call, Node, Pi
+from atlas.formula.expression import Binary, Call, Node, Pi, Unary
 from atlas.formula.tree import rational
 from tiles.number import Exact
 
@@ -34,8 +34,10 @@ def number_node(number: Exact) -> Node:
     """Return an exact number as a formula; a multiple of pi as ``p * pi / q``."""
     if not number.of_pi:
         return rational(number.value)
-    top, bottom = rational(Fraction(number.value.numerator)), number.value.denominator
-    multiple: Node = Pi() if number.value.numerator == 1 else Binary("*", top, Pi())
+    if number.value < 0:
+        return Unary("-", number_node(Exact(-number.value, of_pi=True)))
+    top, bottom = number.value.numerator, number.value.denominator
+    multiple: Node = Pi() if top == 1 else Binary("*", rational(Fraction(top)), Pi())
     return multiple if bottom == 1 else Binary("/", multiple, rational(Fraction(bottom)))
 
 
