@@ -19,8 +19,8 @@ ROOT = Path(__file__).parents[1]
 TABLE = """
  0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
  1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
- 2  tiles.window tiles.pyramid tiles.curve
- 3  tiles.codec tiles.shading tiles.stages
+ 2  tiles.window tiles.pyramid tiles.curve tiles.classes
+ 3  tiles.codec tiles.shading tiles.stages tiles.values
  4  tiles.column tiles.index tiles.meta
  5  tiles.build tiles.site
 

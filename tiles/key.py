@@ -70,3 +70,78 @@ def _tiers(low: float, high: float) -> list[list[Decimal]]:
         ]
         tiers.append([number for number in numbers if low <= number <= high])
     return tiers
+
+
+def signed_labels(low: float, high: float) -> list[tuple[float, str]]:
+    """Return 0 in the middle of a diverging ramp and equal round steps to either side.
+
+    Parameters
+    ----------
+    low, high : float
+        Values at the ends, below and above 0.
+
+    Returns
+    -------
+    list of (float, str)
+        Position along the ramp and number with a true minus sign, ascending.
+    """
+    found = [(0.5, "0")]
+    for end in (low, high):
+        step = _round_step(abs(end), _SPACING)
+        for count in range(1, math.floor(abs(end) / float(step) * (1 + 1e-12)) + 1):
+            place = 0.5 + math.copysign(0.5 * min(1.0, float(count * step) / abs(end)), end)
+            found.append((place, _signed(math.copysign(1, end), count * step)))
+    return sorted(found)
+
+
+def fraction_labels(shades: int) -> list[tuple[float, str]]:
+    """Return the quarters of a cycle along a ramp whose first shade is centred on 0.
+
+    Parameters
+    ----------
+    shades : int
+        How many there are.
+    """
+    return [(min(1.0, quarter / 4 + 0.5 / shades), f"{quarter / 4:g}") for quarter in range(5)]
+
+
+def value_labels(low: float, thresholds: NDArray[np.float64], high: float) -> list[tuple[float, str]]:
+    """Choose a few round numbers between the ends of a ramp of values, which may be negative.
+
+    Parameters
+    ----------
+    low, high : float
+        Values at the ends.
+    thresholds : ndarray of float64, shape (levels - 1,)
+        Ascending values at which one shade ends and the next begins.
+
+    Returns
+    -------
+    list of (float, str)
+        As :func:`ramp_labels` returns them.
+    """
+    if low >= 0 or high <= low:
+        return ramp_labels(thresholds)
+    places = np.arange(thresholds.size + 2) / (thresholds.size + 1)
+    values = np.concatenate([[low], thresholds, [high]])
+    step = _round_step(high - low, _SPACING / 2)
+    found: list[tuple[float, str]] = []
+    for count in range(math.ceil(low / float(step)), math.floor(high / float(step)) + 1):
+        place = float(np.interp(float(count * step), values, places))
+        if not found or place - found[-1][0] >= _SPACING:
+            found.append((place, _signed(count, abs(count) * step)))
+    return found
+
+
+def _round_step(extent: float, share: float) -> Decimal:
+    """Return the least of 1, 2, 5, 10 … that is no smaller than a share of twice an extent."""
+    wanted = 2 * share * extent
+    exponent = math.floor(math.log10(wanted))
+    steps = (Decimal(f"{digit}e{exponent + more}") for more in (0, 1) for digit in (1, 2, 5))
+    return next(step for step in steps if float(step) >= wanted * (1 - 1e-12))
+
+
+def _signed(sign: float, number: Decimal) -> str:
+    if number == 0:
+        return "0"
+    return ("−" if sign < 0 else "") + number_text(number)

@@ -1,14 +1,23 @@
-"""Palettes as rows of data: where their colours come from and between which lightnesses they run."""
+"""Palettes as rows of data: where their colours come from and between which lightnesses they run.
+
+There are four kinds. A *sequential* palette is strictly monotone in lightness. A *diverging* one is light at
+the centre and grows equally dark to both sides. A *cyclic* one returns to its first colour. A *categorical*
+one is a list of colours that are told apart; it has no order.
+"""
 
 from __future__ import annotations
 
 import re
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import Literal
 
 from tiles.errors import Refusal, nearest
 
-STOPS = 25
+STOPS = 25  # of a sequential and of a cyclic palette
+KINDS = ("sequential", "diverging", "cyclic", "categorical")
+_SIDE = 13  # stops on each side of a diverging palette
+_SHADES = 216  # of a ramp, see tiles.curve.LEVELS
 _HEX = re.compile(r"#(?:[0-9a-fA-F]{3}|[0-9a-fA-F]{6})")
 _WORDS = {"white": "#ffffff", "black": "#000000"}
 
@@ -19,7 +28,7 @@ class PaletteRefused(Refusal):
 
 @dataclass(frozen=True)
 class Palette:
-    """A ramp of colours from the lowest to the highest density, strictly monotone in lightness.
+    """A ramp of colours from the lowest to the highest density or value, or a list of colours.
 
     Attributes
     ----------
@@ -29,13 +38,17 @@ class Palette:
         Name of a list of colours in colorcet, or the stops themselves as ``#rrggbb``.
     first, last : float
         CIE lightness of the lowest and of the highest shade, 0 to 100. Cut out of a colorcet list, a ramp
-        for print starts near 90, so that the lightest occupied cell still stands out from white paper.
+        for print starts near 90, so that the lightest occupied cell still stands out from white paper. A
+        diverging palette runs from ``last`` to ``first`` at its centre and back; cyclic and categorical ones
+        are taken as they are.
     background, missing : str
         Colours of an empty cell and of a cell without any sample, ``#rrggbb``.
     safe_for : tuple of str
         Kinds of colour blindness under which the ramp keeps its order of lightness and its contrast.
     note : str
         One line for the list of palettes.
+    kind : {"sequential", "diverging", "cyclic", "categorical"}
+        What it is fit for.
     """
 
     name: str
@@ -46,13 +59,14 @@ class Palette:
     missing: str = "#f0f0f0"
     safe_for: tuple[str, ...] = ()
     note: str = ""
+    kind: Literal["sequential", "diverging", "cyclic", "categorical"] = "sequential"
 
     @property
     def stops(self) -> tuple[str, ...]:
-        """Colours ``#rrggbb`` at equal steps of lightness, lowest density first."""
+        """Colours ``#rrggbb``, lowest density first: at equal steps of lightness, or around the cycle."""
         if not isinstance(self.source, str):
             return self.source
-        return _cut(self.source, self.first, self.last)
+        return _CUTS[self.kind](self.source, self.first, self.last)
 
 
 _RED_GREEN = ("protanopia", "deuteranopia")
@@ -100,6 +114,31 @@ PALETTES = {
         Palette("dusk", "linear_bmy_10_95_c71", last=12.0, note="yellow to magenta to navy"),
         _on_dark("night", "linear_blue_5_95_c73", "blue to cyan on a dark ground", _ALL),
         _on_dark("glow", "linear_kryw_5_100_c67", "red to pale yellow on a dark ground"),
+        Palette(
+            "balance",
+            "diverging_bwr_20_95_c54",
+            last=22.0,
+            safe_for=_ALL,
+            note="navy to pale at zero to dark red, for signed values",
+            kind="diverging",
+        ),
+        Palette(
+            "wheel",
+            "cyclic_wrkbw_10_90_c43",
+            safe_for=_ALL,
+            note="pale, red, black, blue and round to pale, for angles and rotation numbers",
+            kind="cyclic",
+        ),
+        Palette(
+            "kinds",
+            (
+                *("#7ecaff", "#d8a10a", "#bc0049", "#0054c1", "#aa7200", "#008069", "#5d90ff"),
+                *("#645474", "#8cb893", "#854f01", "#c1a5c4", "#8e8c5e", "#7e6ebc"),
+            ),
+            safe_for=_ALL,
+            note="separate colours for fates, periods, attractors and basins",
+            kind="categorical",
+        ),
     )
 }
 
@@ -177,6 +216,42 @@ def _cut(source: str, first: float, last: float) -> tuple[str, ...]:
     colours: list[str] = list(colorcet.palette[source])
     heights = [lightness(each) for each in colours]
     targets = (first + (last - first) * step / (STOPS - 1) for step in range(STOPS))
-    return tuple(
-        colours[min(range(len(colours)), key=lambda at: abs(heights[at] - target))] for target in targets
+    return tuple(_nearest(colours, heights, target) for target in targets)
+
+
+@lru_cache(maxsize=32)
+def _cut_both(source: str, centre: float, ends: float) -> tuple[str, ...]:
+    """Return stops of equal lightness on both sides; the two innermost differ, so that signs do."""
+    import colorcet
+
+    colours: list[str] = list(colorcet.palette[source])
+    half = len(colours) // 2
+    sides = colours[:half], colours[half:]
+    low, high = (
+        [_nearest(side, [lightness(each) for each in side], target) for target in _steps(ends, centre)]
+        for side in sides
     )
+    return (*low, *reversed(high))
+
+
+@lru_cache(maxsize=32)
+def _around(source: str, first: float, last: float) -> tuple[str, ...]:
+    """Return stops at equal steps around a cycle, the last one shade before the first."""
+    import colorcet
+
+    colours: list[str] = list(colorcet.palette[source])
+    return tuple(
+        colours[round(step / (STOPS - 1) * (1 - 1 / _SHADES) * len(colours)) % len(colours)]
+        for step in range(STOPS)
+    )
+
+
+def _steps(first: float, last: float) -> list[float]:
+    return [first + (last - first) * step / (_SIDE - 1) for step in range(_SIDE)]
+
+
+def _nearest(colours: list[str], heights: list[float], target: float) -> str:
+    return colours[min(range(len(colours)), key=lambda at: abs(heights[at] - target))]
+
+
+_CUTS = {"sequential": _cut, "diverging": _cut_both, "cyclic": _around}

@@ -15,6 +15,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from tiles.classes import COLOURS, class_table
 from tiles.curve import LEVELS, SHADINGS, thresholds
 from tiles.errors import Refusal, nearest
 from tiles.key import ramp_labels
@@ -247,6 +248,8 @@ def colour_table(
     `tiles.colour_tables`, and a test compares that file with datashader's answer byte for byte. A palette
     of the caller's own goes to datashader.
 
+    A categorical palette gives the colours of the indices that `tiles.classes.class_shades` yields.
+
     Parameters
     ----------
     given : Palette or str
@@ -269,7 +272,9 @@ def colour_table(
     from tiles.colour_tables import SHADES
 
     chosen = palette(given) if isinstance(given, str) else given
-    if shading == "ink" and chosen == PALETTES["grey"]:
+    if chosen.kind == "categorical":
+        shades = _shades_of_classes()
+    elif shading == "ink" and chosen == PALETTES["grey"]:
         shades = np.zeros((LEVELS, 3), np.uint8)
         missing = missing or background or chosen.background
     elif PALETTES.get(chosen.name) == chosen and chosen.name in SHADES:
@@ -280,13 +285,31 @@ def colour_table(
     return np.concatenate([np.array(ends[:1], np.uint8), shades, np.array(ends[1:], np.uint8)])
 
 
+def _shades_of_classes() -> NDArray[np.uint8]:
+    """Return the colours that `tiles.classes.class_shades` looks up, filled up with white."""
+    shades = np.full((LEVELS, 3), 255, np.uint8)
+    shades[: COLOURS - 1] = class_table()[1:]
+    return shades
+
+
 def shades_by_datashader(given: Palette) -> NDArray[np.uint8]:
-    """Return the colours of shades 1 to ``LEVELS``, shape (LEVELS, 3), as datashader shades a linear ramp."""
+    """Return the colours of shades 1 to ``LEVELS``, shape (LEVELS, 3), as datashader shades a linear ramp.
+
+    The two sides of a diverging palette are ramps of their own, so that no shade mixes their colours.
+    """
+    stops = list(given.stops)
+    if given.kind != "diverging":
+        return _ramp(stops, LEVELS)
+    sides = stops[: len(stops) // 2], stops[len(stops) // 2 :]
+    return np.concatenate([_ramp(side, LEVELS // 2) for side in sides])
+
+
+def _ramp(stops: list[str], shades: int) -> NDArray[np.uint8]:
     from datashader import transfer_functions  # here, because it takes over a second and 200 MB
 
-    ramp = transfer_functions.Image(np.linspace(0, 1, LEVELS)[None, :], dims=("up", "across"))
-    image = transfer_functions.shade(ramp, cmap=list(given.stops), how="linear", span=(0, 1))
-    return np.ascontiguousarray(image.to_numpy()).view(np.uint8).reshape(LEVELS, 4)[:, :3].copy()
+    ramp = transfer_functions.Image(np.linspace(0, 1, shades)[None, :], dims=("up", "across"))
+    image = transfer_functions.shade(ramp, cmap=stops, how="linear", span=(0, 1))
+    return np.ascontiguousarray(image.to_numpy()).view(np.uint8).reshape(shades, 4)[:, :3].copy()
 
 
 def _known(shading: str) -> None:

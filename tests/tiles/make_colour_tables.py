@@ -19,6 +19,8 @@ def text() -> str:
     """Return the whole module."""
     lines = [HEAD, "SHADES = {\n"]
     for name, row in PALETTES.items():
+        if row.kind == "categorical":
+            continue
         digits = shades_by_datashader(row).tobytes().hex()
         lines.append(f'    "{name}": (\n')
         lines.extend(f'        "{digits[at : at + 96]}"\n' for at in range(0, len(digits), 96))

@@ -11,36 +11,22 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from tiles.palette import PALETTES, STOPS, PaletteRefused, colour, lightness, palette
+from tests.tiles.colour_vision import EYES, MACHADO, difference, lab, seen_by
+from tiles.palette import KINDS, PALETTES, STOPS, PaletteRefused, colour, lightness, palette
 from tiles.shading import LEVELS, MISSING, colour_table
 
-# Machado, Oliveira & Fernandes (2009), IEEE Trans. Vis. Comput. Graphics 15, 1291-1298: full severity, for
-# linear sRGB. Matrices cited from memory; a test below checks that they leave greys unchanged.
-MACHADO = {
-    "protanopia": (
-        (0.152286, 1.052583, -0.204868),
-        (0.114503, 0.786281, 0.099216),
-        (-0.003882, -0.048116, 1.051998),
-    ),
-    "deuteranopia": (
-        (0.367322, 0.860646, -0.227968),
-        (0.280085, 0.672501, 0.047413),
-        (-0.011820, 0.042940, 0.968881),
-    ),
-    "tritanopia": (
-        (1.255528, -0.076749, -0.178779),
-        (-0.078411, 0.930809, 0.147602),
-        (0.004733, 0.691367, 0.303900),
-    ),
-}
+SEQUENTIAL = [row.name for row in PALETTES.values() if row.kind == "sequential"]
+RAMPS = [row.name for row in PALETTES.values() if row.kind != "categorical"]
 
 
 def seen(stops, kind):
     """Return the lightness of colours as simulated for a kind of colour blindness."""
-    levels = np.array([colour(stop) for stop in stops]) / 255
-    linear = np.where(levels <= 0.04045, levels / 12.92, ((levels + 0.055) / 1.055) ** 2.4)
-    luminance = np.clip(linear @ np.array(MACHADO[kind]).T, 0, 1) @ [0.2126, 0.7152, 0.0722]
-    return np.where(luminance <= 216 / 24389, luminance * 24389 / 27, 116 * np.cbrt(luminance) - 16)
+    return lab(seen_by([colour(stop) for stop in stops], kind))[..., 0]
+
+
+def shades(name):
+    """Return the shades of a ramp, shape (LEVELS, 3)."""
+    return colour_table(name)[1 : LEVELS + 1]
 
 
 def test_there_are_enough_palettes_and_their_names_are_plain_words():
@@ -48,9 +34,10 @@ def test_there_are_enough_palettes_and_their_names_are_plain_words():
     assert all(name.isalpha() and name.islower() and row.name == name for name, row in PALETTES.items())
     assert sum("deuteranopia" in row.safe_for for row in PALETTES.values()) >= 4
     assert all(row.note for row in PALETTES.values())
+    assert {row.kind for row in PALETTES.values()} == set(KINDS)
 
 
-@pytest.mark.parametrize("name", PALETTES)
+@pytest.mark.parametrize("name", SEQUENTIAL)
 def test_stops_change_lightness_by_nearly_equal_steps(name):
     row = palette(name)
     heights = [lightness(stop) for stop in row.stops]
@@ -61,7 +48,7 @@ def test_stops_change_lightness_by_nearly_equal_steps(name):
     assert abs(heights[-1] - row.last) < 6 if name == "grey" else abs(heights[-1] - row.last) < 1
 
 
-@pytest.mark.parametrize("name", PALETTES)
+@pytest.mark.parametrize("name", SEQUENTIAL)
 def test_every_shade_differs_in_lightness_from_the_one_before(name):
     heights = [lightness(tuple(map(int, row))) for row in colour_table(name)[1 : LEVELS + 1]]
     steps = np.diff(heights) * np.sign(heights[-1] - heights[0])
@@ -69,7 +56,7 @@ def test_every_shade_differs_in_lightness_from_the_one_before(name):
     assert abs(heights[-1] - heights[0]) > 60
 
 
-@pytest.mark.parametrize("name", PALETTES)
+@pytest.mark.parametrize("name", SEQUENTIAL)
 def test_the_lowest_shade_stands_out_from_the_ground(name):
     table = [tuple(map(int, row)) for row in colour_table(name)]
     ground, lowest, missing = lightness(table[0]), lightness(table[1]), lightness(table[MISSING])
@@ -82,7 +69,7 @@ def test_the_lowest_shade_stands_out_from_the_ground(name):
 
 
 @pytest.mark.parametrize(
-    ("name", "kind"), [(row.name, kind) for row in PALETTES.values() for kind in row.safe_for]
+    ("name", "kind"), [(name, kind) for name in SEQUENTIAL for kind in palette(name).safe_for]
 )
 def test_palettes_called_safe_stay_monotone_for_colour_blind_eyes(name, kind):
     heights = seen(palette(name).stops, kind)
@@ -91,9 +78,63 @@ def test_palettes_called_safe_stay_monotone_for_colour_blind_eyes(name, kind):
     assert steps.sum() > 60
 
 
+def test_a_diverging_ramp_darkens_equally_from_a_pale_centre():
+    heights = np.array([lightness(tuple(map(int, row))) for row in shades("balance")])
+    half = LEVELS // 2
+    assert np.abs(heights - heights[::-1]).max() < 0.5
+    assert (np.diff(heights[:half]) > 0).all()
+    assert (np.diff(heights[half:]) < 0).all()
+    assert 89 < heights[half] < 91
+    assert heights[0] < 23
+    table = [lightness(tuple(map(int, row))) for row in colour_table("balance")]
+    assert table[0] - max(heights) > 9.5
+    assert table[0] - 3 > table[MISSING] > max(heights) + 3
+
+
+@pytest.mark.parametrize("eyes", EYES)
+def test_signs_are_told_apart_on_a_diverging_ramp(eyes):
+    colours = lab(seen_by(shades("balance"), eyes))
+    half = LEVELS // 2
+    apart = difference(colours[:half][::-1], colours[half:])
+    assert apart[:2].min() > 2.3
+    assert apart[half // 8 :].min() > 15
+    assert (np.diff(colours[:half, 0]) > 0).all()
+    assert (np.diff(colours[half:, 0]) < 0).all()
+
+
+@pytest.mark.parametrize("eyes", EYES)
+def test_a_cyclic_ramp_closes_and_no_two_of_its_quarters_look_alike(eyes):
+    colours = lab(seen_by(shades("wheel"), eyes))
+    steps = difference(colours, np.roll(colours, -1, axis=0))
+    assert steps[-1] < 1.5 * steps.max()
+    assert steps.max() < 2.5
+    turned = [difference(colours, np.roll(colours, by, axis=0)) for by in range(LEVELS // 4, LEVELS // 2 + 1)]
+    assert np.min(turned) > 20
+    turned = [difference(colours, np.roll(colours, by, axis=0)) for by in range(LEVELS // 8, LEVELS // 4)]
+    assert np.min(turned) > 10
+
+
+def test_colours_of_a_categorical_palette_stand_in_lists_for_that_purpose():
+    import colorcet
+
+    lists = [colours for name, colours in colorcet.palette.items() if name.startswith("glasbey")]
+    assert set(palette("kinds").stops) <= {each.lower() for colours in lists for each in colours}
+
+
 def test_the_simulation_leaves_greys_alone():
     for kind in MACHADO:
         assert np.abs(np.array(MACHADO[kind]).sum(axis=1) - 1).max() < 2e-6
+
+
+def test_differences_of_colours_are_the_published_ones():
+    # pairs out of Sharma, Wu & Dalal (2005), table 1; from memory
+    for one, other, expected in (
+        ((50, 2.6772, -79.7751), (50, 0, -82.7485), 2.0425),
+        ((50, 2.5, 0), (50, 0, -2.5), 4.3065),
+        ((50, 2.5, 0), (73, 25, -18), 27.1492),
+        ((2.0776, 0.0795, -1.1350), (0.9033, -0.0636, -0.5514), 0.9082),
+    ):
+        assert difference(np.array(one), np.array(other)) == pytest.approx(expected, abs=5e-5)
 
 
 def test_grey_is_grey():
@@ -107,7 +148,7 @@ def test_stops_are_colours_of_the_list_they_name():
     for row in PALETTES.values():
         if isinstance(row.source, str):
             assert set(row.stops) <= set(colorcet.palette[row.source])
-            assert len(set(row.stops)) == STOPS
+            assert len(set(row.stops)) == (26 if row.kind == "diverging" else STOPS)
 
 
 @pytest.mark.parametrize(
