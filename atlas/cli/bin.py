@@ -41,7 +41,7 @@ class Column(click.ParamType[Any]):
 @click.option("--size", metavar="SIZE", help="180x110 (mm) or 1200x800px.")
 @click.option("--dpi", metavar="N", help="Pixels per inch.")
 @click.option("--key", is_flag=True, default=None, help="Colour key beside the picture.")
-@colour_options()
+@colour_options(densities_only=True)
 @click.option("--background", metavar="#RRGGBB", help="Colour of empty cells.")
 @click.option("--title", metavar="TEXT", help="Title above the frame, or of the page.")
 @workers_and_memory

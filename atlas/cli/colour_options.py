@@ -10,20 +10,30 @@ from collections.abc import Callable
 import click
 
 from atlas.cli.options import F
+from atlas.config.view_kind import kind_of_palette
 from tiles.palette import PALETTES, Palette
 from tiles.shading import SHADINGS
 
+_USES = {
+    "sequential": "of densities and steps",
+    "diverging": "of exponents",
+    "cyclic": "of rotation numbers",
+    "categorical": "of fates, periods and attractors",
+}
 _MOST_KINDS = max(len(palette.safe_for) for palette in PALETTES.values())
 
 
-def colour_options(default: str = "") -> Callable[[F], F]:
+def colour_options(default: str = "", *, densities_only: bool = False) -> Callable[[F], F]:
     """Return a decorator that adds ``--shading`` and ``--palette``.
 
     Parameters
     ----------
     default : str
         What the help says of the default, after a semicolon.
+    densities_only : bool
+        Whether nothing but densities is drawn, so that other palettes have no use.
     """
+    kinds = ("sequential",) if densities_only else tuple(_USES)
     ending = f"; {default}." if default else "."
     shading = click.option(
         "--shading",
@@ -31,16 +41,29 @@ def colour_options(default: str = "") -> Callable[[F], F]:
         help=f"How density becomes shade: {', '.join(SHADINGS)}{ending} Ink on grey is black and white.",
     )
     palette = click.option(
-        "--palette", metavar="NAME", help=f"Colours of the shades: {', '.join(PALETTES)}{ending} {_safe()}"
+        "--palette", metavar="NAME", help=f"Colours{_listed(kinds)}{ending} {_safe(kinds)}"
     )
     return lambda function: shading(palette(function))
 
 
-def _safe() -> str:
+def _listed(kinds: tuple[str, ...]) -> str:
+    """Return the palettes by what they are for."""
+    by_kind: dict[str, list[str]] = {}
+    for name in PALETTES:
+        by_kind.setdefault(kind_of_palette(name), []).append(name)
+    return ";".join(f" {_USES[kind]}: {', '.join(by_kind[kind])}" for kind in kinds if kind in by_kind)
+
+
+def _safe(kinds: tuple[str, ...]) -> str:
     """Return which palettes colour-blind readers tell apart, all of them and those blind to red and green."""
-    for_all = _named(lambda row: len(row.safe_for) == _MOST_KINDS)
-    for_some = _named(lambda row: 0 < len(row.safe_for) < _MOST_KINDS)
-    return f"Safe for colour-blind readers: {for_all}; for those blind to red or green also: {for_some}."
+
+    def of(fewest: int, most: int) -> str:
+        return _named(lambda row: kind_of_palette(row.name) in kinds and fewest <= len(row.safe_for) <= most)
+
+    return (
+        f"Safe for colour-blind readers: {of(_MOST_KINDS, _MOST_KINDS)}; "
+        f"for those blind to red or green also: {of(1, _MOST_KINDS - 1)}."
+    )
 
 
 def _named(chosen: Callable[[Palette], bool]) -> str:

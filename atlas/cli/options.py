@@ -64,6 +64,33 @@ class Setting(click.ParamType[Any]):
         return (name.strip(), number.strip())
 
 
+class Settings(click.ParamType[Any]):
+    """``name=value`` pairs joined by commas, of which each name stands once.
+
+    Parameters
+    ----------
+    example : str
+        What a refusal shows.
+    """
+
+    name = "NAME=VALUE,..."
+
+    def __init__(self, example: str) -> None:
+        self.example = example
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> Any:
+        if not isinstance(value, str):
+            return value
+        one = Setting(self.example)
+        found: dict[str, str] = {}
+        for pair in value.split(","):
+            name, number = one.convert(pair, param, ctx)
+            if name in found:
+                self.fail(f"{shown(name)} is given twice; give it once", param, ctx)
+            found[name] = number
+        return found
+
+
 class Workers(click.ParamType[Any]):
     """A number of threads."""
 

@@ -28,17 +28,31 @@ def plate_of(
     family: Family,
     across: tuple[str, str, str] | None,
     up: tuple[str, str, str] | None,
-    start: tuple[tuple[str, str], ...],
+    start: tuple[dict[str, str], ...],
     **options: Any,
 ) -> Plate:
     """Return the plate that ``atlas draw`` is asked for; the family's own view fills what is left out."""
+    settings = {name: _setting(value) for name, value in options.pop("set", {}).items()}
     left, right = across or family.across, up or family.up
     if left is None or right is None:
         raise ConfigRefused(_no_view(family, left is None, right is None))
-    starts = [{name: value} for name, value in start] or None
     return plate_from_parts(
-        family, left, right, starts=starts, name=family.name, place=COMMAND_LINE, **options
+        family,
+        left,
+        right,
+        set=settings,
+        starts=start or None,
+        name=family.name,
+        place=COMMAND_LINE,
+        **options,
     )
+
+
+def _setting(value: str) -> Any:
+    """Return a number as it is, and entries joined by commas as a pattern; one entry ends in a comma."""
+    if "," not in value:
+        return value
+    return {"pattern": [entry.strip() for entry in value.removesuffix(",").split(",")]}
 
 
 def _no_view(family: Family, across: bool, up: bool) -> str:

@@ -200,7 +200,7 @@ def plate_from_parts(
     up: AxisLike,
     *,
     set: Mapping[str, Any] | None = None,
-    starts: Sequence[Mapping[str, Any]] | None = None,
+    starts: Sequence[Mapping[str, Any]] | Mapping[str, Any] | None = None,
     name: str = "plate",
     place: Place = REQUEST,
     **options: Any,
@@ -214,15 +214,17 @@ def plate_from_parts(
     across, up : Axis, (name, low, high) or mapping
         The axes.
     set : mapping of str to number, optional
-        Values of parameters.
-    starts : sequence of mapping of str to number, optional
-        States to start from.
+        Values of parameters; of a pattern ``{"pattern": ["a", "a", "b"]}``.
+    starts : sequence of mapping of str to number, or mapping, optional
+        States to start from, or ``{"grid": [8, 8], "box": {"x": [0, 1], "y": [0, 1]}}``.
     name : str
         Name of the output.
     place : Place
         How a refusal calls the parts: ``across`` by default, ``--across`` with ``COMMAND_LINE``.
     **options
-        Any other key of a plate in a config; None means not given.
+        Any other key of a plate in a config, such as ``draw="lyapunov"``, ``follow="both"``,
+        ``record={"every": 12, "phase": 3}``, ``by_attractor=True``, ``extinct={"n": 1e-6}``, ``steps=4000``
+        or ``supersampling=2``; None means not given.
 
     Returns
     -------
@@ -237,6 +239,8 @@ def plate_from_parts(
     --------
     >>> plate_from_parts("logistic", ("r", "2.8", 4), ("x", 0, 1), size="1200x800px").pixels
     (1200, 800)
+    >>> plate_from_parts("hassell", ("growth", 5, 100), ("beta", 2, 10)).kind
+    'plane'
     """
     parts = {"family": family, "across": across, "up": up, "set": set, "starts": starts, **options}
     parts = {key: value for key, value in parts.items() if value is not None}

@@ -19,6 +19,7 @@ from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from atlas.cli import COMMANDS, main
+from atlas.config.view_kind import kind_of_palette
 from atlas.families.catalogue import NAMES
 from atlas.output.certificate import read
 from atlas.output.printing import Made
@@ -98,8 +99,12 @@ def test_every_command_explains_itself(name: str) -> None:
 def test_help_lists_shadings_and_palettes_and_which_are_safe(name: str) -> None:
     printed = " ".join(done(name, "--help").split()).replace("- ", "-")
     assert f"How density becomes shade: {', '.join(SHADINGS)}" in printed
-    assert f"Colours of the shades: {', '.join(PALETTES)}" in printed
-    kinds = {palette.name: len(palette.safe_for) for palette in PALETTES.values()}
+    shown = [row for row in PALETTES.values() if name != "bin" or kind_of_palette(row.name) == "sequential"]
+    densities = [row.name for row in shown if kind_of_palette(row.name) == "sequential"]
+    assert f"Colours of densities and steps: {', '.join(densities)}" in printed
+    assert all(re.search(rf"Colours .*\b{row.name}\b.*Safe for", printed) for row in shown)
+    assert ("of exponents" in printed) == (name != "bin" and len(shown) > len(densities))
+    kinds = {row.name: len(row.safe_for) for row in shown}
     safe, half = ([name for name, count in kinds.items() if count == wanted] for wanted in (3, 2))
     assert f"Safe for colour-blind readers: {', '.join(safe)}; for those blind" in printed
     assert f"blind to red or green also: {', '.join(half)}." in printed
@@ -272,7 +277,10 @@ WRONG_WORDS: list[tuple[tuple[str, ...], str]] = [
     (("draw", "logistic", "--across", "r=1:inf", *TO), "--across.high: 'inf' is not a number"),
     (("draw", "logistic", "--across", "q=1:2", *TO), "no parameter or state variable 'q'; allowed: r, x"),
     (("draw", "logistic", "--up", "r=1:2", *TO), "'r' stands on both axes"),
-    (("draw", "logistic", "--across", "x=0:1", "--up", "r=1:2", *TO), "(r) up cannot be drawn; swap the axes"),
+    (
+        ("draw", "logistic", "--across", "x=0:1", "--up", "r=1:2", *TO),
+        "(r) up cannot be drawn; swap the axes",
+    ),
     (("draw", "{small}", *TO), "--across and --up: the family 'sound' has no view of its own; write for"),
     (("draw", "{small}", *TO), "write for instance --across h=LOW:HIGH --up n=LOW:HIGH"),
     (("draw", "{small}", "--across", "r=1:2", *TO), "of its own; write for instance --up n=LOW:HIGH"),
