@@ -10,11 +10,12 @@ import pytest
 from PIL import Image
 
 import atlas
-from atlas.families.catalogue import NAMES, family
+from atlas.families.catalogue import family
 from atlas.output.printing import sheet_of
 from atlas.reading.sheet import Size
+from tests.reference.rows import drawn_rows
 
-each_family = pytest.mark.parametrize("name", NAMES)
+each_family = pytest.mark.parametrize("name", drawn_rows())
 
 
 def default_plate(name: str) -> Any:

@@ -183,10 +183,11 @@ def test_equal_parts_are_computed_once() -> None:
 def test_steps_of_the_catalogue_agree_with_sixty_digits(name: str) -> None:
     """Where the step is of the size of its state it is right to a few units of 2^-52."""
     own = family(name)
-    (step,) = own.inlined_step()
     fixed = {parameter.name: float(parameter.default) for parameter in own.parameters}
-    for x in np.random.default_rng(1).uniform(0.01, 0.99, 50):
-        values = {"x": float(x), **fixed}
-        exact = value(step, {key: mpmath.mpf(number) for key, number in values.items()})
-        size = max(abs(float(exact)), abs(values["x"]))
-        assert straight(step, values) == pytest.approx(float(exact), rel=0, abs=40 * 2.0**-52 * size)
+    fixed |= {pattern.name: fixed[str(pattern.entries[0])] for pattern in own.patterns}
+    for point in np.random.default_rng(1).uniform(0.01, 0.99, (50, len(own.states))).tolist():
+        values = {**fixed, **dict(zip(own.state_names, point, strict=True))}
+        for step in own.inlined_step():
+            exact = value(step, {key: mpmath.mpf(number) for key, number in values.items()})
+            size = max(abs(float(exact)), *point, 1.0 if len(point) > 1 else 0.0)
+            assert straight(step, values) == pytest.approx(float(exact), rel=0, abs=40 * 2.0**-52 * size)
