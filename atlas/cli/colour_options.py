@@ -10,7 +10,6 @@ from collections.abc import Callable
 import click
 
 from atlas.cli.options import F
-from atlas.config.view_kind import kind_of_palette
 from tiles.palette import PALETTES, Palette
 from tiles.shading import SHADINGS
 
@@ -49,8 +48,8 @@ def colour_options(default: str = "", *, densities_only: bool = False) -> Callab
 def _listed(kinds: tuple[str, ...]) -> str:
     """Return the palettes by what they are for."""
     by_kind: dict[str, list[str]] = {}
-    for name in PALETTES:
-        by_kind.setdefault(kind_of_palette(name), []).append(name)
+    for name, palette in PALETTES.items():
+        by_kind.setdefault(palette.kind, []).append(name)
     return ";".join(f" {_USES[kind]}: {', '.join(by_kind[kind])}" for kind in kinds if kind in by_kind)
 
 
@@ -58,7 +57,7 @@ def _safe(kinds: tuple[str, ...]) -> str:
     """Return which palettes colour-blind readers tell apart, all of them and those blind to red and green."""
 
     def of(fewest: int, most: int) -> str:
-        return _named(lambda row: kind_of_palette(row.name) in kinds and fewest <= len(row.safe_for) <= most)
+        return _named(lambda row: row.kind in kinds and fewest <= len(row.safe_for) <= most)
 
     return (
         f"Safe for colour-blind readers: {of(_MOST_KINDS, _MOST_KINDS)}; "

@@ -140,7 +140,8 @@ def _of_its_kind(
             continue
         value = job[key.name]
         if key.name in given and value != key.default and value not in ({}, None):
-            homes = " and ".join(KINDS[home] for home in key.only_for)
+            *first, last = (KINDS[home] for home in key.only_for)
+            homes = f"{', '.join(first)} or {last}"
             raise place.at(key.name).refusal(
                 f"{_value_text(key, value)} belongs to {homes}, and this is {KINDS[kind]}; leave it away"
             )

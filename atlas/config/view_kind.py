@@ -147,20 +147,15 @@ def checked_palette(draw: str, given: str | None, explicit: bool, place: Place) 
         When a palette given for this output does not fit, with those that do.
     """
     row = DRAWS[draw]
-    fitting = [name for name in PALETTES if kind_of_palette(name) == row.palette_kind]
-    if given in fitting:
-        return str(given)
-    if given is not None and explicit and fitting:
-        raise place.refusal(
-            f"{shown(given)} is a {kind_of_palette(given)} palette and {draw} needs a {row.palette_kind} "
-            f"one; allowed: {', '.join(fitting)}"
-        )
-    return row.palette if row.palette in PALETTES else "blue"
-
-
-def kind_of_palette(name: str) -> str:
-    """Return the kind of a palette: sequential, diverging, cyclic or categorical."""
-    return str(getattr(PALETTES[name], "kind", "sequential"))
+    if given is None or PALETTES[given].kind != row.palette_kind:
+        if given is not None and explicit:
+            fitting = ", ".join(name for name, one in PALETTES.items() if one.kind == row.palette_kind)
+            raise place.refusal(
+                f"{shown(given)} is a {PALETTES[given].kind} palette and {draw} needs a {row.palette_kind} "
+                f"one; allowed: {fitting}"
+            )
+        return row.palette
+    return given
 
 
 def _one(kind: str) -> str:

@@ -19,7 +19,6 @@ from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from atlas.cli import COMMANDS, main
-from atlas.config.view_kind import kind_of_palette
 from atlas.families.catalogue import NAMES
 from atlas.output.certificate import read
 from atlas.output.printing import Made
@@ -99,8 +98,8 @@ def test_every_command_explains_itself(name: str) -> None:
 def test_help_lists_shadings_and_palettes_and_which_are_safe(name: str) -> None:
     printed = " ".join(done(name, "--help").split()).replace("- ", "-")
     assert f"How density becomes shade: {', '.join(SHADINGS)}" in printed
-    shown = [row for row in PALETTES.values() if name != "bin" or kind_of_palette(row.name) == "sequential"]
-    densities = [row.name for row in shown if kind_of_palette(row.name) == "sequential"]
+    shown = [row for row in PALETTES.values() if name != "bin" or row.kind == "sequential"]
+    densities = [row.name for row in shown if row.kind == "sequential"]
     assert f"Colours of densities and steps: {', '.join(densities)}" in printed
     assert all(re.search(rf"Colours .*\b{row.name}\b.*Safe for", printed) for row in shown)
     assert ("of exponents" in printed) == (name != "bin" and len(shown) > len(densities))

@@ -15,7 +15,6 @@ from hypothesis import strategies as st
 from atlas.config.keys import FORMATS, SECTIONS
 from atlas.config.load import counting_digest, digest, normalised, parse_config, plate_from_parts
 from atlas.config.remake import from_normalised
-from atlas.config.view_kind import kind_of_palette
 from atlas.errors import ConfigRefused
 from atlas.reading.yaml_text import read_yaml
 from tiles.palette import PALETTES
@@ -145,7 +144,7 @@ class TestDigests:
     @given(
         size=st.sampled_from(["90x60", "1000x500px", "85.5x60.25"]),
         formats=st.lists(st.sampled_from(sorted(FORMATS)), min_size=1, unique=True),
-        palette=st.sampled_from([name for name in PALETTES if kind_of_palette(name) == "sequential"]),
+        palette=st.sampled_from([name for name, row in PALETTES.items() if row.kind == "sequential"]),
         low=st.fractions(Fraction(1, 100), 2, max_denominator=997),
         width=st.floats(0.001, 2),
         font=st.floats(3, 72),
