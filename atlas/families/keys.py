@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from atlas.families.kinds import NUMBER, Formula, Interval, Named, Positive, Prose
+from atlas.families.kinds import NUMBER, Formula, Named, Positive, Prose
 from atlas.families.patterns import PatternKind
 from atlas.reading.kinds import Schema, Text
+from atlas.reading.orbit_kinds import Interval
 from atlas.reading.place import Place
 from atlas.reading.section import Key, read_section, section_schema
 from atlas.reading.view_kinds import AxisKind

@@ -1,4 +1,4 @@
-"""Kinds of value that the entry of a map family holds: intervals, bounds, prose, formulas by name."""
+"""Kinds of value that the entry of a map family holds: bounds, prose, formulas by name."""
 
 from __future__ import annotations
 
@@ -14,28 +14,6 @@ from tiles.number import Exact
 
 LONGEST_NOTE = 2000
 NUMBER = Number()
-
-
-@dataclass(frozen=True)
-class Interval(Kind[tuple[Exact, Exact]]):
-    """``[low, high]``, the lower end first."""
-
-    @property
-    def allowed(self) -> str:
-        return "[low, high] with the lower end first"
-
-    def read(self, given: Any, place: Place) -> tuple[Exact, Exact]:
-        if not isinstance(given, list | tuple) or len(given) != 2:
-            raise place.refusal(f"{shown(given)} is not an interval; write {self.allowed}")
-        low, high = (NUMBER.read(end, place) for end in given)
-        if not low < high:
-            raise place.refusal(
-                f"the interval from {low} to {high} is empty or reversed; write {self.allowed}"
-            )
-        return low, high
-
-    def schema(self) -> Schema:
-        return {"type": "array", "items": NUMBER.schema(), "minItems": 2, "maxItems": 2}
 
 
 @dataclass(frozen=True)

@@ -1,4 +1,4 @@
-"""Kinds of value that say how orbits are run: numbers by name, what is recorded."""
+"""Kinds of value that say how orbits are run: numbers by name, intervals, what is recorded."""
 
 from __future__ import annotations
 
@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from typing import Any, NamedTuple
 
 from atlas.reading.kinds import NUMBER_SCHEMA, Kind, Number, Schema, Whole
-from atlas.reading.place import Place
+from atlas.reading.place import Place, shown
 from atlas.reading.section import Key, read_section, section_schema, text_keys
 from tiles.number import Exact
 
@@ -39,6 +39,28 @@ class NumbersKind(Kind[dict[str, Exact]]):
 
     def write(self, value: dict[str, Exact]) -> Any:
         return {name: NUMBER.write(number) for name, number in sorted(value.items())}
+
+
+@dataclass(frozen=True)
+class Interval(Kind[tuple[Exact, Exact]]):
+    """``[low, high]``, the lower end first."""
+
+    @property
+    def allowed(self) -> str:
+        return "[low, high] with the lower end first"
+
+    def read(self, given: Any, place: Place) -> tuple[Exact, Exact]:
+        if not isinstance(given, list | tuple) or len(given) != 2:
+            raise place.refusal(f"{shown(given)} is not an interval; write {self.allowed}")
+        low, high = (NUMBER.read(end, place) for end in given)
+        if not low < high:
+            raise place.refusal(
+                f"the interval from {low} to {high} is empty or reversed; write {self.allowed}"
+            )
+        return low, high
+
+    def schema(self) -> Schema:
+        return {"type": "array", "items": NUMBER.schema(), "minItems": 2, "maxItems": 2}
 
 
 class Record(NamedTuple):

@@ -9,14 +9,14 @@ from itertools import product
 from math import prod
 from typing import Any
 
-from atlas.reading.kinds import NUMBER_SCHEMA, Kind, Number, Schema, Whole
-from atlas.reading.orbit_kinds import NumbersKind
+from atlas.reading.kinds import Kind, Schema, Whole
+from atlas.reading.orbit_kinds import Interval, NumbersKind
 from atlas.reading.place import Place, shown
 from atlas.reading.section import Key, read_section, section_schema, text_keys
 from tiles.number import Exact
 
 MOST_STARTS = 4096
-NUMBER = Number()
+SIDE = Interval()
 COUNT = Whole(1, 1 << 31)
 
 
@@ -52,13 +52,7 @@ class BoxKind(Kind[dict[str, tuple[Exact, Exact]]]):
         return box
 
     def _side(self, given: Any, place: Place) -> tuple[Exact, Exact]:
-        if not isinstance(given, list | tuple) or len(given) != 2:
-            raise place.refusal(f"{shown(given)} is not an interval; write [low, high]")
-        low, high = NUMBER.read(given[0], place.at(1)), NUMBER.read(given[1], place.at(2))
-        if not low < high:
-            raise place.refusal(
-                f"the interval from {low} to {high} is empty or reversed; the lower end is first"
-            )
+        low, high = SIDE.read(given, place)
         if low.value and high.value and low.of_pi != high.of_pi:
             raise place.refusal(
                 f"the interval from {low} to {high} mixes a plain number and a multiple of pi; "
@@ -67,8 +61,7 @@ class BoxKind(Kind[dict[str, tuple[Exact, Exact]]]):
         return low, high
 
     def schema(self) -> Schema:
-        side = {"type": "array", "items": dict(NUMBER_SCHEMA), "minItems": 2, "maxItems": 2}
-        return {"type": "object", "additionalProperties": side, "minProperties": 1}
+        return {"type": "object", "additionalProperties": SIDE.schema(), "minProperties": 1}
 
 
 GRID_KEYS: tuple[Key[Any], ...] = (

@@ -22,8 +22,9 @@ from atlas.reading.yaml_text import read_yaml
 from tiles.errors import Refusal
 
 HERE = Path(__file__).parent
-EXAMPLES = [HERE / "sound.yaml", *sorted((HERE.parents[1] / "configs").glob("*.yaml"))]
+EXAMPLES = [HERE / "sound.yaml", HERE / "views.yaml", *sorted((HERE.parents[1] / "configs").glob("*.yaml"))]
 TREE: Any = read_yaml((HERE / "sound.yaml").read_text(encoding="utf-8"), "sound.yaml")
+VIEWS: Any = read_yaml((HERE / "views.yaml").read_text(encoding="utf-8"), "views.yaml")
 SCHEMA = schema()
 VALIDATOR = jsonschema.Draft202012Validator(SCHEMA)
 
@@ -114,6 +115,33 @@ def test_wrong_values_are_refused_by_both(key: str, value: Any):
     assert not accepted_by_reader(tree)
 
 
+@pytest.mark.parametrize(
+    ("plate", "key", "value"),
+    [
+        ("fates", "draw", "fates"),
+        ("fates", "supersampling", 8),
+        ("fates", "steps", 63),
+        ("fates", "extinct", ["adults"]),
+        ("fates", "set", {"settlement": ["good"]}),
+        ("fates", "set", {"settlement": {"pattern": []}}),
+        ("both_ways", "follow", "left"),
+        ("yearly", "record", 12),
+        ("yearly", "record", {"phase": 1}),
+        ("yearly", "record", {"every": 2, "phases": 1}),
+        ("split", "by_attractor", "yes"),
+        ("split", "starts", {"grid": [2, 2]}),
+        ("split", "starts", {"grid": [2, 2], "box": {}}),
+        ("split", "starts", {"grid": [], "box": {"adults": [0, 1]}}),
+        ("split", "starts", {"grid": [2], "box": {"adults": [0]}}),
+    ],
+)
+def test_wrong_values_of_views_are_refused_by_both(plate: str, key: str, value: Any):
+    tree = copy.deepcopy(VIEWS)
+    tree["plates"][plate][key] = value
+    assert not VALIDATOR.is_valid(tree)
+    assert not accepted_by_reader(tree)
+
+
 @pytest.mark.parametrize("given", ["tif", ["tif", "png"], "tiff", ["tiff"]])
 def test_tif_is_accepted_by_both(given: Any):
     tree = sound()
@@ -122,8 +150,9 @@ def test_tif_is_accepted_by_both(given: Any):
     assert accepted_by_reader(tree)
 
 
-def test_normalised_settings_are_a_config_for_the_schema_too():
-    for record in parse_config(sound()).outputs().values():
+@pytest.mark.parametrize("example", [TREE, VIEWS], ids=["sound", "views"])
+def test_normalised_settings_are_a_config_for_the_schema_too(example: Any):
+    for record in parse_config(example).outputs().values():
         form = normalised(record)
         assert from_normalised(form) == record
         section = {"plate": "plates", "tile set": "tile_sets", "figure": "figures"}[form["kind"]]
@@ -133,7 +162,25 @@ def test_normalised_settings_are_a_config_for_the_schema_too():
 
 VALUES = st.one_of(
     st.sampled_from(
-        ["", "auto", "pi", "-2*pi/3", "1/3", ".5", "1e-3", "010", "4/2", "true", "#fff", "90x60", "x"]
+        [
+            "",
+            "auto",
+            "pi",
+            "density",
+            "fate",
+            "up",
+            "kinds",
+            "-2*pi/3",
+            "1/3",
+            ".5",
+            "1e-3",
+            "010",
+            "4/2",
+            "true",
+            "#fff",
+            "90x60",
+            "x",
+        ]
     ),
     st.sampled_from(
         [True, 0, 1, 2.0, 0.5, -1, [], {}, ["r", 0, 1], [{"n": "1"}], {"across": 1, "up": 2}, ["png"]]
@@ -151,10 +198,14 @@ def paths(tree: Any, before: tuple[Any, ...] = ()) -> list[tuple[Any, ...]]:
     return found
 
 
-@settings(deadline=None, max_examples=200)
-@given(st.sampled_from(paths(TREE)), VALUES)
-def test_whatever_the_reader_accepts_the_schema_accepts(path: tuple[Any, ...], value: Any):
-    tree = sound()
+@settings(deadline=None, max_examples=300)
+@given(
+    st.sampled_from([(example, path) for example in (TREE, VIEWS) for path in paths(example)]),
+    VALUES,
+)
+def test_whatever_the_reader_accepts_the_schema_accepts(found: tuple[Any, tuple[Any, ...]], value: Any):
+    example, path = found
+    tree = copy.deepcopy(example)
     parent: Any = tree
     for key in path[:-1]:
         parent = parent[key]
