@@ -20,12 +20,12 @@ TABLE = """
  0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
  1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
  2  tiles.window tiles.pyramid tiles.curve tiles.classes
- 3  tiles.codec tiles.shading tiles.stages tiles.values
+ 3  tiles.codec tiles.shading tiles.stages tiles.values tiles.mixing
  4  tiles.column tiles.index tiles.meta
  5  tiles.build tiles.site
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
-10  atlas.output atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
+10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
 10  atlas.config.draws
 12  atlas.orbits.block atlas.output.remarks
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
@@ -52,7 +52,9 @@ TABLE = """
 21  atlas.points.jobs
 21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate atlas.figure.margins
 21  atlas.figure.insets
-22  atlas.orbits.orbit atlas.config.remake atlas.figure.layout atlas.figure.drawing
+22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake atlas.figure.layout atlas.figure.drawing
+23  atlas.planes.turns
+24  atlas.planes.finder
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate
 24  atlas.orbits.counting atlas.points.counting
 25  atlas.orbits.counts
@@ -78,7 +80,7 @@ HOMES = {
     "datashader": ("tiles.shading",),
     "h5netcdf": ("atlas.output.certificate_reader",),
     "matplotlib": ("atlas.figure.typeset",),
-    "numba": ("atlas.orbits.step", "atlas.orbits.orbit", "atlas.arithmetic"),
+    "numba": ("atlas.orbits.step", "atlas.arithmetic"),
     "pandas": ("atlas.points",),
     "PIL": ("atlas.figure.raster_files",),
     "pyarrow": ("atlas.points",),

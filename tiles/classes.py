@@ -104,7 +104,10 @@ def class_table() -> NDArray[np.uint8]:
     base = np.array([colour(stop) for stop in _BASE], float)
     rounds = [base, *(base + (end - base) * share for end, share in _TONES)]
     own = np.array([colour(code) for code in _OWN.values()], float)
-    return np.rint(np.concatenate([np.full((1, 3), 255.0), *rounds, own])).astype(np.uint8)
+    table: NDArray[np.uint8] = np.rint(np.concatenate([np.full((1, 3), 255.0), *rounds, own])).astype(
+        np.uint8
+    )
+    return table
 
 
 def _slot(code: int) -> int:
