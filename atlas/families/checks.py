@@ -114,8 +114,12 @@ def _check_axis(axis: Axis, values: Mapping[str, Any], place: Place) -> None:
         raise place.refusal(f"{shown(axis.name)} follows a pattern in time and is no axis; {remedy}")
     if axis.name not in known:
         hint = nearest(axis.name, known)
-        raise place.refusal(f"{shown(axis.name)} is neither a parameter nor a state variable{hint}")
+        raise place.refusal(
+            f"{shown(axis.name)} is neither a parameter nor a state variable nor an observable{hint}"
+        )
     wrap = values["state"].get(axis.name, {}).get("wrap")
+    if wrap and axis.scale == "log":
+        raise place.refusal(f"{shown(axis.name)} is periodic and has no logarithmic axis; write a linear one")
     if wrap and not wrap[0] <= axis.low < axis.high <= wrap[1]:
         raise place.refusal(
             f"the axis from {axis.low} to {axis.high} reaches beyond the periodic interval "
