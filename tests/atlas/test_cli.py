@@ -19,10 +19,13 @@ from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from atlas.cli import COMMANDS, main
+from atlas.config.jobs import Plate
 from atlas.families.catalogue import NAMES
 from atlas.output.certificate import read
 from atlas.output.printing import Made
+from atlas.reading.orbit_kinds import Record
 from tests.atlas.rendered import SMALL, command, files
+from tiles.number import exact
 from tiles.palette import PALETTES
 from tiles.shading import SHADINGS
 
@@ -229,6 +232,58 @@ def test_draw_takes_the_only_family_of_a_config(tmp_path: Path) -> None:
     assert "defines 0 families; atlas draw needs a config with exactly one" in refused("draw", none, *words)
 
 
+def asked(monkeypatch: pytest.MonkeyPatch, *words: object) -> Plate:
+    """Return the plate that a command would draw."""
+    drawn: list[Plate] = []
+
+    def drawing(plate: Plate, *given: Any, **more: Any) -> Made:
+        drawn.append(plate)
+        return Made(0, {})
+
+    monkeypatch.setattr("atlas.output.printing.draw_plate", drawing)
+    done("draw", *words, "--out", "a.png")
+    return drawn[0]
+
+
+def test_draw_asks_for_a_plane(monkeypatch: pytest.MonkeyPatch) -> None:
+    words = ("--across", "b=0:40", "--up", "cpa=0:1", "--draw", "lyapunov", "--steps", "500")
+    words += ("--extinct", "adults=1e-6", "--extinct", "pupae=1e-3", "--supersampling", "2")
+    plate = asked(monkeypatch, "insect_stages", *words)
+    assert (plate.kind, plate.draw, plate.palette) == ("plane", "lyapunov", "balance")
+    assert (plate.steps, plate.supersampling) == (500, 2)
+    assert plate.extinct == {"adults": exact("1e-6"), "pupae": exact("1e-3")}
+
+
+def test_draw_sets_patterns(monkeypatch: pytest.MonkeyPatch) -> None:
+    entries = [row["r"] for row in asked(monkeypatch, "forced_logistic").family.word()]
+    assert entries == ["a", "b"]
+    plate = asked(monkeypatch, "forced_logistic", "--set", "r=a, a ,b")
+    assert (plate.kind, plate.draw) == ("plane", "fate")
+    assert [row["r"] for row in plate.family.word()] == ["a", "a", "b"]
+    one = asked(monkeypatch, "forced_logistic", "--across", "a=3:4", "--up", "x=0:1", "--set", "r=a,")
+    assert [row["r"] for row in one.family.word()] == ["a"]
+    numbers = asked(monkeypatch, "forced_logistic", "--set", "r=a,7/2")
+    assert [row["r"] for row in numbers.family.word()] == ["a", exact("3.5")]
+
+
+def test_draw_starts_several_variables(monkeypatch: pytest.MonkeyPatch) -> None:
+    words = ("--start", "larvae=10, pupae=2", "--start", "adults=5", "--by-attractor")
+    plate = asked(monkeypatch, "insect_stages", "--across", "b=0:40", "--up", "adults=0:9", *words)
+    assert plate.starts[0]["larvae"] == exact(10)
+    assert plate.starts[0]["pupae"] == exact(2)
+    assert plate.starts[1]["adults"] == exact(5)
+    assert plate.by_attractor
+
+
+def test_draw_records_and_follows(monkeypatch: pytest.MonkeyPatch) -> None:
+    assert asked(monkeypatch, "logistic", "--record", "every=12, phase=3").record == Record(12, 3)
+    assert asked(monkeypatch, "logistic", "--follow", "both").kind == "follow"
+    plate = asked(monkeypatch, "henon", "--across", "x=-1:1", "--up", "y=-1:1", "--draw", "basin")
+    assert plate.kind == "basin"
+    plate = asked(monkeypatch, "henon", "--across", "x=-1:1", "--up", "y=-1:1")
+    assert (plate.kind, plate.by_attractor, plate.record) == ("portrait", False, None)
+
+
 # Wrong command lines
 
 TO = ("--out", "{tmp}/a.png")
@@ -296,6 +351,79 @@ WRONG_WORDS: list[tuple[tuple[str, ...], str]] = [
     (("draw", "logistic", "--samples", "4294967296", *TO), "samples a column are more than a count can hold"),
     (("draw", "logistic", "--transient", "-1", *TO), "--transient: '-1' is out of range; write a whole"),
     (("draw", "logistic", "--dpi", "1e9", *TO), "--dpi: '1e9' is out of range"),
+    (
+        ("draw", "logistic", "--draw", "fate", *TO),
+        "--draw: 'fate' cannot be drawn of a parameter (r) across and",
+    ),
+    (("draw", "logistic", "--draw", "fates", *TO), "--draw: 'fates' is unknown; did you mean 'fate'?"),
+    (("draw", "hassell", "--up", "beta=2:9", "--draw", "density", *TO), "(beta) up; allowed: fate, period"),
+    (
+        ("draw", "logistic", "--steps", "500", *TO),
+        "--steps: '500' belongs to a parameter plane or a basin chart",
+    ),
+    (("draw", "logistic", "--follow", "left", *TO), "--follow: 'left' is unknown; allowed: both, down, up"),
+    (
+        ("draw", "hassell", "--up", "beta=2:9", "--follow", "up", *TO),
+        "and this is a parameter plane; leave it",
+    ),
+    (
+        ("draw", "logistic", "--record", "12", *TO),
+        "--record: '12' sets nothing; write NAME=VALUE, for instance",
+    ),
+    (
+        ("draw", "logistic", "--record", "every=2,every=3", *TO),
+        "--record: 'every' is given twice; give it once",
+    ),
+    (("draw", "logistic", "--record", "evry=2", *TO), "--record: the key 'evry' is unknown; did you mean"),
+    (
+        ("draw", "logistic", "--record", "every=2,phase=2", *TO),
+        "--record.phase: the phase 2 is not below the",
+    ),
+    (
+        ("draw", "logistic", "--extinct", "x=1e-6", *TO),
+        "--extinct: 'x: 0.000001' belongs to a parameter plane",
+    ),
+    (("draw", "logistic", "--extinct", "x", *TO), "--extinct: 'x' sets nothing; write NAME=VALUE, for inst"),
+    (
+        ("draw", "forced_logistic", "--extinct", "y=1", *TO),
+        "--extinct: the family 'forced_logistic' has no sta",
+    ),
+    (
+        ("draw", "forced_logistic", "--across", "r=3:4", *TO),
+        "--across: 'r' is a pattern in time, which cannot",
+    ),
+    (
+        ("draw", "forced_logistic", "--set", "r=a,q", *TO),
+        "--set.r.pattern[2]: there is no parameter 'q'; all",
+    ),
+    (("draw", "forced_logistic", "--set", "r=a,,b", *TO), "--set.r.pattern[2]: '' is not a number"),
+    (
+        ("draw", "forced_logistic", "--set", "r=3", *TO),
+        "--set.r: 'r' is the pattern [a, b], which no number can",
+    ),
+    (
+        ("draw", "hassell", "--set", "beta=1,5", *TO),
+        "--set.beta: 'beta' is a plain parameter, no pattern; write",
+    ),
+    (
+        ("draw", "logistic", "--by-attractor", "--follow", "up", *TO),
+        "--by-attractor: 'true' belongs to an orbit",
+    ),
+    (("draw", "logistic", "--supersampling", "3", *TO), "--supersampling: '3' is not one of 1, 2, 4"),
+    (
+        ("draw", "logistic", "--supersampling", "2", *TO),
+        "--supersampling: '2' belongs to a parameter plane or",
+    ),
+    (
+        ("draw", "logistic", "--palette", "wheel", *TO),
+        "--palette: 'wheel' is a cyclic palette and density needs",
+    ),
+    (("draw", "logistic", "--start", "x=0.3,x=0.4", *TO), "--start: 'x' is given twice; give it once"),
+    (("draw", "logistic", "--start", "x=0.3,", *TO), "--start: '' sets nothing; write NAME=VALUE"),
+    (
+        ("draw", "standard", "--across", "K=0:1", "--up", "theta=0:7", *TO),
+        "reaches beyond 0 to 2*pi, to which",
+    ),
     (("draw", "logistic", "--size", "a4", *TO), "--size: 'a4' cannot be used: a size is written 180x110"),
     (("draw", "logistic", "--size", "0x10", *TO), "--size: '0x10' cannot be used"),
     (("draw", "logistic", "--size", "5x5px", *TO), "leaves no room"),
@@ -493,13 +621,17 @@ def test_a_file_that_is_no_config_gets_one_sentence(tmp_path: Path, wrong: str, 
 
 # Any words at all
 
-OPTIONS = (
+OF_DRAW = (
     *("--across", "--up", "--set", "--start", "--transient", "--samples", "--size", "--dpi", "--shading"),
-    *("--palette", "--title", "--key", "--workers", "--memory", "--out", "--only", "--force", "--background"),
+    *("--palette", "--title", "--key", "--workers", "--memory", "--out", "--draw", "--follow", "--steps"),
+    *("--record", "--extinct", "--by-attractor", "--supersampling"),
 )
+OPTIONS = (*OF_DRAW, "--only", "--force", "--background")
 PIECES = st.sampled_from([*"rxn=:.-+*/0123456789e", "pi", "nan", "inf", "px", "GiB", "auto", ",", "[", "\n"])
 TEXTS = st.text(max_size=12) | st.lists(PIECES, max_size=10).map("".join)
-VALUES = TEXTS | st.sampled_from(["r=2.8:4", "x=0:1", "x=0.3", "200x150px", "100", "grey", "a.png", "2GiB"])
+VALUES = TEXTS | st.sampled_from(
+    ["r=2.8:4", "x=0:1", "x=0.3", "200x150px", "100", "grey", "a.png", "2GiB", "fate", "every=2", "r=a,b,b"]
+)
 
 
 def said_one_sentence(words: list[str]) -> Ran:
@@ -514,7 +646,7 @@ def said_one_sentence(words: list[str]) -> Ran:
 
 
 @settings(max_examples=300)
-@given(st.lists(st.tuples(st.sampled_from(OPTIONS[:15]), VALUES), max_size=5), st.sampled_from(NAMES) | TEXTS)
+@given(st.lists(st.tuples(st.sampled_from(OF_DRAW), VALUES), max_size=5), st.sampled_from(NAMES) | TEXTS)
 @example([("--across", "r=2.8:4"), ("--out", "a.png")], "logistic")
 @example([("--title", "\u200b"), ("--out", "a.png")], "logistic")
 def test_no_words_of_draw_end_in_a_traceback(options: list[tuple[str, str]], family: str) -> None:
