@@ -20,9 +20,10 @@ TABLE = """
  0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
  1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
  2  tiles.window tiles.pyramid tiles.curve tiles.classes
- 3  tiles.codec tiles.shading tiles.stages tiles.values tiles.mixing
- 4  tiles.column tiles.index tiles.meta
- 5  tiles.build tiles.site
+ 3  tiles.codec tiles.shading tiles.stages tiles.values tiles.mixing tiles.plane
+ 4  tiles.column tiles.index tiles.meta tiles.value_codec
+ 5  tiles.unfinished tiles.plane_index tiles.site
+ 6  tiles.build tiles.plane_build
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
 10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels

@@ -16,9 +16,9 @@ How an orbit is treated, always by its own step numbers:
    After the last round it is looked at ahead once more, up to ``longest_period``, for a collapse in that
    round. An escape or a collapse takes back what was counted.
 
-Where only every so many-th state is recorded, the transient is prolonged to the phase asked for, and from then on
-*state*, *repeat*, *period* and *round* mean recorded states. Where parameters follow a pattern, states are the
-same only at the same place in the pattern, and extensions are whole patterns.
+Where only every so many-th state is recorded, the transient is prolonged to the phase asked for, and from
+then on *state*, *repeat*, *period* and *round* mean recorded states. Where parameters follow a pattern,
+states are the same only at the same place in the pattern, and extensions are whole patterns.
 """
 
 from __future__ import annotations

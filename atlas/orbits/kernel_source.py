@@ -104,7 +104,6 @@ class Writer:
             "ROWS": str(self.source.rows),
             "SIDES": _tuple(sides),
             "WIDTHS": _tuple(self.source.widths),
-            "SHOWN_WIDTHS": _tuple(self._shown_widths()),
             "AXIS_COUNT": str(self.axes),
             "TURNS": "3" if self.source.states == 1 else "8",
             "CHUNK": str(CHUNK),
@@ -175,11 +174,12 @@ class Writer:
 
     def _words(self) -> dict[str, str]:
         states, widths = self.source.state_names, self.source.widths
-        distances = [
-            f"around({name} - rx[{k}, l], {width!r})" if width else f"abs({name} - rx[{k}, l])"
-            for k, (name, width) in enumerate(zip(states, widths, strict=True))
-        ]
-        distance = _largest(distances)
+        distance = _largest(
+            [
+                _gap(name, f"rx[{k}, l]", width)
+                for k, (name, width) in enumerate(zip(states, widths, strict=True))
+            ]
+        )
         shown = self.source.drawn
         cells, seen = _cell(shown), _cell([f"seen{number}[k, l]" for number in range(self.axes)])
         return {
@@ -188,6 +188,12 @@ class Writer:
             "DISTANCE": f"({distance} + far)" if self.cycle > 1 else distance,
             "LARGEST": _largest([f"abs({name})" for name in states]),
             "STATE": f"({', '.join(states)},)",
+            "GAP": _largest(
+                [
+                    _gap(name, f"o{k}", width)
+                    for k, (name, width) in enumerate(zip(states, widths, strict=True))
+                ]
+            ),
             "SLOPE": f"one_slope{self.call}",
             "MINORS": f"one_minors{self.call}" if len(states) > 1 else f"(one_minors{self.call},)",
             "SHOWN": f"({', '.join(shown)},)",
@@ -227,10 +233,19 @@ class Writer:
             "SKIP": self._skipped(load, loads, moved, store) if self.every > 1 else [],
             "FAR": ["far = 0.0 if {number} % CYCLE == 0 else np.inf"] if self.cycle > 1 else [],
             "NUMBER": [f"number = {numbered}"],
+            "REMEMBER": [f"o{k} = {name}" for k, name in enumerate(states)]
+            + [f"q{number} = {shown}" for number, shown in enumerate(self.source.drawn)],
+            "COMPARE": [
+                f"work[{number}, turn] = {_gap(shown, f'q{number}', width)}"
+                for number, (shown, width) in enumerate(
+                    zip(self.source.drawn, self._shown_widths(), strict=True)
+                )
+            ],
+            "NOTE": [f"{{number}}[{k}, n] = {name}" for k, name in enumerate(states)],
         }
 
     def _skipped(self, load: list[str], loads: list[str], moved: list[str], store: list[str]) -> list[str]:
-        """Return the steps between two recorded states, whose number is counted from the last recorded one."""
+        """Return the steps from one recorded state to before the next, numbered from the first of them."""
         inner = load + ([] if self.patterned else loads)
         inner += [line.replace("{number}", "{number} + e + 1") for line in moved] + store
         turn = ["    w0 = word[({number} + e) % word.size] * NC"] if self.patterned else []
@@ -244,6 +259,10 @@ class Writer:
 
 def _tuple(values: Sequence[float]) -> str:
     return f"({', '.join(map(repr, values))},)"
+
+
+def _gap(name: str, old: str, width: float) -> str:
+    return f"around({name} - {old}, {width!r})" if width else f"abs({name} - {old})"
 
 
 def _largest(terms: list[str]) -> str:

@@ -1,9 +1,9 @@
 """Source of the kernels that advance and count many orbits together, in lanes.
 
 Words in capitals are expanded by `atlas.orbits.kernel_source` for the state variables, the coefficients, the
-patterns and the axes of a view. Every lane follows its own orbit, so the result does not depend on which orbits
-share a group. Numbers of steps are those of the map; where only every so many-th state is recorded, SKIP runs
-those between.
+patterns and the axes of a view. Every lane follows its own orbit, so the result does not depend on which
+orbits share a group. Numbers of steps are those of the map; where only every so many-th state is recorded,
+SKIP runs those between.
 """
 
 CHUNK = 16

@@ -7,14 +7,11 @@ import threading
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
-from pathlib import Path
 from types import ModuleType
 
 import numpy as np
-from numba import __version__ as numba_version
 from numpy.typing import NDArray
 
-import atlas.arithmetic.functions as functions
 from atlas.families.reader import Family
 from atlas.orbits.block import Block, CountedAxis, Orbits
 from atlas.orbits.block import Rules as Rules
@@ -115,7 +112,7 @@ class OrbitCounter:
         text = kernel_source(
             self._source, [self.view.up.scale == "log"], lanes=self.lanes, every=self.rules.every
         )
-        return load_module(text, Path(functions.__file__).read_text() + numba_version)
+        return load_module(text)
 
     @cached_property
     def window(self) -> CountedAxis:

@@ -1,6 +1,7 @@
 """Source of the kernels that follow one orbit, and of those that decide what becomes of orbits.
 
-Words in capitals are expanded by `atlas.orbits.kernel_source`. Cycles and periods are counted in recorded states.
+Words in capitals are expanded by `atlas.orbits.kernel_source`. Cycles and periods are counted in recorded
+states.
 """
 
 READY, AGAIN, FILLED, SLOW, GONE = range(5)
@@ -67,7 +68,7 @@ def growth(x, c, word, m, before, cycle):
 
 
 @compiled
-def distance_left(x, c, word, m, before, period, size, half, relative):
+def distance_left(x, c, word, m, before, period, size, half, relative, work):
     """Estimate how far an orbit still is from the cycle it approaches, in half cells; -1 where from none.
 
     With the gaps d1, d2, d3 between states one period apart and their ratio r it is 4 d1 r / (1 - r); on a
@@ -75,24 +76,16 @@ def distance_left(x, c, word, m, before, period, size, half, relative):
     and fall, so r is taken between the largest of the first four and of the next four.
     """
     LOAD_ORBIT
-    gaps = np.zeros(TURNS)
-    shown = np.zeros((AXIS_COUNT, TURNS))
+    gaps = work[AXIS_COUNT]
     n = before
     for turn in range(TURNS):
-        before_state = np.array(STATE)
-        before_shown = np.array(SHOWN)
+        REMEMBER
         for step_number in range(period * EVERY):
             AT n
             STEP 0
             n += 1
-        after_state = np.array(STATE)
-        after_shown = np.array(SHOWN)
-        for k in range(NX):
-            d = abs(after_state[k] - before_state[k])
-            gaps[turn] = max(gaps[turn], min(d, abs(WIDTHS[k] - d)))
-        for a in range(AXIS_COUNT):
-            d = abs(after_shown[a] - before_shown[a])
-            shown[a, turn] = min(d, abs(SHOWN_WIDTHS[a] - d))
+        gaps[turn] = GAP
+        COMPARE
     if gaps[0] <= 1e-15 * size:
         return 0.0
     BEGIN_SINGLE
@@ -105,14 +98,15 @@ def distance_left(x, c, word, m, before, period, size, half, relative):
     if not ratio < 1.0:
         return -1.0
     most = 0.0
+    now = SHOWN
     for a in range(AXIS_COUNT):
         BEGIN_SINGLE
-        left = 4.0 * shown[a, 0] * ratio / (1.0 - ratio)
+        left = 4.0 * work[a, 0] * ratio / (1.0 - ratio)
         END_SINGLE
         BEGIN_SEVERAL
-        left = 4.0 * max(shown[a]) * ratio / (1.0 - ratio)
+        left = 4.0 * max(work[a]) * ratio / (1.0 - ratio)
         END_SEVERAL
-        left = left / abs(after_shown[a]) if relative[a] else left
+        left = left / abs(now[a]) if relative[a] else left
         most = max(most, left / half[a])
     return most
 '''
@@ -247,6 +241,7 @@ def settle(x, c, word, start, order, before, seen, rules, AXES, base, counts, ou
     """
     repeat, period, gap, size = seen
     samples, half, relative = rules
+    work = np.empty((AXIS_COUNT + 1, TURNS))
     for m in order:
         if outcome[m] == GONE:
             continue
@@ -263,7 +258,7 @@ def settle(x, c, word, start, order, before, seen, rules, AXES, base, counts, ou
                 fill(x, c, word, m, before, repeat[m], samples, base, AXES, counts)
                 outcome[m] = FILLED
         elif period[m] > 0 and gap[m] < reach / 1024.0:
-            if distance_left(x, c, word, m, before, period[m], size[m], half, relative) > 1.0:
+            if distance_left(x, c, word, m, before, period[m], size[m], half, relative, work) > 1.0:
                 outcome[m] = SLOW
 
 

@@ -13,6 +13,9 @@ from functools import cache
 from pathlib import Path
 from types import ModuleType
 
+from numba import __version__ as numba_version
+
+import atlas.arithmetic.functions as functions
 from atlas.arithmetic.float64 import POLYNOMIALS, StraightLine, hoist
 from atlas.errors import FormulaRefused
 from atlas.families.reader import Family
@@ -199,7 +202,7 @@ def _coefficients(family: Family, constants: list[Node]) -> str:
 
 
 def parameter_rows(family: Family) -> list[str]:
-    """Return the names of the rows of the parameters that ``coefficients`` takes: plain ones, then patterns."""
+    """Return the names of the rows that ``coefficients`` takes: plain parameters, then patterns."""
     return [*family.parameter_names, *(pattern.name for pattern in family.patterns)]
 
 
@@ -220,20 +223,19 @@ def cache_folder() -> Path:
         return Path(tempfile.mkdtemp(prefix="iterated-map-atlas-"))
 
 
-def load_module(text: str, stamp: str) -> ModuleType:
+def load_module(text: str) -> ModuleType:
     """Import generated source as a module from the cache folder, where its machine code is kept too.
 
     Parameters
     ----------
     text : str
         Source that uses the names of :data:`HEADER`.
-    stamp : str
-        Everything outside the text that the machine code depends on.
 
     Returns
     -------
     module
     """
+    stamp = Path(functions.__file__).read_text() + numba_version
     digest = hashlib.blake2b("\0".join((HEADER, text, stamp)).encode(), digest_size=12).hexdigest()
     name = f"atlas_map_{digest}"
     if name in sys.modules:

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from itertools import combinations
 
-from atlas.formula.algebra import ONE, difference, product, total
+from atlas.formula.algebra import ONE, ZERO, difference, product, total
 from atlas.formula.tree import Name, Node
 
 Matrix = tuple[tuple[Node, ...], ...]
@@ -67,13 +67,9 @@ def _minor(matrix: Matrix, rows: tuple[int, ...], columns: tuple[int, ...]) -> N
     if not rows:
         return ONE
     first, rest = rows[0], rows[1:]
-    found: Node | None = None
+    found: Node = ZERO
     for place, column in enumerate(columns):
         inner = _minor(matrix, rest, columns[:place] + columns[place + 1 :])
         term = product(matrix[first][column], inner)
-        if found is None:
-            found = term
-        else:
-            found = difference(found, term) if place % 2 else total((found, term))
-    assert found is not None
+        found = difference(found, term) if place % 2 else total((found, term))
     return found

@@ -1,0 +1,1 @@
+"""Parameter planes: what becomes of the orbit of every pixel."""

@@ -1,0 +1,330 @@
+"""Source of the kernels that find the fates of many orbits together.
+
+Words in capitals are expanded by `atlas.planes.plane_source`; `atlas.planes.fates` says how fates are
+decided.
+"""
+
+OPEN, GONE, DEAD, MET, NEAR, AGAIN = range(6)
+"""What is known of an orbit: nothing yet, escaped, extinct, on a cycle, approaching one, collapsed."""
+
+START = """
+    lx = np.empty((NX, LANES))
+    ls = np.empty((NX, LANES))
+    lc = np.empty((ROWS, LANES))
+    lg = np.empty(LANES, np.int64)
+    lt = np.empty(LANES, np.int64)
+    lf = np.zeros(LANES, np.bool_)
+    lk = np.empty(LANES, np.uint64)
+"""
+
+FLEE = f'''
+@compiled
+def flee(x, c, word, key, order, before, steps, bound, low, outcome, since):
+    """Advance the orbits of order; one that a test finds gone is left where the test before stood."""
+{START}
+    for first in range(0, order.size, LANES):
+        lanes = min(LANES, order.size - first)
+        for l in range(LANES):
+            m = order[first + min(l, lanes - 1)]
+            for k in range(NX):
+                lx[k, l] = x[k, m]
+                ls[k, l] = x[k, m]
+            for k in range(ROWS):
+                lc[k, l] = c[k, m]
+            lg[l] = OPEN
+            lt[l] = before
+            lk[l] = key[m]
+        n = before
+        done = 0
+        while done < steps:
+            now = min(CHUNK, steps - done)
+            for l in range(LANES):
+                KEEP n
+            for part in range(now // UNROLL):
+                PHASE n
+                for l in range(LANES):
+                    LOAD
+                    REPEAT
+                    STEP n + KTH + 1
+                    DYING
+                    END_REPEAT
+                    STORE
+                n += UNROLL
+            BEGIN_REST
+            for part in range(now % UNROLL):
+                PHASE n
+                for l in range(LANES):
+                    LOAD
+                    STEP n + 1
+                    DYING
+                    STORE
+                n += 1
+            END_REST
+            for l in range(LANES):
+                LOAD
+                FOUND
+            done += now
+        for l in range(lanes):
+            m = order[first + l]
+            outcome[m] = lg[l]
+            if lg[l] != OPEN:
+                since[m] = lt[l]
+                for k in range(NX):
+                    x[k, m] = ls[k, l]
+            else:
+                for k in range(NX):
+                    x[k, m] = lx[k, l]
+'''
+
+MEASURE = f'''
+@compiled
+def measure(x, v, c, word, key, order, before, steps, bound, low, outcome, since, logs):
+    """Advance the orbits of order as flee() does, with tangent volumes; logs gets the growth of each."""
+{START}
+    lv = np.empty((NV_ALL, LANES))
+    le = np.empty((NX, LANES))
+    for first in range(0, order.size, LANES):
+        lanes = min(LANES, order.size - first)
+        for l in range(LANES):
+            m = order[first + min(l, lanes - 1)]
+            for k in range(NX):
+                lx[k, l] = x[k, m]
+                ls[k, l] = x[k, m]
+                le[k, l] = 0.0
+            for k in range(NV_ALL):
+                lv[k, l] = v[k, m]
+            for k in range(ROWS):
+                lc[k, l] = c[k, m]
+            lg[l] = OPEN
+            lt[l] = before
+            lk[l] = key[m]
+        n = before
+        done = 0
+        while done < steps:
+            now = min(CHUNK, steps - done)
+            for l in range(LANES):
+                KEEP n
+            for part in range(now // UNROLL):
+                PHASE n
+                for l in range(LANES):
+                    LOAD
+                    LOAD_VECTORS
+                    REPEAT
+                    CARRY n + KTH + 1
+                    DYING
+                    END_REPEAT
+                    STORE_VECTORS
+                    STORE
+                n += UNROLL
+            BEGIN_REST
+            for part in range(now % UNROLL):
+                PHASE n
+                for l in range(LANES):
+                    LOAD
+                    LOAD_VECTORS
+                    CARRY n + 1
+                    DYING
+                    STORE_VECTORS
+                    STORE
+                n += 1
+            END_REST
+            for l in range(LANES):
+                LOAD
+                FOUND
+                LOAD_VECTORS
+                RESCALE
+                STORE_VECTORS
+            done += now
+        for l in range(lanes):
+            m = order[first + l]
+            outcome[m] = lg[l]
+            if lg[l] != OPEN:
+                since[m] = lt[l]
+            for k in range(NX):
+                x[k, m] = lx[k, l] if lg[l] == OPEN else ls[k, l]
+            at = 0
+            for g in range(NX):
+                side = SIDES[g]
+                most = 0.0
+                for k in range(at, at + side):
+                    most = max(most, abs(lv[k, l]))
+                logs[g, m] = le[g, l] * 0.6931471805599453 + log(most)
+                for k in range(at, at + side):
+                    v[k, m] = lv[k, l] / most if most > 0.0 and most < np.inf else 1.0
+                at += side
+'''
+
+JUDGE = '''
+@compiled
+def judge(x, c, word, start, order, before, seen, rules, outcome, period, turn, exponents, repelling):
+    """Decide whether the orbits of order have met a cycle; seen is what returns() wrote.
+
+    outcome[m] becomes MET (then period[m] is the least period, turn[m] the one that was confirmed, and
+    exponents[:, m] are known), NEAR (approaching), AGAIN (collapsed) or stays OPEN.
+    """
+    repeat, nearest, gap, size = seen
+    half, relative = rules
+    logs = np.empty(NX)
+    work = np.empty((AXIS_COUNT + 1, TURNS))
+    for m in order:
+        if outcome[m] != OPEN:
+            continue
+        reach = size[m]
+        for k in range(NX):
+            reach = max(reach, abs(start[k, m]))
+        p = repeat[m]
+        if p == 0:
+            p = nearest[m]
+            if p == 0 or not gap[m] < reach * 2.0 ** -10:
+                continue
+            left = distance_left(x, c, word, m, before, p, size[m], half, relative, work)
+            if left < 0.0:
+                continue
+            if left > reach * 2.0 ** -20:
+                outcome[m] = NEAR
+                continue
+        multipliers(x, c, word, m, before, p, logs)
+        if logs[0] * p > 1e-6:
+            if repeat[m] == 0:
+                continue
+            if not on_cycle(x, c, word, start, m, before, p):
+                outcome[m] = AGAIN
+                continue
+            repelling[m] = True
+        outcome[m] = MET
+        turn[m] = p
+        period[m] = least_period(x, c, word, m, before, p, reach * 2.0 ** -17)
+        for g in range(NX):
+            exponents[g, m] = logs[g]
+
+
+@compiled
+def multipliers(x, c, word, m, before, cycle, logs):
+    """Write the Lyapunov exponents of a cycle, largest first."""
+    BEGIN_SINGLE
+    LOAD_ORBIT
+    product = 1.0
+    power = 0.0
+    for n in range(cycle):
+        AT before + n
+        product *= SLOPE
+        STEP 0
+        size = abs(product)
+        if not (size > 2.0 ** -500 and size < 2.0 ** 500):
+            if size == 0.0:
+                break
+            exponent = min(max(exponent_of(size), -1000.0), 1000.0)
+            product *= two_to(-exponent)
+            power += exponent
+    logs[0] = (log(abs(product)) + power * 0.6931471805599453) / cycle
+    END_SINGLE
+    BEGIN_SEVERAL
+    volumes(x, c, word, m, before, cycle, logs)
+    END_SEVERAL
+
+
+@compiled
+def least_period(x, c, word, m, before, cycle, near):
+    """Return the least divisor of a period after which all states of the cycle come back, nearly."""
+    if cycle == 1:
+        return 1
+    LOAD_ORBIT
+    states = np.empty((NX, cycle))
+    for n in range(cycle):
+        NOTE states
+        AT before + n
+        STEP 0
+    for period in range(1, cycle):
+        if cycle % period == 0:
+            same = True
+            for n in range(cycle):
+                for k in range(NX):
+                    d = abs(states[k, (n + period) % cycle] - states[k, n])
+                    same = same and min(d, abs(WIDTHS[k] - d)) <= near
+                if not same:
+                    break
+            if same:
+                return period
+    return cycle
+
+
+@compiled
+def leaving(x, c, word, order, since, bound, left):
+    """Write after how many steps orbits that are gone left the bound, smoothly between whole numbers.
+
+    With s the largest size of a state variable before and t after the step n that passes the bound b it is
+    n - ln(t / b) / ln(t / s).
+    """
+    for m in order:
+        LOAD_ORBIT
+        last = LARGEST
+        left[m] = float(since[m] + CHUNK)
+        for n in range(CHUNK):
+            AT since[m] + n
+            STEP 0
+            size = LARGEST
+            if not size < bound:
+                left[m] = float(since[m] + n + 1)
+                if size < np.inf and last > 0.0:
+                    left[m] -= log(size / bound) / log(size / last)
+                break
+            last = size
+'''
+
+TURN = '''
+@compiled
+def mean_state(x, c, word, order, before, steps, mean):
+    """Write the mean state of the next steps."""
+    lx = np.empty((NX, LANES))
+    lm = np.empty((NX, LANES))
+    lc = np.empty((ROWS, LANES))
+    for first in range(0, order.size, LANES):
+        lanes = min(LANES, order.size - first)
+        for l in range(LANES):
+            m = order[first + min(l, lanes - 1)]
+            for k in range(NX):
+                lx[k, l] = x[k, m]
+                lm[k, l] = 0.0
+            for k in range(ROWS):
+                lc[k, l] = c[k, m]
+        for n in range(steps):
+            PHASE before + n
+            for l in range(LANES):
+                LOAD
+                STEP 0
+                STORE
+                for k in range(NX):
+                    lm[k, l] += lx[k, l]
+        for l in range(lanes):
+            for k in range(NX):
+                mean[k, order[first + l]] = lm[k, l] / steps
+
+
+@compiled
+def turning(x, c, word, order, before, weights, mean, total):
+    """Write the weighted sum of the turns that each step makes."""
+    lx = np.empty((NX, LANES))
+    lm = np.empty((NX, LANES))
+    lc = np.empty((ROWS, LANES))
+    lw = np.empty(LANES)
+    for first in range(0, order.size, LANES):
+        lanes = min(LANES, order.size - first)
+        for l in range(LANES):
+            m = order[first + min(l, lanes - 1)]
+            lw[l] = 0.0
+            for k in range(NX):
+                lx[k, l] = x[k, m]
+                lm[k, l] = mean[k, m]
+            for k in range(ROWS):
+                lc[k, l] = c[k, m]
+        for n in range(weights.size):
+            weight = weights[n]
+            PHASE before + n
+            for l in range(LANES):
+                LOAD
+                TURNED
+                STORE
+                lw[l] += weight * turned
+        for l in range(lanes):
+            total[order[first + l]] = lw[l]
+'''
