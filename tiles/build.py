@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import json
 import os
-import sqlite3
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from contextlib import AbstractContextManager, contextmanager
 from dataclasses import dataclass, field
@@ -22,9 +20,10 @@ from tiles.grid import TILE, Address, Pair, level_pairs
 from tiles.index import Index
 from tiles.pyramid import Counts, halve_across, join_across, pair_sums, tiles_of_column
 from tiles.stages import Stage, stages
-from tiles.store import Readers, shared, written
+from tiles.store import Readers, written
 from tiles.tasks import Run, serially
-from tiles.window import Axis, View
+from tiles.unfinished import continued, geometry
+from tiles.window import View
 
 Leaf = Callable[[int], AbstractContextManager[Column]]
 
@@ -81,14 +80,14 @@ def build(
     """
     chosen = level_pairs(across_level, up_level, pairs)
     unfinished = path.parent / ".parts" / path.name if unfinished is None else unfinished
-    stored = {**header, **_geometry(view, chosen)}
+    stored = {**header, **geometry(view, chosen)}
     rows = TILE << up_level
     folder = unfinished.parent
     leaf = partial(computed, source, rows, strip_width(cells_per_strip, rows), folder)
     with written(unfinished):
         folder.mkdir(parents=True, exist_ok=True)
         path.parent.mkdir(parents=True, exist_ok=True)
-    with _continued(unfinished, stored) as index:
+    with continued(Index, unfinished, stored) as index:
         for stage in stages(chosen):
             if stage.first:
                 _run_stage(stage, index, run, leaf)
@@ -175,56 +174,3 @@ def _read(readers: Readers[Index], pair: Pair, column: int) -> Iterator[Column]:
                 f"{index.path}: tile column {column} at level {pair[0]} is missing; build it again"
             )
         yield Column(numbers, lambda row: index.get(Address(*pair, column, row)))
-
-
-def _continued(path: Path, header: Mapping[str, Any]) -> Index:
-    """Open an unfinished index of the same header, or start a new one."""
-    index = _opened(path)
-    if index is not None:
-        if index.header == json.loads(json.dumps(header)):
-            return index
-        index.close()
-    with written(path):
-        for name in (path.name, f"{path.name}-wal", f"{path.name}-shm", f"{path.name}-journal"):
-            (path.parent / name).unlink(missing_ok=True)
-    return Index.create(path, header)
-
-
-def _opened(path: Path) -> Index | None:
-    """Open an unfinished index; None where there is none, or only the torn beginning of one.
-
-    One that another run holds is no torn one: it is reported, and stays.
-    """
-    try:
-        index = Index.open(path, write=True, finished=False)
-    except (IndexRefused, sqlite3.DatabaseError):
-        return None
-    try:
-        with shared(path):
-            index.record("header")
-    except sqlite3.DatabaseError:
-        index.close()
-        return None
-    except BaseException:
-        index.close()
-        raise
-    return index
-
-
-def _geometry(view: View, pairs: tuple[Pair, ...]) -> dict[str, Any]:
-    return {
-        "view": {"across": _axis(view.across), "up": _axis(view.up)},
-        "levels": {"across": pairs[-1][0], "up": pairs[-1][1]},
-        "pairs": [list(pair) for pair in pairs],
-        "tile": TILE,
-    }
-
-
-def _axis(axis: Axis) -> dict[str, Any]:
-    return {
-        "name": axis.name,
-        "low": str(axis.low),
-        "high": str(axis.high),
-        "scale": axis.scale,
-        "label": axis.label,
-    }

@@ -17,7 +17,8 @@ from urllib.parse import quote
 from tiles.errors import IndexRefused, OutputFailed
 
 S = TypeVar("S", bound="Store")
-VERSION = 1
+VERSION = 2
+_READ = (1, 2)
 PATIENCE = 5.0
 """Seconds that a writer waits for another one."""
 _APPLICATION = 0x74696C65
@@ -28,6 +29,12 @@ CREATE TABLE tiles (across_level INTEGER NOT NULL, up_level INTEGER NOT NULL, ti
     PRIMARY KEY (across_level, up_level, tile_column, tile_row));
 CREATE TABLE columns (across_level INTEGER NOT NULL, tile_column BLOB NOT NULL, numbers BLOB NOT NULL,
     PRIMARY KEY (across_level, tile_column)) WITHOUT ROWID;
+CREATE TABLE classes (across_level INTEGER NOT NULL, up_level INTEGER NOT NULL, tile_column BLOB NOT NULL,
+    tile_row BLOB NOT NULL, class INTEGER NOT NULL, digest BLOB NOT NULL, counts BLOB NOT NULL,
+    PRIMARY KEY (across_level, up_level, tile_column, tile_row, class));
+CREATE TABLE sums (across_level INTEGER NOT NULL, up_level INTEGER NOT NULL, tile_column BLOB NOT NULL,
+    tile_row BLOB NOT NULL, layer TEXT NOT NULL, digest BLOB NOT NULL, sums BLOB NOT NULL,
+    numbers BLOB NOT NULL, PRIMARY KEY (across_level, up_level, tile_column, tile_row, layer));
 CREATE TABLE records (name TEXT PRIMARY KEY, json TEXT NOT NULL) WITHOUT ROWID;
 """
 
@@ -171,9 +178,10 @@ class Store:
             application = version = 0
         if application != _APPLICATION:
             raise IndexRefused(f"{self.path} is not a tile index")
-        if version != VERSION:
+        if version not in _READ:
             raise IndexRefused(
-                f"{self.path} is a tile index of version {version}; this program reads version {VERSION}"
+                f"{self.path} is a tile index of version {version}; "
+                f"this program reads versions {' and '.join(map(str, _READ))}"
             )
         if finished and self.record("finished") is not True:
             raise IndexRefused(

@@ -235,8 +235,8 @@ def test_files_that_are_no_index_are_refused(tmp_path):
 
 def test_a_later_version_is_refused(index):
     index.finish()
-    index._db.execute("PRAGMA user_version = 2")
-    with pytest.raises(IndexRefused, match="version 2; this program reads version 1"):
+    index._db.execute("PRAGMA user_version = 3")
+    with pytest.raises(IndexRefused, match="version 3; this program reads versions 1 and 2"):
         Index.open(index.path)
 
 
