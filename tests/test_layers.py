@@ -53,11 +53,11 @@ TABLE = """
 21  atlas.points.jobs
 21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate atlas.figure.margins
 21  atlas.figure.insets
-22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake atlas.figure.layout atlas.figure.drawing
+22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake atlas.figure.layout atlas.figure.legends
 23  atlas.planes.turns
 24  atlas.planes.finder
-23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.plate
-24  atlas.orbits.counting atlas.points.counting
+23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.drawing
+24  atlas.orbits.counting atlas.points.counting atlas.figure.plate
 25  atlas.orbits.counts
 25  atlas.output.printing atlas.points.record atlas.points.spool
 26  atlas.output.tileset atlas.points.binning atlas.points.plates

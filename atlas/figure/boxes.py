@@ -8,6 +8,8 @@ from atlas.figure.lettering import text_width
 from atlas.figure.ticks import Ticks
 from tiles.window import View
 
+TICK_FONT = 0.9  # size of tick labels and legends in font sizes
+
 
 @dataclass(frozen=True)
 class Box:
@@ -63,12 +65,12 @@ class Spacing:
     @property
     def tick_font(self) -> float:
         """Font size of tick labels in points."""
-        return 0.9 * self.font_size
+        return TICK_FONT * self.font_size
 
     @property
     def digit(self) -> float:
         """Height of the digits of tick labels."""
-        return 0.729 * 0.9 * self.em
+        return 0.729 * TICK_FONT * self.em
 
     def ems(self, count: float) -> float:
         """Return a multiple of the font size."""
@@ -116,6 +118,8 @@ class PanelBox:
         Where a window is magnified.
     key : Box, optional
         The bar of the colour key, without its frame.
+    legend : Box, optional
+        Where the swatches and labels of a legend stand, beside the raster and as high.
     """
 
     name: str
@@ -133,6 +137,7 @@ class PanelBox:
     title: str = ""
     inset: InsetBox | None = None
     key: Box | None = None
+    legend: Box | None = None
 
     @property
     def raster(self) -> Box:

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from atlas.figure import margins
 from atlas.figure.boxes import Box, InsetBox, Layout, PanelBox, Spacing
+from atlas.figure.legends import legend_pieces
 from atlas.figure.lettering import plain
 from atlas.figure.pieces import BLACK, WHITE, Block, Colour, PanelText, Picture, Piece, Raster, Words, frame
 
@@ -53,33 +54,38 @@ def _panel(
     panel: PanelBox, rasters: Mapping[str, Raster], text: PanelText, spacing: Spacing
 ) -> Iterator[Piece]:
     raster = rasters[panel.name]
-    yield _picture(panel.name, panel.raster, raster)
-    yield from _marks(panel, raster, spacing)
+    picture = _picture(panel.name, panel.raster, raster)
+    yield picture
+    yield from _marks(panel, raster.unsettled, picture, spacing)
     yield from frame(panel.raster, spacing.line)
     yield from _tick_blocks(panel, spacing)
     if panel.inset:
         yield from _inset(panel.inset, panel.name, rasters, spacing)
-    if panel.key:
+    if panel.key and raster.table is not None:
         yield from _key(panel.key, raster.table, text, spacing)
+    if panel.legend:
+        yield from legend_pieces(panel.legend, text.legend, spacing)
     yield from _tick_words(panel, spacing)
     yield from _axis_words(panel, text, spacing)
     yield from _head(panel, spacing)
 
 
 def _picture(name: str, box: Box, raster: Raster) -> Picture:
-    if raster.indices.shape != (box.height, box.width):
-        raise ValueError(f"raster '{name}' is {raster.indices.shape}, its box is {box.height} x {box.width}")
-    return Picture(box, raster.indices, raster.table)
+    picture = raster.picture(box)
+    if picture.pixels.shape[:2] != (box.height, box.width):
+        raise ValueError(f"raster '{name}' is {picture.pixels.shape}, its box is {box.height} x {box.width}")
+    return picture
 
 
-def _marks(panel: PanelBox, raster: Raster, spacing: Spacing) -> Iterator[Block]:
+def _marks(
+    panel: PanelBox, unsettled: NDArray[np.bool_] | None, picture: Picture, spacing: Spacing
+) -> Iterator[Block]:
     """Yield marks above and below the columns whose orbits had not settled, outside the frame."""
-    if raster.unsettled is None or not raster.unsettled.any():
+    if unsettled is None or not unsettled.any():
         return
-    grey = bool((raster.table == raster.table[:, :1]).all())
-    colour = BLACK if raster.bilevel else GREY_MARK if grey else MARK
+    colour = BLACK if picture.bilevel else GREY_MARK if picture.grey else MARK
     height, least = round(spacing.ems(MARK_HEIGHT)) + 1, round(spacing.ems(MARK_WIDTH)) + 1
-    for first, last in _runs(raster.unsettled, least):
+    for first, last in _runs(unsettled, least):
         width = max(least, last - first)
         left = panel.left + min(max(0, (first + last - width) // 2), panel.width - width)
         for top in (panel.top - spacing.line - height, panel.raster.bottom + spacing.line):

@@ -193,9 +193,14 @@ def _panel_box(
     panel: Panel, column: _Span, line: _Span, across: Ticks, up: Ticks, spacing: Spacing
 ) -> PanelBox:
     raster = Box(column.raster, line.raster, column.raster_length, line.raster_length)
-    key = None
-    if panel.plate.has_key:
-        left = raster.right + 2 * spacing.line + round(spacing.ems(margins.KEY_GAP))
+    key, legend = None, None
+    outer = raster.right + 2 * spacing.line
+    if panel.plate.legend_width:
+        left = outer + round(spacing.ems(margins.LEGEND_GAP))
+        width = spacing.ems(margins.SWATCH_WIDTH + margins.SWATCH_GAP + panel.plate.legend_width)
+        legend = Box(left, raster.top, math.floor(width), raster.height)
+    elif panel.plate.has_key:
+        left = outer + round(spacing.ems(margins.KEY_GAP))
         key = Box(left, raster.top, round(spacing.ems(margins.KEY_WIDTH)), raster.height)
     return PanelBox(
         panel.plate.name,
@@ -213,4 +218,5 @@ def _panel_box(
         panel.plate.title,
         inset_box(panel.plate, raster, spacing),
         key,
+        legend,
     )

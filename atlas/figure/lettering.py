@@ -13,7 +13,12 @@ _WIDTHS = {
     **dict.fromkeys("−+×=", 0.838),
     **dict.fromkeys("⁰¹²³⁴⁵⁶⁷⁸⁹", 0.401),
     **dict.fromkeys("()", 0.390),
-    **{"⁻": 0.528, "π": 0.602, "/": 0.337, "-": 0.361, "…": 1.0, "%": 0.950},
+    **{"⁻": 0.528, "π": 0.602, "/": 0.337, "-": 0.361, "…": 1.0, "%": 0.950, "±": 0.838, ":": 0.337},
+    **dict.fromkeys("ijl", 0.278),
+    **{"f": 0.352, "t": 0.392, "r": 0.411, "_": 0.5, "s": 0.521, "z": 0.525, "c": 0.550, "k": 0.579},
+    **dict.fromkeys("vxy", 0.592),
+    **dict.fromkeys("oaebdgpqhnu", 0.635),
+    **{"w": 0.818, "m": 0.974},
 }
 _RAISED = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 _GREEK = {
@@ -29,7 +34,7 @@ def text_width(text: str, points: float) -> float:
     Parameters
     ----------
     text : str
-        Characters of tick labels are known to the font's own widths, others count 0.65 of the font size.
+        Digits, signs and small letters have the font's own widths, others count 0.65 of the font size.
     points : float
         Font size.
     """

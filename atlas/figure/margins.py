@@ -23,6 +23,11 @@ KEY_GAP = 1.3
 KEY_WIDTH = 1.0
 KEY_LABELS = 3.4
 KEY_CAPTION = 1.5
+LEGEND_GAP = 1.0
+SWATCH_WIDTH = 1.25
+SWATCH_HEIGHT = 0.85
+SWATCH_GAP = 0.45
+LEGEND_LINE = 1.45  # from swatch to swatch
 
 
 @dataclass(frozen=True)
@@ -70,7 +75,9 @@ def sides(panel: Panel, across: Ticks, up: Ticks, width: int, spacing: Spacing) 
         longest = max((spacing.text(label) for label in up.labels), default=0.0)
         left += spacing.ems(LABEL_GAP) + longest + spacing.ems(UP_LABEL + ASCENT)
     right = spacing.line + pad
-    if panel.plate.has_key:
+    if panel.plate.legend_width:
+        right = legend_right(panel.plate.legend_width, spacing)
+    elif panel.plate.has_key:
         right = key_right(spacing)
     return Sides(
         math.ceil(max(left, before + pad)),
@@ -84,6 +91,11 @@ def key_right(spacing: Spacing) -> float:
     """Return the width of the margin that holds a colour key."""
     ems = KEY_GAP + KEY_WIDTH + LABEL_GAP + KEY_LABELS + KEY_CAPTION + PAD
     return 3 * spacing.line + spacing.minor + spacing.ems(ems)
+
+
+def legend_right(width: float, spacing: Spacing) -> float:
+    """Return the width of the margin that holds a legend, whose longest label has a width in font sizes."""
+    return 3 * spacing.line + spacing.ems(LEGEND_GAP + SWATCH_WIDTH + SWATCH_GAP + width + PAD)
 
 
 def _overhang(across: Ticks, width: int, spacing: Spacing) -> tuple[float, float]:

@@ -89,14 +89,12 @@ class _Ink:
 
     def copy(self, piece: Picture, under: NDArray[np.uint8]) -> None:
         """Write a picture into its part of the canvas."""
-        if self.table is None:
-            under[:] = piece.table[piece.indices]
-        elif self.table is _BILEVEL:
-            white = (piece.table == WHITE).all(axis=1).astype(np.uint8)
-            for line, indices in zip(under, piece.indices, strict=True):
-                line[:] = white[indices]
-        else:
-            under[:] = piece.indices
+        if piece.table is None or (self.table is not None and self.table is not _BILEVEL):
+            under[:] = piece.pixels
+            return
+        colours = piece.table if self.table is None else (piece.table == WHITE).all(axis=1).astype(np.uint8)
+        for line, indices in zip(under, piece.pixels, strict=True):
+            line[:] = colours[indices]
 
     def of(self, colour: tuple[int, int, int]) -> NDArray[np.uint8]:
         """Return how a colour is written."""
@@ -113,11 +111,13 @@ def _ink(page: Sequence[Piece]) -> _Ink:
     """Put the pictures' table first, then other colours, then greys as far as a palette has room."""
     if _is_line_art(page):
         return _Ink(_BILEVEL, (np.arange(256) >= HALF).astype(np.uint8))
-    tables = {piece.table.tobytes(): piece.table for piece in page if isinstance(piece, Picture)}
-    extra = sorted({piece.colour for piece in page if isinstance(piece, Block)})
+    pictures = [piece for piece in page if isinstance(piece, Picture)]
+    tables = {piece.table.tobytes(): piece.table for piece in pictures if piece.table is not None}
     first = next(iter(tables.values()), np.empty((0, 3), np.uint8))
+    held = {(int(red), int(green), int(blue)) for red, green, blue in first}
+    extra = sorted({piece.colour for piece in page if isinstance(piece, Block)} - held)
     room = 256 - len(first) - len(extra)
-    if len(tables) > 1 or room < LEAST_GREYS:
+    if len(tables) > 1 or room < LEAST_GREYS or any(piece.table is None for piece in pictures):
         return _Ink(None, np.repeat(np.arange(256, dtype=np.uint8)[:, None], 3, axis=1))
     count = min(room, 64)
     levels = np.round(np.linspace(0, 255, count)).astype(np.uint8)

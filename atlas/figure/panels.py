@@ -2,12 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from atlas.config.jobs import Figure, Plate
+from atlas.figure.boxes import TICK_FONT
+from atlas.figure.lettering import MM_PER_POINT, text_width
 from atlas.reading.sheet import Inset
 from tiles.errors import Refusal
 from tiles.window import Axis, View
+
+HINTED = 1.04  # type fitted to pixels may be a little wider than its font says
 
 
 class LayoutRefused(Refusal):
@@ -38,6 +43,9 @@ class PlateRequest:
         Above the frame; may be empty.
     inset : Inset, optional
         A magnified window.
+    legend_width : float
+        Where a legend stands to the right, the width of its longest label in font sizes, see
+        :func:`legend_width`; else 0. A panel with a legend has no colour key.
     """
 
     name: str
@@ -50,6 +58,7 @@ class PlateRequest:
     letter: str | None = None
     title: str = ""
     inset: Inset | None = None
+    legend_width: float = 0.0
 
 
 @dataclass(frozen=True)
@@ -118,7 +127,27 @@ def _plate_request(plate: Plate) -> PlateRequest:
         plate.letter,
         plate.title or "",
         plate.inset,
+        legend_width(legend_labels(plate)),
     )
+
+
+def legend_labels(plate: Plate) -> tuple[str, ...]:
+    """Return the longest labels that the legend of a plate may have; none where it has no legend."""
+    if plate.kind == "follow":
+        return (f"{plate.across.name} falling",)
+    if plate.by_attractor or plate.draw == "basin":
+        return ("attractor 10",)
+    if plate.draw == "attractors":
+        return ("10 attractors",)
+    if plate.draw in ("fate", "period"):
+        return ("quasi-periodic", f"period {plate.longest_period}")
+    return ()
+
+
+def legend_width(labels: Iterable[str]) -> float:
+    """Return the width of the longest of some labels of a legend, in font sizes."""
+    widths = (text_width(label, 1.0) / MM_PER_POINT for label in labels)
+    return TICK_FONT * HINTED * max(widths, default=0.0)
 
 
 @dataclass(frozen=True)

@@ -19,29 +19,54 @@ WHITE: Colour = (255, 255, 255)
 
 @dataclass(frozen=True)
 class Raster:
-    """The shaded counts of one panel or inset.
+    """The shaded counts, classes or values of one panel or inset: palette indices, or mixed colours.
 
     Attributes
     ----------
-    indices : ndarray of uint8, shape (rows, columns)
-        Palette indices; row 0 is the top line.
-    table : ndarray of uint8, shape (colours, 3)
-        The colour of every index.
+    indices : ndarray of uint8, shape (rows, columns), or None
+        Palette indices; row 0 is the top line. None where there are ``pixels``.
+    table : ndarray of uint8, shape (colours, 3), or None
+        The colour of every index. Beside ``pixels`` it serves the colour key alone and may be None.
     view : View
         What the raster shows.
     unsettled : ndarray of bool, shape (columns,), optional
         Columns that get a mark at the frame.
+    pixels : ndarray of uint8, shape (rows, columns, 3), optional
+        Red, green and blue in place of indices, for colours mixed after shading.
     """
 
-    indices: NDArray[np.uint8]
-    table: NDArray[np.uint8]
+    indices: NDArray[np.uint8] | None
+    table: NDArray[np.uint8] | None
     view: View
     unsettled: NDArray[np.bool_] | None = None
+    pixels: NDArray[np.uint8] | None = None
 
-    @property
-    def bilevel(self) -> bool:
-        """Whether it is line art, see :func:`is_bilevel`."""
-        return is_bilevel(self.indices, self.table)
+    def __post_init__(self) -> None:
+        if (self.indices is None) == (self.pixels is None) or (self.pixels is None and self.table is None):
+            raise ValueError("a raster has either indices and their table or pixels")
+
+    def picture(self, box: Box) -> Picture:
+        """Return the raster in its box on the page."""
+        if self.pixels is not None:
+            return Picture(box, self.pixels, None)
+        assert self.indices is not None
+        return Picture(box, self.indices, self.table)
+
+
+@dataclass(frozen=True)
+class LegendEntry:
+    """One line of a legend.
+
+    Attributes
+    ----------
+    label : str
+        Plain text.
+    colour : tuple of int
+        Red, green and blue of its swatch, 0 to 255.
+    """
+
+    label: str
+    colour: Colour
 
 
 @dataclass(frozen=True)
@@ -56,26 +81,49 @@ class PanelText:
         Positions along the colour key, 0 to 1, and densities in ascending order.
     key_caption : str
         What the key shows, plain text.
+    legend : sequence of LegendEntry
+        Colours and what they mean, from the top; drawn where the layout has room for a legend.
     """
 
     across_label: str
     up_label: str
     key_labels: Sequence[tuple[float, str]] = ()
     key_caption: str = ""
+    legend: Sequence[LegendEntry] = ()
 
 
 @dataclass(frozen=True)
 class Picture:
-    """A raster, one index a pixel of its box."""
+    """A raster in its box: palette indices with their table, or colours where there is no table.
+
+    Attributes
+    ----------
+    box : Box
+        Where it stands, one element of the raster a pixel.
+    pixels : ndarray of uint8, shape (height, width) or (height, width, 3)
+        Palette indices, or red, green and blue.
+    table : ndarray of uint8, shape (colours, 3), or None
+        The colour of every index.
+    """
 
     box: Box
-    indices: NDArray[np.uint8]
-    table: NDArray[np.uint8]
+    pixels: NDArray[np.uint8]
+    table: NDArray[np.uint8] | None
+
+    @property
+    def grey(self) -> bool:
+        """Whether no colour that can occur is other than a grey."""
+        found = self.pixels if self.table is None else self.table
+        return all(bool((part == part[..., :1]).all()) for part in found)
 
     @property
     def bilevel(self) -> bool:
-        """Whether it is line art, see :func:`is_bilevel`."""
-        return is_bilevel(self.indices, self.table)
+        """Whether it is line art: its table has black, and no used colour is other than black and white."""
+        if self.table is None:
+            return False
+        black, white = (self.table == BLACK).all(axis=1), (self.table == WHITE).all(axis=1)
+        either = black | white
+        return bool(black.any()) and all(bool(either[line].all()) for line in self.pixels)
 
 
 @dataclass(frozen=True)
@@ -119,13 +167,6 @@ class Words:
 
 
 Piece = Picture | Block | Words
-
-
-def is_bilevel(indices: NDArray[np.uint8], table: NDArray[np.uint8]) -> bool:
-    """Return whether a table has black and no used colour is another than black and white."""
-    black, white = (table == BLACK).all(axis=1), (table == WHITE).all(axis=1)
-    either = black | white
-    return bool(black.any()) and all(bool(either[line].all()) for line in indices)
 
 
 def frame(box: Box, line: int, colour: Colour = BLACK) -> Iterator[Block]:

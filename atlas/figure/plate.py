@@ -10,7 +10,7 @@ from atlas.figure.axes_image import draw_axes
 from atlas.figure.boxes import Layout
 from atlas.figure.drawing import pieces
 from atlas.figure.painting import paint
-from atlas.figure.pieces import PanelText, Picture, Piece, Raster, Words
+from atlas.figure.pieces import LegendEntry, PanelText, Picture, Piece, Raster, Words
 from atlas.figure.raster_files import png, raster_png, tiff
 from atlas.figure.typeset import Typesetter, check_characters, settings
 from atlas.figure.vector_files import pdf_with_pictures, svg_with_pictures
@@ -18,7 +18,7 @@ from atlas.output.certificate import as_text
 from atlas.output.whole_file import write_whole
 from tiles.errors import Refusal, nearest
 
-__all__ = ["FORMATS", "PanelText", "Raster", "draw", "draw_axes", "files"]
+__all__ = ["FORMATS", "LegendEntry", "PanelText", "Raster", "draw", "draw_axes", "files"]
 
 FORMATS = ("png", "tiff", "pdf", "svg")
 MAKER = "iterated-map-atlas"
@@ -96,7 +96,7 @@ def _vector_files(
     layout: Layout, page: list[Piece], setter: Typesetter, formats: Sequence[str], text: str
 ) -> Iterator[tuple[str, bytes]]:
     pictures = [
-        (piece.box, raster_png(piece.indices, piece.table)) for piece in page if isinstance(piece, Picture)
+        (piece.box, raster_png(piece.pixels, piece.table)) for piece in page if isinstance(piece, Picture)
     ]
     title = layout.title or layout.panels[0].title or layout.panels[0].name
     if "pdf" in formats:

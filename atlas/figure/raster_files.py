@@ -65,9 +65,9 @@ def tiff(painted: Painted, dpi: float, record: str) -> bytes:
     return _saved(image, format="TIFF", compression="tiff_lzw", tiffinfo=tags)
 
 
-def raster_png(indices: NDArray[np.uint8], table: NDArray[np.uint8]) -> bytes:
-    """Return a raster alone as a palette PNG."""
-    return png(Painted(indices, table))
+def raster_png(pixels: NDArray[np.uint8], table: NDArray[np.uint8] | None) -> bytes:
+    """Return a raster alone as a PNG: of palette indices, or of colours where there is no table."""
+    return png(Painted(pixels, table))
 
 
 def _image(painted: Painted) -> Any:

@@ -27,7 +27,7 @@ def pdf_with_pictures(pdf: bytes, pictures: Sequence[bytes]) -> bytes:
     pdf : bytes
         A file with a plain cross-reference table and one image object a picture.
     pictures : sequence of bytes
-        PNG files with a palette; their compressed pixels are taken over as they are.
+        PNG files, with a palette or RGB; their compressed pixels are taken over as they are.
 
     Raises
     ------
@@ -65,12 +65,17 @@ def _pdf_image(number: int, png: bytes) -> bytes:
     for kind, data in png_chunks(png):
         found[kind] = found.get(kind, b"") + data
     width, height, depth = struct.unpack_from(">IIB", found[b"IHDR"])
-    palette = found[b"PLTE"]
+    palette = found.get(b"PLTE")
+    space, colours = b"/DeviceRGB", 3
+    if palette is not None:
+        space = b"[ /Indexed /DeviceRGB %d <%s> ]" % (len(palette) // 3 - 1, palette.hex().encode())
+        colours = 1
     return b"".join(
         [
             b"%d 0 obj\n<< /Type /XObject /Subtype /Image /Width %d /Height %d " % (number, width, height),
-            b"/ColorSpace [ /Indexed /DeviceRGB %d <%s> ] " % (len(palette) // 3 - 1, palette.hex().encode()),
-            b"/BitsPerComponent %d /Filter /FlateDecode /DecodeParms << /Predictor 15 /Colors 1 " % depth,
+            b"/ColorSpace %s " % space,
+            b"/BitsPerComponent %d /Filter /FlateDecode " % depth,
+            b"/DecodeParms << /Predictor 15 /Colors %d " % colours,
             b"/BitsPerComponent %d /Columns %d >> /Length %d >>\nstream\n"
             % (depth, width, len(found[b"IDAT"])),
             found[b"IDAT"],
