@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from atlas.config.digests import decisive
+from atlas.config.draws import KINDS
 from atlas.config.jobs import Plate
 from atlas.config.load import plate_from_parts
 from atlas.families.reader import Family
@@ -56,7 +57,7 @@ def orbit_counts(
     family : Family
         From `atlas.family` or `atlas.load(path).families`.
     view : View
-        A parameter across, a state variable up.
+        A parameter across, a state variable or observable up.
     size : (int, int)
         Columns and rows.
     set : mapping of str to number, optional
@@ -103,6 +104,12 @@ def orbit_counts(
     place = REQUEST
     if not isinstance(view, View):
         raise place.at("view").refusal(f"{shown(view)} is no view; write atlas.View(across=..., up=...)")
+    kind = plate_from_parts(family, view.across, view.up, place=place).kind
+    if kind != "histogram":
+        raise place.at("view").refusal(
+            f"{view.across.name} across and {view.up.name} up make {KINDS[kind]}; "
+            "put a parameter across and a state variable or observable up"
+        )
     columns, rows = _cells(size, place.at("size"))
     check_arrays((columns, rows), parse_memory(memory))
     job = plate_from_parts(

@@ -105,8 +105,9 @@ def _spread(
             f"{len(grid)} counts are given for the {len(box)} sides of the box; write one count a side"
         )
     if prod(grid) > MOST_STARTS:
+        told = " x ".join(map(str, grid))
         raise place.at("grid").refusal(
-            f"{' x '.join(map(str, grid))} are {prod(grid)} starts; at most {MOST_STARTS} are allowed"
+            f"a grid of {told} has {prod(grid)} starts; at most {MOST_STARTS} are allowed"
         )
     sides = [
         [_centre(*side, number, count) for number in range(count)]

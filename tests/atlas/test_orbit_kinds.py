@@ -64,9 +64,11 @@ class TestGrid:
 
     def test_the_most_starts_are_read_and_one_more_is_not(self):
         assert len(spread([64, 64], {"x": [0, 1], "y": [0, 1]})) == MOST_STARTS
-        with pytest.raises(ConfigRefused, match=r"grid: 17 x 241 are 4097 starts; at most 4096 are allowed"):
+        with pytest.raises(
+            ConfigRefused, match=r"grid: a grid of 17 x 241 has 4097 starts; at most 4096 are allowed"
+        ):
             spread([17, 241], {"x": [0, 1], "y": [0, 1]})
-        with pytest.raises(ConfigRefused, match="are 4611686018427387904 starts"):
+        with pytest.raises(ConfigRefused, match="has 4611686018427387904 starts"):
             spread([1 << 31, 1 << 31], {"x": [0, 1], "y": [0, 1]})
 
     def test_it_is_written_as_the_list_that_it_comes_to(self):

@@ -263,13 +263,22 @@ def test_a_wrong_request_gets_one_sentence(more: dict[str, Any], sentence: str) 
     ("across", "up", "sentence"),
     [
         (("r", 3, 4), ("y", 0, 1), "up: the family 'logistic' has no parameter or state variable 'y'"),
-        (("x", 0, 1), ("r", 3, 4), "this version draws a parameter across and a state variable up"),
+        (("x", 0, 1), ("r", 3, 4), r"across: a state variable \(x\) across and a parameter .* swap the axes"),
         (("r", 3, "3.0000000000000002"), ("x", 0, 1), "finer than float64 can resolve"),
     ],
 )
 def test_a_wrong_view_gets_one_sentence(across: Any, up: Any, sentence: str) -> None:
     with pytest.raises(Refusal, match=sentence):
         atlas.orbit_counts(atlas.family("logistic"), atlas.View(across=across, up=up), **QUICK)
+
+
+def test_counts_of_orbits_are_of_a_parameter_and_a_state() -> None:
+    plane = atlas.View(across=("growth", 5, 100), up=("beta", 2, 10))
+    with pytest.raises(Refusal, match="view: growth across and beta up make a parameter plane; put a param"):
+        atlas.orbit_counts(atlas.family("hassell"), plane, **QUICK)
+    portrait = atlas.View(across=("x", -2, 2), up=("y", -1, 1))
+    with pytest.raises(Refusal, match="view: x across and y up make a phase portrait; put a parameter"):
+        atlas.orbit_counts(atlas.family("henon"), portrait, **QUICK)
 
 
 def test_a_result_that_does_not_fit_is_refused_with_its_size() -> None:
@@ -399,6 +408,25 @@ NO_ARGUMENT: list[tuple[Callable[[], Any], str]] = [
     (lambda: atlas.orbit_counts(atlas.family("tent"), (("r", 1, 2), ("x", 0, 1)), **QUICK), "view: a list"),  # type: ignore[arg-type]
     (lambda: atlas.bin_points({"a": [1]}, ("a",), size=(2, 2)), "view: a list is no view"),  # type: ignore[arg-type]
     (lambda: atlas.plate("logistic", ("r", 4, 1), ("x", 0, 1)), "across: axis 'r'"),
+    (lambda: atlas.plate("logistic", ("r", 3, 4), ("x", 0, 1), draw="fate"), "draw: 'fate' cannot be drawn"),
+    (
+        lambda: atlas.plate("logistic", ("r", 3, 4), ("x", 0, 1), steps=99),
+        "steps: '99' belongs to a parameter",
+    ),
+    (
+        lambda: atlas.plate("logistic", ("r", 3, 4), ("x", 0, 1), record=3),
+        "record: '3' stands where a mapping",
+    ),
+    (
+        lambda: atlas.plate(
+            "logistic", ("r", 3, 4), ("x", 0, 1), starts={"grid": [9999], "box": {"x": (0, 1)}}
+        ),
+        "starts.grid: a grid of 9999 has 9999 starts; at most 4096 are allowed",
+    ),
+    (
+        lambda: atlas.draw_points({"a": [1], "b": [2]}, "a", "b", ["a.png"], palette="balance"),
+        "palette: 'balance' is a diverging palette and density needs a sequential one",
+    ),
     (lambda: atlas.rebuild_site("a.sqlite", "site", palette="gray"), "palette: 'gray'"),
     (lambda: atlas.rebuild_site(3, "site"), "index: '3' is no path"),  # type: ignore[arg-type]
 ]

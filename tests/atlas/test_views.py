@@ -462,7 +462,7 @@ WRONG: list[tuple[str, dict[str, Any], str]] = [
     (
         "split",
         {"starts": {"grid": [100, 100], "box": {"adults": [0, 1], "juveniles": [0, 1]}}},
-        "100 x 100 are 1000",
+        "a grid of 100 x 100 has 10000 starts",
     ),
     (
         "split",
