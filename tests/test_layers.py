@@ -19,11 +19,13 @@ ROOT = Path(__file__).parents[1]
 TABLE = """
  0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
  1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
- 2  tiles.window tiles.pyramid tiles.curve tiles.classes
+ 1  tiles.site_folder
+ 2  tiles.window tiles.pyramid tiles.curve tiles.classes tiles.side_car
  3  tiles.codec tiles.shading tiles.stages tiles.values tiles.mixing tiles.plane
  4  tiles.column tiles.index tiles.meta tiles.value_codec
- 5  tiles.unfinished tiles.plane_index tiles.site
- 6  tiles.build tiles.plane_build
+ 5  tiles.unfinished tiles.plane_index tiles.plane_meta
+ 6  tiles.build tiles.plane_build tiles.plane_site
+ 7  tiles.site
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
 10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
@@ -56,21 +58,26 @@ TABLE = """
 22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake atlas.figure.layout atlas.figure.legends
 23  atlas.planes.turns
 24  atlas.planes.finder
+25  atlas.planes.layers
+24  atlas.output.colouring
+26  atlas.planes.survey atlas.planes.searching atlas.output.panel atlas.output.panels
+27  atlas.output.panels.histogram atlas.output.panels.plane
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.drawing
 24  atlas.orbits.counting atlas.points.counting atlas.figure.plate
 25  atlas.orbits.counts
-25  atlas.output.printing atlas.points.record atlas.points.spool
-26  atlas.output.tileset atlas.points.binning atlas.points.plates
-27  atlas.output.forecast
-28  atlas.output.batch atlas.points.tile_sets
+28  atlas.output.printing
+25  atlas.points.record atlas.points.spool
+29  atlas.output.tileset atlas.points.binning atlas.points.plates
+30  atlas.output.forecast
+31  atlas.output.batch atlas.points.tile_sets
 
-30  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
-30  atlas.cli.requests atlas.cli.point_requests
-31  atlas.cli.colour_options
-32  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
-32  atlas.cli.show atlas.cli.site
-33  atlas.cli
-34  atlas
+40  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
+40  atlas.cli.requests atlas.cli.point_requests
+41  atlas.cli.colour_options
+42  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
+42  atlas.cli.show atlas.cli.site
+43  atlas.cli
+44  atlas
 """
 LAYERS = {module: int(row.split()[0]) for row in TABLE.split("\n") if row for module in row.split()[1:]}
 

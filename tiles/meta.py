@@ -54,9 +54,34 @@ def meta(
     dict
         JSON-able.
     """
-    colours = [f"#{red:02x}{green:02x}{blue:02x}" for red, green, blue in table.tolist()]
-    labels, units = header.get("labels") or {}, header.get("units") or {}
+    colours = [hexadecimal(colour) for colour in table.tolist()]
+    units = header.get("units") or {}
     found = {
+        **common(header, view, present, certificate),
+        "layers": [{"name": LAYER, "label": "density", "kind": "density"}],
+        "key": {
+            "colours": colours[1 : LEVELS + 1],
+            "labels": [list(label) for label in key_labels(fit)],
+            "caption": header.get("caption") or _caption(view.up, units.get(view.up.name)),
+            "shading": fit.shading,
+        },
+        "background": colours[0],
+        "missing": colours[MISSING],
+    }
+    if marks is not None and (text := runs_text(marks[1])):
+        found["marks"] = {str(marks[0]): text}
+    return found
+
+
+def common(
+    header: Mapping[str, Any],
+    view: View,
+    present: Mapping[Pair, Mapping[int, Runs]],
+    certificate: Mapping[str, Any] | None,
+) -> dict[str, Any]:
+    """Return what the description of every kind of tile set holds; parameters as for :func:`meta`."""
+    labels, units = header.get("labels") or {}, header.get("units") or {}
+    return {
         "version": VERSION,
         "tile": TILE,
         "title": header.get("title") or "",
@@ -67,27 +92,20 @@ def meta(
             "across": _axis(view.across, labels.get(view.across.name), units.get(view.across.name)),
             "up": _axis(view.up, labels.get(view.up.name), units.get(view.up.name)),
         },
-        "layers": [{"name": LAYER, "label": "density", "kind": "density"}],
         "pairs": [list(pair) for pair in sorted(present)],
         "present": {
             f"{a}/{u}": {str(column): runs_text(runs) for column, runs in columns.items()}
             for (a, u), columns in present.items()
         },
-        "key": {
-            "colours": colours[1 : LEVELS + 1],
-            "labels": [list(label) for label in key_labels(fit)],
-            "caption": header.get("caption") or _caption(view.up, units.get(view.up.name)),
-            "shading": fit.shading,
-        },
-        "background": colours[0],
-        "missing": colours[MISSING],
         "plate": {**_labels(view), **(header.get("plate") or {})},
         "families": dict(header.get("families") or {}),
         "certificate": dict(certificate or {}),
     }
-    if marks is not None and (text := runs_text(marks[1])):
-        found["marks"] = {str(marks[0]): text}
-    return found
+
+
+def hexadecimal(colour: Iterable[int]) -> str:
+    """Return red, green and blue as ``#rrggbb``."""
+    return "#" + "".join(f"{part:02x}" for part in colour)
 
 
 def script(found: Mapping[str, Any]) -> str:

@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-import json
-import os
-import shutil
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from functools import partial
@@ -14,12 +11,13 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from tiles import png
+from tiles import png, site_folder
 from tiles.errors import IndexRefused
 from tiles.grid import TILE, Address, Pair
 from tiles.index import Index
 from tiles.meta import LAYER, meta, runs_where, script
 from tiles.page_files import page_files
+from tiles.plane_site import fill_planes
 from tiles.pyramid import Counts
 from tiles.shading import Fit, colour_table, shade_counts
 from tiles.store import Readers, intact, written
@@ -51,9 +49,11 @@ def build_site(
     out_dir : Path
         The folder.
     shading : str
-        Its fit is taken from the index, or fitted to the middle level pair.
+        Its fit is taken from the index, or fitted to the middle level pair. Of planes, that of sequential
+        values.
     palette, background, missing : str
-        See :func:`tiles.shading.colour_table`.
+        See :func:`tiles.shading.colour_table`. Of planes, the palette of those layers of values whose kind
+        it fits; the others keep their own, and classes have one palette always.
     run : callable
         Scheduler of the tasks; each writes one tile column of a level pair.
     unfinished : Path, optional
@@ -66,27 +66,38 @@ def build_site(
     OutputFailed
         When the disk is full or the folder is closed.
     """
-    unfinished = out_dir.parent / ".parts" / out_dir.name if unfinished is None else unfinished
-    table = colour_table(palette, background=background, missing=missing, shading=shading)
+    site = out_dir.parent / ".parts" / out_dir.name if unfinished is None else unfinished
+    with intact(index_path), Index.open(index_path) as index:
+        planes = index.header.get("kind") == "plane"
+    if planes:
+        fill_planes(index_path, site, shading=shading, chosen=palette, background=background, run=run)
+    else:
+        colours = {"shading": shading, "palette": palette, "background": background, "missing": missing}
+        _fill(index_path, site, shading, colours, run)
+    with written(out_dir):
+        site_folder.name(site, out_dir)
+
+
+def _fill(index_path: Path, site: Path, shading: str, colours: dict[str, Any], run: Run) -> None:
+    """Fill an unfinished folder of a tile set of densities."""
+    table = colour_table(
+        colours["palette"], background=colours["background"], missing=colours["missing"], shading=shading
+    )
     with intact(index_path), Index.open(index_path) as index:
         fit = index.fit(shading) or index.fit_from(shading=shading)
         present = {pair: index.present(pair) for pair in index.pairs}
         shades = {up: Shades(fit, index.view.up.cell_size(TILE << up)) for _, up in index.pairs}
-        with written(unfinished):
-            _continue(
-                unfinished, {"counts": index.counts_digest(), "fit": fit.to_json(), "table": table.tolist()}
-            )
-            colours = {"shading": shading, "palette": palette, "background": background, "missing": missing}
-            _write_page(unfinished, index, present, fit, table, colours)
+        made_from = {"counts": index.counts_digest(), "fit": fit.to_json(), "table": table.tolist()}
+        with written(site):
+            site_folder.begin(site, made_from)
+            _write_page(site, index, present, fit, table, colours)
     with Readers(Index, index_path) as readers:
         tasks = (
-            partial(_write_column, readers, unfinished, shades[pair[1]], table, pair, column)
+            partial(_write_column, readers, site, shades[pair[1]], table, pair, column)
             for pair, columns in present.items()
             for column in columns
         )
         run(tasks, lambda _: None)
-    with written(out_dir):
-        _replace(unfinished, out_dir)
 
 
 def pixels(index: Index, fit: Fit, table: NDArray[np.uint8], address: Address) -> NDArray[np.uint8]:
@@ -184,23 +195,13 @@ def _exposure(index: Index, across_level: int, column: int) -> NDArray[np.uint64
     return exposure
 
 
-def _continue(site: Path, made_from: dict[str, Any]) -> None:
-    """Keep an unfinished folder that was made from the same counts and colours, else start a new one."""
-    stamp, text = site / ".made-from", json.dumps(made_from, sort_keys=True)
-    if not stamp.is_file() or stamp.read_text("ascii") != text:
-        if site.exists():
-            shutil.rmtree(site)
-        site.mkdir(parents=True)
-        stamp.write_text(text, "ascii")
-
-
 def _write_page(
     site: Path,
     index: Index,
     present: dict[Pair, Any],
     fit: Fit,
     table: NDArray[np.uint8],
-    colours: dict[str, str | None],
+    colours: dict[str, Any],
 ) -> None:
     """Write the page and its description, whose plate has the colours of this folder."""
     for name, content in page_files().items():
@@ -216,16 +217,3 @@ def _write_page(
 def _unsettled(index: Index, level: int) -> Iterator[tuple[int, NDArray[np.bool_]]]:
     for column, numbers in index.built_columns(level):
         yield column * TILE, numbers[PER_COLUMN.index("unsettled")] > 0
-
-
-def _replace(site: Path, out_dir: Path) -> None:
-    """Give a complete folder its name; the folder that had it before goes."""
-    (site / ".made-from").unlink()
-    out_dir.parent.mkdir(parents=True, exist_ok=True)
-    old = site.with_name(f"{site.name}.old")
-    if old.exists():
-        shutil.rmtree(old)
-    if out_dir.exists():
-        os.replace(out_dir, old)
-    os.replace(site, out_dir)
-    shutil.rmtree(old, ignore_errors=True)
