@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from atlas.errors import PlanRefused, shown
 from atlas.orbits.orbit import OrbitCounter
 from tiles.errors import TooLarge
-from tiles.window import Axis
+from tiles.window import Axis, View
 
 BASE_MEMORY = 225 << 20
 """What the libraries take, measured: 215 MiB, and 45 MiB more when a map is compiled for the first time."""
@@ -87,6 +87,18 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
             f"can resolve on {counter.rows} rows: rounding in the map grows to a cell of the picture; "
             f"use fewer rows, or make it at least {needed:.1e} wide"
         )
+
+
+def check_pixels(view: View, columns: int, rows: int, where: str = "") -> None:
+    """Refuse a plane or a basin chart whose pixels float64 cannot tell apart.
+
+    Raises
+    ------
+    PlanRefused
+    """
+    lead = f"{where}: " if where else ""
+    _check_depth(view.across, columns, 2.0, lead)
+    _check_depth(view.up, rows, 2.0, lead)
 
 
 def _check_depth(axis: Axis, cells: int, steps: float, lead: str) -> None:

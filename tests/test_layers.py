@@ -28,13 +28,15 @@ TABLE = """
  7  tiles.site
 
 10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
-10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
+10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading
+10  atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
 10  atlas.config.draws
 12  atlas.orbits.block atlas.output.remarks
 11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
 11  atlas.output.whole_file
 12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger
-13  atlas.formula.algebra atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation atlas.formula.symbolic
+13  atlas.formula.algebra atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation
+13  atlas.formula.symbolic
 13  atlas.arithmetic.float64 atlas.reading.kinds atlas.reading.yaml_text atlas.reading.sheet
 13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader atlas.points.tables
 14  atlas.formula.differentiation atlas.orbits.volumes atlas.reading.section atlas.figure.boxes
@@ -53,9 +55,11 @@ TABLE = """
 20  atlas.config.schema
 20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
 21  atlas.points.jobs
-21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate atlas.figure.margins
+21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate
+21  atlas.figure.margins
 21  atlas.figure.insets
-22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake atlas.figure.layout atlas.figure.legends
+22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake
+22  atlas.figure.layout atlas.figure.legends
 23  atlas.planes.turns
 24  atlas.planes.finder
 25  atlas.planes.layers

@@ -10,16 +10,13 @@ from dataclasses import replace
 
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
-from atlas.orbits.orbit import OrbitCounter
-from atlas.orbits.step import step_source
-from atlas.output.printing import sheet_of
+from atlas.output.panels.histogram import counting_seconds
+from atlas.output.printing import maker_of, sheet_of
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
 from atlas.plan import BASE_MEMORY, DEFAULT_MEMORY, Need
 from tiles.column import strip_width
 from tiles.grid import TILE, level_pairs
 
-SECONDS_PER_SAMPLE = 1.2e-9
-SECONDS_PER_SLOW_CALL = 0.6e-9
 SECONDS_PER_PIXEL = {"png": 1.2e-8, "tiff": 3.5e-8, "pdf": 1.5e-8, "svg": 1.2e-8}
 SECONDS_PER_TILE = 1.5e-3
 OCCUPIED_TILES = 0.5
@@ -51,8 +48,7 @@ def room_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         return _room_of_tile_set(record, workers, budget)
     sheet = sheet_of(record)
-    counters = [view.counter() for view in sheet.views]
-    samples = sum(counter.columns * counter.exposure for counter in counters)
+    samples = sum(maker_of(view.plate).room(view).samples for view in sheet.views)
     return Need(record.pixels, samples, 0.0, sheet.memory)
 
 
@@ -62,10 +58,10 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         pairs = level_pairs(record.levels.across, record.levels.up, record.pairs)
         tiles = sum(2 ** (across + up) for across, up in pairs)
-        seconds = _counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
+        seconds = counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
         return replace(room, seconds=seconds / builders(record, workers, budget))
     width, height = record.pixels
-    seconds = sum(_counting_seconds(view.counter()) for view in sheet_of(record).views) / workers
+    seconds = sum(maker_of(view.plate).seconds(view) for view in sheet_of(record).views) / workers
     seconds += sum(SECONDS_PER_PIXEL[form] for form in record.formats) * width * height
     return replace(room, seconds=seconds)
 
@@ -108,10 +104,3 @@ def _column_memory(rows: int, block: int, waiting: float) -> int:
     pieces = rows // strip if strip < TILE else 0
     kept = int(waiting * min(TILE * rows, MOST_CELLS_WAITING)) + BYTES_PER_PIECE * pieces
     return 4 * rows * (strip + min(strip, block) + 1) + kept
-
-
-def _counting_seconds(counter: OrbitCounter) -> float:
-    slow = step_source(counter.family).slow_calls
-    orbits = counter.columns * counter.orbits_per_column
-    each = 0.1e-9 + SECONDS_PER_SLOW_CALL * slow
-    return orbits * (counter.rules.transient * each + counter.rules.samples * (SECONDS_PER_SAMPLE + each))

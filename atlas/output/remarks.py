@@ -55,3 +55,21 @@ def remark_on_samples(name: str, samples: int, reached: float) -> list[str]:
         f"{name}: samples: auto took {samples} of each orbit and gave about {reached:.2g} counts a cell, "
         f"because so few fall inside the window; samples: {wanted} would give {FEWEST_COUNTS:.0f}"
     ]
+
+
+def remarks_on_fates(name: str, shares: Mapping[str, float | int]) -> list[str]:
+    """Return what must not go unsaid of a plane or a basin chart, one sentence each."""
+    found = []
+    if float(shares["escaped"]) >= 1.0 - 1e-12:
+        found.append(f"{name}: every orbit escapes; choose other intervals or another start")
+    if float(shares["unsettled"]) >= LEAST_TOLD:
+        found.append(
+            f"{name}: {shares['unsettled']:.2%} of the pixels had not settled; more steps or a higher "
+            "transient_limit would settle more"
+        )
+    if shares.get("orbits_on_repelling_start"):
+        found.append(
+            f"{name}: {shares['orbits_on_repelling_start']} orbits start exactly on a repelling cycle and "
+            "stay there; move the start to see the attractor"
+        )
+    return found

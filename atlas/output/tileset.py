@@ -23,8 +23,9 @@ from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
+from atlas.output.colouring import Colours, key_caption
 from atlas.output.folders import check_folder, check_site
-from atlas.output.printing import Colours, Made, key_caption
+from atlas.output.printing import Made
 from atlas.output.remarks import remarks_on
 from atlas.output.reporter import PREPARING, Reporter, Silence
 from atlas.output.whole_file import PARTS

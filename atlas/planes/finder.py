@@ -84,6 +84,11 @@ class FateFinder:
         """The compiled map."""
         return step_source(self.family, self.family.state_names)
 
+    @property
+    def winding(self) -> int | None:
+        """Number of the periodic state variable whose turns are counted, if there is one."""
+        return winding_number(self.source.widths)
+
     @cached_property
     def module(self) -> ModuleType:
         """The compiled kernels."""
@@ -91,7 +96,7 @@ class FateFinder:
             self.source,
             lanes=self.lanes,
             mortal=np.flatnonzero(self.low).tolist(),
-            winding=winding_number(self.source.widths),
+            winding=self.winding,
         )
         return load_module(text)
 

@@ -9,8 +9,9 @@ from typing import Any
 from atlas.figure.layout import layout
 from atlas.figure.pieces import PanelText
 from atlas.figure.typeset import check_characters
+from atlas.output.colouring import shaded
 from atlas.output.folders import check_files, check_folder
-from atlas.output.printing import files_by_format, shaded, sheet_memory
+from atlas.output.printing import files_by_format, sheet_memory
 from atlas.output.reporter import Reporter, Silence
 from atlas.plan import check_fits, parse_memory
 from atlas.points.cells import Grid

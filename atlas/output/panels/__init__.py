@@ -1,0 +1,1 @@
+"""Panels of plates, one kind of view a module."""

@@ -1,0 +1,213 @@
+"""Parameter planes as panels: fates found at the raster's own pixels or finer, then coloured."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from hashlib import blake2b
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from atlas.config.draws import DRAWS
+from atlas.config.jobs import Plate
+from atlas.figure.pieces import LegendEntry, PanelText, Raster
+from atlas.orbits.schedule import Schedule
+from atlas.orbits.step import step_source
+from atlas.output.panel import Panel, Room, View, label_of
+from atlas.output.remarks import remarks_on_fates
+from atlas.output.reporter import PREPARING, Reporter
+from atlas.planes.fates import CLASS_NONE, class_name
+from atlas.planes.finder import FateFinder, Region
+from atlas.planes.layers import Values, classes_of
+from atlas.planes.searching import finder_of
+from atlas.planes.survey import Tally, layers_of, survey
+from tiles.classes import class_colours, class_shades, class_table
+from tiles.mixing import mixed
+from tiles.shading import colour_table
+from tiles.values import fit_values, shade_values, value_key_labels
+
+SECONDS_PER_STEP, SECONDS_PER_SLOW_CALL = 0.7e-9, 1.2e-9
+CAPTIONS = {
+    "lyapunov": "largest Lyapunov exponent (per step)",
+    "lyapunov_2": "second Lyapunov exponent (per step)",
+    "rotation": "rotation number (turns per step)",
+    "escape": "steps to escape",
+}
+MOST_PERIODS, LEAST_SHARE = 12, 5e-4
+
+
+class PlaneMaker:
+    """Makes parameter planes of fates, periods, exponents, rotation numbers, escapes and attractors."""
+
+    def room(self, view: View) -> Room:
+        """Return what a view needs."""
+        finder = finder_of(view.plate, view.columns, view.rows)
+        pixels = finder.columns * finder.rows
+        each = 1 if DRAWS[view.plate.draw].palette_kind == "categorical" else 4 + 8
+        raster = (3 if view.plate.supersampling > 1 else 1) * view.cells
+        return Room(pixels, each * pixels, raster)
+
+    def seconds(self, view: View) -> float:
+        """Return the estimated time of one core, as if every orbit had to be measured."""
+        finder = finder_of(view.plate, view.columns, view.rows)
+        slow = SECONDS_PER_SLOW_CALL * step_source(view.plate.family).slow_calls
+        steps = finder.rules.transient + finder.rules.steps
+        return finder.columns * finder.rows * steps * (SECONDS_PER_STEP + slow) * len(finder.setting.starts)
+
+    def make(self, view: View, name: str, schedule: Schedule, reporter: Reporter) -> Panel:
+        """Find the fates of a view and colour them."""
+        reporter.begin(name, PREPARING, 0)
+        finder = finder_of(view.plate, view.columns, view.rows)
+        finder.warm()
+        reporter.begin(name, "finding fates", finder.columns * finder.rows)
+        categorical = DRAWS[view.plate.draw].palette_kind == "categorical"
+        picture: _Classes | _Values = _Classes(view, finder) if categorical else _Values(view, finder)
+        names = picture.layers
+
+        def look(region: Region) -> tuple[Any, Tally]:
+            layers, tally = layers_of(finder, region, names, schedule.stop)
+            return picture.kept(layers), tally
+
+        tally = Tally({})
+
+        def done(region: Region, result: tuple[Any, Tally]) -> None:
+            picture.put(region, result[0])
+            tally.add(result[1])
+
+        survey(finder, look, done, schedule, reporter.advance)
+        raster, text = picture.finished()
+        shares = tally.shares()
+        return Panel(
+            raster,
+            text,
+            shares,
+            record_of(finder, view.plate.supersampling),
+            finder.columns * finder.rows,
+            picture.digest(),
+            tuple(remarks_on_fates(view.name, shares)),
+        )
+
+
+def record_of(finder: FateFinder, supersampling: int = 1) -> dict[str, Any]:
+    """Return what the certificate says of the pixels of a plane."""
+    rules = finder.rules
+    found: dict[str, Any] = {"columns": finder.columns, "rows": finder.rows}
+    found |= {"transient": rules.transient, "steps": rules.steps, "starts": len(finder.setting.starts)}
+    return found | ({"supersampling": supersampling} if supersampling > 1 else {})
+
+
+def legend_of(classes: Mapping[int, int], names: Mapping[int, str] | None = None) -> list[LegendEntry]:
+    """Return the legend of the classes present: numbers in ascending order, then the others.
+
+    Parameters
+    ----------
+    classes : mapping of int to int
+        Pixels of each class.
+    names : mapping of int to str, optional
+        Names of classes that are not called as in a plane of fates.
+    """
+    total = sum(classes.values())
+    numbered = sorted(number for number in classes if number < CLASS_NONE - 100)
+    shown = [number for number in numbered if classes[number] >= LEAST_SHARE * total][:MOST_PERIODS]
+    others = sorted(number for number in classes if number not in numbered and number != CLASS_NONE)
+    listed = [*shown, *others]
+    entries = [
+        LegendEntry((names or {}).get(number) or class_name(number), colour)
+        for number, colour in zip(listed, class_colours(listed), strict=True)
+    ]
+    if len(numbered) > len(shown):
+        more = len(numbered) - len(shown)
+        entries.insert(len(shown), LegendEntry(f"{more} other periods", (255, 255, 255)))
+    return entries
+
+
+class _Classes:
+    """A picture of classes, kept as palette indices of the small pixels."""
+
+    def __init__(self, view: View, finder: FateFinder) -> None:
+        self.view, self.draw, self.factor = view, view.plate.draw, view.plate.supersampling
+        self.lines = np.empty((finder.rows, finder.columns), np.uint8)
+        self.classes: dict[int, int] = {}
+        self.hash = blake2b(digest_size=16)
+        self.layers = {
+            "fate": ("fate", "period"),
+            "period": ("period",),
+            "attractors": ("attractors",),
+        }[self.draw]
+
+    def kept(self, layers: dict[str, Values]) -> NDArray[np.uint16]:
+        """Return the classes of a region."""
+        if self.draw == "fate":
+            return classes_of(layers["fate"], layers["period"])
+        numbers = layers[self.layers[0]]
+        return np.where(numbers == 0, CLASS_NONE, numbers).astype(np.uint16)
+
+    def put(self, region: Region, classes: NDArray[np.uint16]) -> None:
+        """Keep a region; regions come in order."""
+        rows = len(self.lines)
+        shades = class_shades(classes.T[::-1])
+        self.lines[rows - region.high : rows - region.low, region.left : region.right] = shades
+        self.hash.update(np.ascontiguousarray(classes, "<u2").data)
+        for number, often in zip(*np.unique(classes, return_counts=True), strict=True):
+            self.classes[int(number)] = self.classes.get(int(number), 0) + int(often)
+
+    def finished(self) -> tuple[Raster, PanelText]:
+        """Return the raster and its lettering."""
+        plate, table = self.view.plate, class_table()
+        names = None
+        if self.draw == "attractors":
+            names = {number: f"{number} attractor{'s' * (number > 1)}" for number in self.classes}
+        legend = tuple(legend_of(self.classes, names))
+        text = PanelText(label_of(plate, plate.across), label_of(plate, plate.up), legend=legend)
+        if self.factor == 1:
+            return Raster(self.lines, table, plate.view), text
+        return Raster(None, None, plate.view, pixels=mixed(self.lines, table, self.factor)), text
+
+    def digest(self) -> str:
+        """Return the digest of all classes."""
+        return self.hash.hexdigest()
+
+
+class _Values:
+    """A picture of values of the small pixels."""
+
+    def __init__(self, view: View, finder: FateFinder) -> None:
+        self.view, self.layers = view, (view.plate.draw,)
+        self.values = np.empty((finder.rows, finder.columns), np.float32)
+        self.hash = blake2b(digest_size=16)
+
+    def kept(self, layers: dict[str, Values]) -> Values:
+        """Return the values of a region."""
+        return layers[self.layers[0]]
+
+    def put(self, region: Region, values: Values) -> None:
+        """Keep a region; regions come in order."""
+        rows = len(self.values)
+        self.values[rows - region.high : rows - region.low, region.left : region.right] = values.T[::-1]
+        self.hash.update(np.ascontiguousarray(values, "<f8").data)
+
+    def finished(self) -> tuple[Raster, PanelText]:
+        """Return the raster and its lettering."""
+        plate = self.view.plate
+        fit = fit_values(self.values, kind=_kind(plate), shading=plate.shading)
+        table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
+        shades = shade_values(self.values, fit)
+        text = PanelText(
+            label_of(plate, plate.across),
+            label_of(plate, plate.up),
+            value_key_labels(fit) if plate.key else (),
+            CAPTIONS[plate.draw] if plate.key else "",
+        )
+        if plate.supersampling == 1:
+            return Raster(shades, table, plate.view), text
+        pixels = mixed(shades, table, plate.supersampling)
+        return Raster(None, table, plate.view, pixels=pixels), text
+
+    def digest(self) -> str:
+        """Return the digest of all values."""
+        return self.hash.hexdigest()
+
+
+def _kind(plate: Plate) -> str:
+    return DRAWS[plate.draw].palette_kind
