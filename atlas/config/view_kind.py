@@ -92,7 +92,7 @@ def _check_period(family: Family, axis: Axis, place: Place) -> None:
 def draws_of(family: Family, view: View) -> tuple[str, ...]:
     """Return what can be drawn of a view, the default first."""
     if view.up.name in family.parameter_names:
-        return PLANE_DRAWS
+        return tuple(draw for draw in PLANE_DRAWS if _lacking(family, draw) is None)
     two_states = {view.across.name, view.up.name} <= set(family.state_names)
     return ("density", "basin") if two_states else ("density",)
 
@@ -108,23 +108,27 @@ def checked_draw(family: Family, view: View, given: str | None, place: Place) ->
     allowed = draws_of(family, view)
     if given is None:
         return allowed[0]
-    if given not in allowed:
-        across, up = (kind_of_axis(family, axis, place) for axis in (view.across, view.up))
-        raise place.refusal(
-            f"{shown(given)} cannot be drawn of {_one(across)} ({view.across.name}) across and {_one(up)} "
-            f"({view.up.name}) up; allowed: {', '.join(allowed)}"
-        )
+    if given in allowed:
+        return given
+    hint = f"allowed: {', '.join(allowed)}"
+    needed = _lacking(family, given)
+    if needed is not None and view.up.name in family.parameter_names:
+        raise place.refusal(f"{shown(given)} needs {needed}, which the family '{family.name}' lacks; {hint}")
+    across, up = (kind_of_axis(family, axis, place) for axis in (view.across, view.up))
+    raise place.refusal(
+        f"{shown(given)} cannot be drawn of {_one(across)} ({view.across.name}) across and {_one(up)} "
+        f"({view.up.name}) up; {hint}"
+    )
+
+
+def _lacking(family: Family, draw: str) -> str | None:
+    """Return what a family needs and lacks for something to be drawn of two parameters, or None."""
     states = len(family.states)
-    if given == "lyapunov_2" and states < 2:
-        raise place.refusal(
-            f"'lyapunov_2' needs two state variables and the family '{family.name}' has one; write lyapunov"
-        )
-    if given == "rotation" and states != 2 and not any(state.wrap for state in family.states):
-        raise place.refusal(
-            f"'rotation' needs a periodic state variable or two state variables, and the family "
-            f"'{family.name}' has {states} and none with wrap; draw another of {', '.join(allowed)}"
-        )
-    return given
+    if draw == "lyapunov_2" and states < 2:
+        return "two state variables"
+    if draw == "rotation" and states != 2 and not any(state.wrap for state in family.states):
+        return "a state variable with wrap, or two state variables"
+    return None
 
 
 def checked_palette(draw: str, given: str | None, explicit: bool, place: Place) -> str:

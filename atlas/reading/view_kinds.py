@@ -48,6 +48,10 @@ class AxisKind(Kind[Axis]):
             if not isinstance(given, list | tuple) or len(given) != 3:
                 raise place.refusal(f"{shown(given)} is not an axis; write {self.allowed}")
             given = dict(zip(("name", "low", "high"), given, strict=True))
+        if "wrap" in given:
+            raise place.refusal(
+                "an axis has no wrap; give wrap to the state variable of the family, if it is periodic"
+            )
         values = read_section(self.keys, given, place)
         try:
             return Axis(**values)

@@ -115,12 +115,16 @@ class TestKinds:
         assert plate_from_parts("hassell", *axes).draw == "fate"
         assert plate_from_parts("hassell", *axes, draw="escape").palette == "blue"
         for draw, words in (
-            ("lyapunov_2", "draw: 'lyapunov_2' needs two state variables and the family 'hassell' has one"),
-            ("rotation", "draw: 'rotation' needs a periodic state variable or two state variables"),
+            (
+                "lyapunov_2",
+                "draw: 'lyapunov_2' needs two state variables, which the family 'hassell' lacks; ",
+            ),
+            ("rotation", "draw: 'rotation' needs a state variable with wrap, or two state variables, which"),
         ):
             with pytest.raises(Refusal) as caught:
                 plate_from_parts("hassell", *axes, draw=draw)
             assert str(caught.value).startswith(words)
+            assert str(caught.value).endswith("; allowed: fate, period, lyapunov, escape, attractors")
 
 
 class TestValues:
@@ -335,7 +339,12 @@ WRONG: list[tuple[str, dict[str, Any], str]] = [
     (
         "winding",
         {"draw": "lyapunov_2"},
-        "'lyapunov_2' needs two state variables and the family 'tide' has one",
+        "'lyapunov_2' needs two state variables, which the family 'tide' lacks; allowed: f",
+    ),
+    (
+        "yearly",
+        {"up": {"name": "total", "low": 0, "high": 9, "wrap": [0, 9]}},
+        "plates.yearly.up: an axis has no wrap; give wrap to the state variable of the family, if it is per",
     ),
     (
         "angles",
