@@ -114,11 +114,12 @@ def _mathematics(job: Job) -> dict[str, Any]:
             for name, entry in config.get(section, {}).items()
         }
     axes = (job.across.name, job.up.name)
-    config["observables"] = {
-        name: entry["formula"] if isinstance(entry, dict) else entry
-        for name, entry in config.get("observables", {}).items()
-        if name in axes
-    }
+    observables = config.pop("observables", {})
+    drawn = {name: entry for name, entry in observables.items() if name in axes}
+    if drawn:
+        config["observables"] = {
+            name: entry["formula"] if isinstance(entry, dict) else entry for name, entry in drawn.items()
+        }
     return config
 
 
