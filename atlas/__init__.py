@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from atlas.output.certificate import read
     from atlas.output.printing import draw_plate as draw_plate
     from atlas.output.tileset import rebuild_site as rebuild_site
+    from atlas.planes.plane_dataset import parameter_plane as parameter_plane
     from atlas.points.binning import bin_points as bin_points
     from atlas.points.plates import draw_points as draw_points
     from atlas.points.tile_sets import tile_points as tile_points
@@ -45,6 +46,7 @@ _HOMES = {
     "load": ("atlas.config.load", "load"),
     "needs": ("atlas.output.batch", "needs"),
     "orbit_counts": ("atlas.orbits.counts", "orbit_counts"),
+    "parameter_plane": ("atlas.planes.plane_dataset", "parameter_plane"),
     "parse_config": ("atlas.config.load", "parse_config"),
     "plate": ("atlas.config.load", "plate_from_parts"),
     "read_certificate": ("atlas.output.certificate", "read"),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from atlas.errors import PlanRefused, shown
@@ -167,4 +168,22 @@ def check_arrays(size: tuple[int, int], budget: int) -> None:
     needed = BASE_MEMORY + LABELS_MEMORY + BYTES_PER_CELL * columns * rows
     check_memory(
         needed, budget, f"a Dataset of {columns} x {rows} cells", "ask for fewer cells or raise memory"
+    )
+
+
+def check_layers(size: tuple[int, int], item_sizes: Sequence[int], budget: int) -> None:
+    """Refuse a Dataset of layers that does not fit into the memory budget.
+
+    Parameters
+    ----------
+    size : (int, int)
+        Columns and rows.
+    item_sizes : sequence of int
+        Bytes of a number of each layer.
+    budget : int
+    """
+    columns, rows = size
+    needed = BASE_MEMORY + LABELS_MEMORY + 2 * sum(item_sizes) * columns * rows
+    check_memory(
+        needed, budget, f"a Dataset of {columns} x {rows} pixels", "ask for fewer pixels or raise memory"
     )

@@ -65,15 +65,16 @@ TABLE = """
 25  atlas.planes.layers
 24  atlas.output.colouring
 26  atlas.planes.survey atlas.planes.searching atlas.output.panel atlas.output.panels
-27  atlas.output.panels.histogram atlas.output.panels.plane
+27  atlas.planes.plane_dataset atlas.output.panels.histogram atlas.output.panels.plane
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.drawing
 24  atlas.orbits.counting atlas.points.counting atlas.figure.plate
 25  atlas.orbits.counts
-28  atlas.output.printing
+28  atlas.output.printing atlas.output.tiled
 25  atlas.points.record atlas.points.spool
-29  atlas.output.tileset atlas.points.binning atlas.points.plates
-30  atlas.output.forecast
-31  atlas.output.batch atlas.points.tile_sets
+29  atlas.output.plane_tiles atlas.output.tileset atlas.points.binning atlas.points.plates
+30  atlas.output.tile_makers
+31  atlas.output.forecast
+32  atlas.output.batch atlas.points.tile_sets
 
 40  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
 40  atlas.cli.requests atlas.cli.point_requests
@@ -98,7 +99,7 @@ HOMES = {
     "pyarrow": ("atlas.points",),
     "rich": ("atlas.cli",),
     "sympy": ("atlas.formula.symbolic",),
-    "xarray": ("atlas.orbits.counts",),
+    "xarray": ("atlas.orbits.counts", "atlas.planes.plane_dataset",),
     "yaml": ("atlas.reading.yaml_text",),
 }
 NEEDED_LATE = ("dask", "datashader", "matplotlib", "numba", "numpy", "pandas", "sympy", "xarray")

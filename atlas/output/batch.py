@@ -21,7 +21,8 @@ from atlas.output.forecast import builders, need_of, room_of
 from atlas.output.ledger import Ledger
 from atlas.output.printing import Made, check_lettering, make_sheet, sheet_of
 from atlas.output.reporter import Reporter, Silence
-from atlas.output.tileset import Places, make_tile_set
+from atlas.output.tile_makers import tile_set_maker
+from atlas.output.tiled import Places
 from atlas.plan import Need, check_fits, parse_memory
 from atlas.reading.place import REQUEST, path_of
 from atlas.reading.place import shown as named
@@ -220,7 +221,7 @@ def _planned(record: Record, out: Path, workers: int, budget: int) -> _Planned:
             "tile set",
             request,
             (places.index, places.site),
-            lambda opened, reporter: make_tile_set(tile_set, places, opened, reporter, at_once),
+            lambda opened, reporter: tile_set_maker(tile_set)(tile_set, places, opened, reporter, at_once),
         )
     sheet = sheet_of(record)
     files = sheet.files(out)

@@ -11,14 +11,17 @@ from dataclasses import replace
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
 from atlas.output.panels.histogram import counting_seconds
+from atlas.output.panels.plane import finding_seconds
+from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE, plane_finder
 from atlas.output.printing import maker_of, sheet_of
+from atlas.output.tile_makers import tile_set_maker
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
 from atlas.plan import BASE_MEMORY, DEFAULT_MEMORY, Need
 from tiles.column import strip_width
 from tiles.grid import TILE, level_pairs
 
 SECONDS_PER_PIXEL = {"png": 1.2e-8, "tiff": 3.5e-8, "pdf": 1.5e-8, "svg": 1.2e-8}
-SECONDS_PER_TILE = 1.5e-3
+SECONDS_PER_TILE, SECONDS_PER_PLANE_TILE = 1.5e-3, 1.5e-2
 OCCUPIED_TILES = 0.5
 BYTES_PER_CELL_OF_DIAGONAL, BYTES_PER_CELL_OF_ALL_PAIRS, MOST_CELLS_WAITING = 0.5, 2.0, 1 << 24
 BYTES_PER_PIECE, BYTES_PER_EDGE = 60, 16
@@ -58,7 +61,10 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         pairs = level_pairs(record.levels.across, record.levels.up, record.pairs)
         tiles = sum(2 ** (across + up) for across, up in pairs)
-        seconds = counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
+        if record.kind == "plane":
+            seconds = finding_seconds(plane_finder(record)) + tiles * SECONDS_PER_PLANE_TILE
+        else:
+            seconds = counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
         return replace(room, seconds=seconds / builders(record, workers, budget))
     width, height = record.pixels
     seconds = sum(maker_of(view.plate).seconds(view) for view in sheet_of(record).views) / workers
@@ -67,16 +73,29 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
 
 
 def _room_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
+    tile_set_maker(record)
+    memory = _fixed_memory(record) + builders(record, workers, budget) * _task_memory(record)
+    if record.kind == "plane":
+        finder = plane_finder(record)
+        return Need(record.cells, finder.columns * finder.rows, 0.0, memory)
     counter = tile_counter(record)
-    at_once = builders(record, workers, budget)
-    memory = BASE_MEMORY + BYTES_PER_EDGE * counter.rows + at_once * _column_memory_of(record)
     return Need(record.cells, counter.columns * counter.exposure, 0.0, memory)
 
 
 def builders(record: TileSet, workers: int, budget: int) -> int:
-    """Return how many tile columns are built side by side within a memory budget, 1 at least."""
-    room = (budget - BASE_MEMORY - BYTES_PER_EDGE * record.cells[1]) // _column_memory_of(record)
-    return max(1, min(workers, room, 1 << record.levels.across))
+    """Return how many tasks of a tile set are under way side by side within a memory budget, 1 at least."""
+    room = (budget - _fixed_memory(record)) // _task_memory(record)
+    tasks = record.levels.across + (record.levels.up if record.kind == "plane" else 0)
+    return max(1, min(workers, room, 1 << tasks))
+
+
+def _fixed_memory(record: TileSet) -> int:
+    edges = sum(record.cells) if record.kind == "plane" else record.cells[1]
+    return BASE_MEMORY + BYTES_PER_EDGE * edges
+
+
+def _task_memory(record: TileSet) -> int:
+    return BYTES_PER_PLANE_TILE if record.kind == "plane" else _column_memory_of(record)
 
 
 def building_memory(rows: int, workers: int) -> int:

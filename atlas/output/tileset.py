@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import contextlib
 import os
-from collections.abc import Callable, Iterable, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping
 from functools import partial
 from pathlib import Path
 from typing import Any, Protocol, TypeVar
@@ -16,8 +15,6 @@ from numpy.typing import NDArray
 from atlas.config.digests import counting_digest, normalised
 from atlas.config.jobs import TileSet
 from atlas.config.keys import JOB_KEYS
-from atlas.families import catalogue
-from atlas.families.map_family import Family
 from atlas.orbits.counting import Sampled, counter_of, resolved
 from atlas.orbits.histogram import block_width
 from atlas.orbits.orbit import OrbitCounter
@@ -28,37 +25,19 @@ from atlas.output.folders import check_folder, check_site
 from atlas.output.printing import Made
 from atlas.output.remarks import remarks_on
 from atlas.output.reporter import PREPARING, Reporter, Silence
+from atlas.output.tiled import Places, colours_of, header_of, make_site, tile_columns
 from atlas.output.whole_file import PARTS
 from atlas.reading.place import REQUEST, Place, path_of
 from atlas.reading.view_kinds import Levels, Pairs
 from tiles.build import build
 from tiles.column import Source
 from tiles.index import Index
-from tiles.site import build_site
 from tiles.store import intact, written
 from tiles.strip import PER_COLUMN, Strip
 from tiles.window import View
 
 T = TypeVar("T")
 CELLS_PER_STRIP = 1 << 22
-
-
-@dataclass(frozen=True)
-class Places:
-    """Where the parts of a tile set go."""
-
-    index: Path
-    site: Path
-    growing_index: Path
-    growing_site: Path
-
-    @classmethod
-    def of(cls, out: Path, name: str) -> Places:
-        """Return the places in an output folder."""
-        parts = out / ".parts"
-        return cls(
-            out / name / "index.sqlite", out / name / "site", parts / f"{name}.sqlite", parts / f"{name}.site"
-        )
 
 
 class StripSource:
@@ -112,7 +91,12 @@ def make_tile_set(
     counter = resolved(job, tile_counter(job), opened)
     counter.warm()
     source = StripSource(counter, opened, reporter)
-    header = _header(job, counter)
+    header = {
+        **header_of(job),
+        "caption": key_caption(job.up, job.family.label_and_unit(job.up.name)[1]),
+        "lines": True,
+        "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
+    }
     made: list[Made] = []
 
     def certified(index: Index) -> Mapping[str, Any]:
@@ -192,64 +176,11 @@ def build_tile_set(
         unfinished=places.growing_index,
         finish=finish,
     )
-    colours = {key: getattr(job, key) for key in ("shading", "palette", "background", "missing")}
-    reporter.begin(places.index.parent.name, "tiles", _tile_columns(places.growing_index))
+    colours = colours_of(job)
+    reporter.begin(places.index.parent.name, "tiles", tile_columns(places.growing_index))
     make_site(places.growing_index, places.site, colours, opened, reporter, places.growing_site)
     with written(places.index):
         os.replace(places.growing_index, places.index)
-
-
-def make_site(
-    index: Path,
-    site: Path,
-    colours: Mapping[str, str | None],
-    opened: Schedule,
-    reporter: Reporter,
-    growing: Path | None = None,
-) -> None:
-    """Write the static folder of an index in given colours."""
-
-    def run(tasks: Iterable[Callable[[], T]], done: Callable[[T], None]) -> None:
-        def told(task: Callable[[], T]) -> T:
-            result = task()
-            reporter.advance(1)
-            return result
-
-        opened.run((partial(told, task) for task in tasks), done)
-
-    chosen = {key: value for key, value in colours.items() if value is not None}
-    build_site(index, site, run=run, unfinished=growing, **chosen)
-
-
-def _tile_columns(path: Path) -> int:
-    with Index.open(path) as index:
-        return sum(len(index.present(pair)) for pair in index.pairs)
-
-
-def _header(job: TileSet, counter: OrbitCounter) -> dict[str, Any]:
-    settings = {
-        key: value
-        for key, value in normalised(job)["settings"].items()
-        if key not in ("across", "up", "levels", "pairs", "title") and value not in (None, {}, [])
-    }
-    names = (job.across.name, job.up.name)
-    return {
-        "title": job.title or f"{job.family.title}: {job.up.name} across {job.across.name}",
-        "family": job.family.title,
-        "formula": job.family.formula_lines(),
-        "note": job.family.note,
-        "labels": {name: job.family.label_and_unit(name)[0] for name in names},
-        "units": {name: job.family.label_and_unit(name)[1] for name in names},
-        "caption": key_caption(job.up, job.family.label_and_unit(job.up.name)[1]),
-        "lines": True,
-        "plate": settings,
-        "families": {} if _of_catalogue(job.family) else {job.family.name: job.family.as_config()},
-        "counting": counting_digest(job, counter.columns, counter.rows, samples=counter.rules.samples),
-    }
-
-
-def _of_catalogue(family: Family) -> bool:
-    return family.name in catalogue.NAMES and catalogue.family(family.name).digest() == family.digest()
 
 
 def _made(job: TileSet, counter: OrbitCounter, index: Index) -> Made:
@@ -311,7 +242,7 @@ def rebuild_site(
     with intact(index):
         with Index.open(index) as opened_index:
             plate = opened_index.header.get("plate") or {}
-        columns = _tile_columns(index)
+        columns = tile_columns(index)
     check_folder(site.parent)
     colours = {name: chosen.get(name, plate.get(name)) for name in given}
     reporter = reporter or Silence()

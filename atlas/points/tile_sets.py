@@ -14,7 +14,8 @@ from atlas.orbits.schedule import default_workers, schedule
 from atlas.output.folders import check_files, check_folder, check_site
 from atlas.output.forecast import building_memory
 from atlas.output.reporter import Reporter, Silence
-from atlas.output.tileset import Places, build_tile_set
+from atlas.output.tiled import Places
+from atlas.output.tileset import build_tile_set
 from atlas.plan import check_fits, parse_memory
 from atlas.points.cells import Grid
 from atlas.points.counting import Reading

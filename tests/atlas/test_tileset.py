@@ -16,7 +16,8 @@ from atlas.orbits.counting import resolved
 from atlas.orbits.histogram import count_histogram
 from atlas.orbits.schedule import schedule
 from atlas.output.reporter import Silence
-from atlas.output.tileset import Places, StripSource, make_tile_set, rebuild_site, tile_counter
+from atlas.output.tiled import Places
+from atlas.output.tileset import StripSource, make_tile_set, rebuild_site, tile_counter
 from tiles.errors import OutputFailed
 from tiles.grid import TILE, Address
 from tiles.index import Index

@@ -26,7 +26,8 @@ from pathlib import Path
 from atlas.config.load import parse_config
 from atlas.orbits.schedule import schedule
 from atlas.output.reporter import Silence
-from atlas.output.tileset import Places, StripSource, make_tile_set
+from atlas.output.tiled import Places
+from atlas.output.tileset import StripSource, make_tile_set
 settings, out, index_only = json.loads(sys.argv[1]), Path(sys.argv[2]), sys.argv[3] == "index"
 peak, ended = [0], threading.Event()
 def watch():

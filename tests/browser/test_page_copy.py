@@ -14,7 +14,8 @@ from atlas.cli import main
 from atlas.config.load import Config, parse_config
 from atlas.orbits.schedule import schedule
 from atlas.output.reporter import Silence
-from atlas.output.tileset import Places, make_tile_set
+from atlas.output.tiled import Places
+from atlas.output.tileset import make_tile_set
 from tests.browser.conftest import Open
 from tests.browser.opened import Opened
 from tests.browser.synthetic_site import SyntheticSite

@@ -49,11 +49,8 @@ class PlaneMaker:
         return Room(pixels, each * pixels, raster)
 
     def seconds(self, view: View) -> float:
-        """Return the estimated time of one core, as if every orbit had to be measured."""
-        finder = finder_of(view.plate, view.columns, view.rows)
-        slow = SECONDS_PER_SLOW_CALL * step_source(view.plate.family).slow_calls
-        steps = finder.rules.transient + finder.rules.steps
-        return finder.columns * finder.rows * steps * (SECONDS_PER_STEP + slow) * len(finder.setting.starts)
+        """Return the estimated time of one core."""
+        return finding_seconds(finder_of(view.plate, view.columns, view.rows))
 
     def make(self, view: View, name: str, schedule: Schedule, reporter: Reporter) -> Panel:
         """Find the fates of a view and colour them."""
@@ -87,6 +84,13 @@ class PlaneMaker:
             picture.digest(),
             tuple(remarks_on_fates(view.name, shares)),
         )
+
+
+def finding_seconds(finder: FateFinder) -> float:
+    """Return the estimated time of one core for a plane, as if every orbit had to be measured."""
+    slow = SECONDS_PER_SLOW_CALL * step_source(finder.family).slow_calls
+    steps = finder.rules.transient + finder.rules.steps
+    return finder.columns * finder.rows * steps * (SECONDS_PER_STEP + slow) * len(finder.setting.starts)
 
 
 def record_of(finder: FateFinder, supersampling: int = 1) -> dict[str, Any]:
