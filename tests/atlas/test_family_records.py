@@ -7,10 +7,13 @@ import json
 import math
 from typing import Any
 
+import jsonschema
 import pytest
 from hypothesis import HealthCheck, assume, given, settings
 from hypothesis import strategies as st
 
+from atlas.config.schema import schema
+from atlas.families.catalogue import NAMES
 from atlas.families.catalogue import family as catalogued
 from atlas.families.patterns import LONGEST_PATTERN, LONGEST_WORD
 from atlas.families.reader import Family, Observable, Pattern, family_from_config
@@ -331,6 +334,33 @@ REFUSED = [
         for name in ("basin", "attractor")
     ),
 ]
+
+
+class TestSchema:
+    validator = jsonschema.Draft202012Validator(schema())
+
+    def test_editors_accept_what_the_reader_accepts(self):
+        for tree in (REEF, read(REEF).as_config(), *(catalogued(name).as_config() for name in NAMES)):
+            self.validator.validate({"families": {"reef": tree}})
+
+    @pytest.mark.parametrize(
+        ("path", "value"),
+        [
+            ("parameters/r/default", "1"),
+            ("parameters/r", {}),
+            ("parameters/r/pattern", []),
+            ("parameters/r/pattern", LONG),
+            ("parameters/r/pattern", "a"),
+            ("state/phase/wrap", ["0"]),
+            ("observables/catch/formula", None),
+            ("observables/catch", ["n"]),
+            ("observables/catch/lable", "x"),
+            ("extinct/n", ["1"]),
+            ("extinct", "1e-6"),
+        ],
+    )
+    def test_editors_refuse_wrong_forms(self, path, value):
+        assert not self.validator.is_valid({"families": {"reef": changed(path, value, REEF)}})
 
 
 class TestRefusals:
