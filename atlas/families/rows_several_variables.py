@@ -128,8 +128,8 @@ SEVERAL_VARIABLES: Mapping[str, Mapping[str, Any]] = {
         "source": "A. J. Nicholson and V. A. Bailey 1935, Proc. Zool. Soc. Lond. 105, 551-598 (citation "
         "from memory)",
         "note": "There is no attractor: the equilibrium is unstable for every R > 1, and orbits spiral out "
-        "until the parasitoids underflow to 0 and the hosts escape, or both underflow. Only short runs without "
-        "a transient show anything; planes and basins say extinct.",
+        "until the parasitoids underflow to 0 and the hosts escape, or both underflow. Only short runs "
+        "without a transient show anything; planes and basins say extinct.",
     },
     "beddington": {
         "title": "Beddington-Free-Lawton map",
