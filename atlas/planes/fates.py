@@ -4,21 +4,23 @@ An orbit is run from its start at the exact centre of its pixel. Every decision 
 numbers:
 
 1. *Escapes*, first of all: a test after every 16th step of a stage and at the end of each stage finds a state
-   variable not below the escape bound in size. Where a threshold of extinction is given, the same test finds
-   *extinct* an orbit that was below the threshold after any step since the last test, unless it escaped.
+   variable not below the escape bound in size; each batch of 4. counts as a stage. Where a threshold of
+   extinction is given, the same test finds *extinct* an orbit that was below the threshold after any step
+   since the last test, unless it escaped.
 2. *Fixed point* or *periodic*: at the end of each stage the orbit is looked at ahead, up to the longest
    period, without being moved. The stages of the transient end after 64, 128, 256 … steps and at its end;
    those of the following ``steps``, in which the exponents are measured, at each quarter. A nearest return
-   at period p (p a multiple of the length of the pattern) that is nearer than 2**-10 of the orbit's size or
-   its start's is *confirmed* when the distance to its limit, estimated from the gaps between states p steps
-   apart as 4 d r / (1 - r), is below 2**-20 of that size, and no multiplier of the cycle exceeds 1 + 1e-6
-   in size. The period is the least divisor of p after which all states of the cycle come back within 2**-17
-   of the size. The exponents of a cycle are those of its multipliers. A state that comes back bit for bit
-   on a repelling cycle has collapsed there by rounding: the orbit is run again from its start, every step
-   disturbed by a hashed factor 1 - u 2**-40, and not looked at; unless its start lies on that cycle itself.
+   at period p (p a multiple of the length of the pattern) that is nearer than 2**-10 of its size, the
+   largest of the next p states and of the start, is *confirmed* when the distance to its limit, estimated
+   from the gaps between states p steps apart as 4 d r / (1 - r), is not above 2**-20 of that size, and no
+   multiplier of the cycle exceeds 1 + 1e-6 in size. The period is the least divisor of p after which all
+   states of the cycle come back within 2**-17 of the size. The exponents of a cycle are those of its
+   multipliers. A state that comes back bit for bit on a repelling cycle has collapsed there by rounding: the
+   orbit is run again from its start, every step disturbed by a hashed factor 1 - u 2**-40, and not looked
+   at; unless its start lies on that cycle itself.
 3. An orbit that comes near its past and whose gaps shrink, but whose limit is still too far, is
    *approaching*. It is run on, as many steps again as it has done, up to the limit of the transient, and is
-   then *unsettled*. One that stops approaching on the way is measured anew.
+   then *unsettled*. One that stops approaching on the way is measured anew, as after the transient.
 4. Else the exponents decide. Over N steps in 16 batches, tangent volumes give the exponents (Benettin,
    Galgani, Giorgilli & Strelcyn 1980, Meccanica 15, 9-20), rescaled by powers of two every 16 steps; the
    standard error s is that of the means of the batches. With the tolerance 3 s + ln(N) / N the orbit is

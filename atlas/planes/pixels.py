@@ -5,6 +5,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from functools import reduce
 from types import ModuleType
 
 import numpy as np
@@ -201,8 +202,8 @@ class Pixels:
             return
         with np.errstate(invalid="ignore"):
             rates = np.diff(growth[:, :, order], axis=1, prepend=0.0) / steps
-            means = rates.sum(axis=0) / BATCHES
-            spread = ((rates[:, 0] - means[0]) ** 2).sum(axis=0)
+            means = _total(rates) / BATCHES
+            spread = _total((rates[:, 0] - means[0]) ** 2)
             error = np.sqrt(spread / (BATCHES - 1) / BATCHES)
         total = steps * BATCHES
         tolerance = 3.0 * error + np.log(total) / total
@@ -213,14 +214,14 @@ class Pixels:
         self.error[order] = error
 
     def _extended(self, order: Order, done: int) -> None:
-        """Run on the orbits that approach a cycle."""
+        """Run on the orbits that approach a cycle, also those that do once they were measured anew."""
         limit = self.rules.transient_limit
         while order.size and done < limit and not self.stop[0]:
             steps = self._whole(min(max(done, FIRST_STAGE), limit - done))
             order = self._looked(self._fled(self._open(order), done, steps))
             done += steps
             fresh, order = order[self.outcome[order] == OPEN], order[self.outcome[order] == NEAR]
-            self._measured(fresh, done)
+            self._extended(*self._measured(fresh, done))
 
     def _again(self) -> None:
         """Run the collapsed orbits once more from their starts, disturbed."""
@@ -234,3 +235,9 @@ class Pixels:
         order = self._fled(order, 0, whole, disturbed=True)
         growth, steps, left = self._growth(order, whole, self.kernels.measure_disturbed, looks=False)
         self._decide(left, growth, steps)
+
+
+def _total(batches: Floats) -> Floats:
+    """Return the sum over batches, added in their order, however many orbits stand side by side."""
+    total: Floats = reduce(np.add, batches)
+    return total

@@ -169,15 +169,18 @@ def judge(x, c, word, start, order, before, seen, rules, outcome, period, turn, 
     for m in order:
         if outcome[m] != OPEN:
             continue
-        reach = size[m]
+        own = 0.0
         for k in range(NX):
-            reach = max(reach, abs(start[k, m]))
-        p = repeat[m]
-        if p == 0:
-            p = nearest[m]
-            if p == 0 or not gap[m] < reach * 2.0 ** -10:
+            own = max(own, abs(start[k, m]))
+        p = repeat[m] if repeat[m] > 0 else nearest[m]
+        if p == 0 or (repeat[m] == 0 and not gap[m] < max(size[m], own) * 2.0 ** -10):
+            continue
+        largest = cycle_size(x, c, word, m, before, p)
+        reach = max(largest, own)
+        if repeat[m] == 0:
+            if not gap[m] < reach * 2.0 ** -10:
                 continue
-            left = distance_left(x, c, word, m, before, p, size[m], half, relative, work)
+            left = distance_left(x, c, word, m, before, p, largest, half, relative, work)
             if left < 0.0:
                 continue
             if left > reach * 2.0 ** -20:
@@ -196,6 +199,18 @@ def judge(x, c, word, start, order, before, seen, rules, outcome, period, turn, 
         period[m] = least_period(x, c, word, m, before, p, reach * 2.0 ** -17)
         for g in range(NX):
             exponents[g, m] = logs[g]
+
+
+@compiled
+def cycle_size(x, c, word, m, before, cycle):
+    """Return the largest size of a state variable on the way round a cycle, but not of what comes after."""
+    LOAD_ORBIT
+    most = LARGEST
+    for n in range(cycle):
+        AT before + n
+        STEP 0
+        most = max(most, LARGEST)
+    return most
 
 
 @compiled
@@ -263,9 +278,9 @@ def leaving(x, c, word, order, since, bound, left):
             AT since[m] + n
             STEP 0
             size = LARGEST
-            if not size < bound:
+            if OUTSIDE:
                 left[m] = float(since[m] + n + 1)
-                if size < np.inf and last > 0.0:
+                if bound <= size < np.inf and last > 0.0:
                     left[m] -= log(size / bound) / log(size / last)
                 break
             last = size

@@ -11,6 +11,10 @@ from atlas.orbits.step import StepSource
 from atlas.orbits.volumes import lengths
 from atlas.planes.plane_kernels import AGAIN, DEAD, FLEE, GONE, JUDGE, MEASURE, MET, NEAR, OPEN, TURN
 
+BACKWARD = 2.0**-8
+"""Turns about a mean by half a turn, and by so much less, count as backward: else rounding would decide of
+every step of a 2-cycle, whose two points lie on opposite sides, which way round it goes."""
+
 
 def plane_source(source: StepSource, *, lanes: int, mortal: Sequence[int], winding: int | None) -> str:
     """Write the module that finds the fates of the orbits of a family.
@@ -117,5 +121,5 @@ class PlaneWriter(Writer):
             "old = atan2(x1 - lm[1, l], x0 - lm[0, l])",
             *moved,
             "turned = (atan2(x1 - lm[1, l], x0 - lm[0, l]) - old) * 0.15915494309189535",
-            "turned = turned - np.floor(turned + 0.5)",
+            f"turned = turned - np.floor(turned + {0.5 + BACKWARD!r})",
         ]

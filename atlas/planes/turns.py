@@ -61,7 +61,8 @@ def rotation(found: Pixels, winding: int | None) -> Floats:
     order = np.flatnonzero((found.fate == QUASI_PERIODIC) | (found.fate == CHAOTIC))
     if order.size:
         turns[order] = _total(found, order, weights(found.rules.steps), winding)[order]
-    return turns if winding is not None else np.abs(turns)
+    size = np.abs(turns)
+    return turns if winding is not None else np.minimum(size, 1.0 - size)
 
 
 def _total(found: Pixels, order: NDArray[np.int64], each: Floats, winding: int | None) -> Floats:
