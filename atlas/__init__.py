@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from atlas.families.catalogue import family as family
     from atlas.figure.axes_image import draw_axes as draw_axes
     from atlas.orbits.counts import orbit_counts as orbit_counts
+    from atlas.orbits.portrait_dataset import phase_portrait as phase_portrait
     from atlas.output.batch import needs as needs
     from atlas.output.batch import render as render
     from atlas.output.certificate import read
@@ -48,6 +49,7 @@ _HOMES = {
     "orbit_counts": ("atlas.orbits.counts", "orbit_counts"),
     "parameter_plane": ("atlas.planes.plane_dataset", "parameter_plane"),
     "parse_config": ("atlas.config.load", "parse_config"),
+    "phase_portrait": ("atlas.orbits.portrait_dataset", "phase_portrait"),
     "plate": ("atlas.config.load", "plate_from_parts"),
     "read_certificate": ("atlas.output.certificate", "read"),
     "rebuild_site": ("atlas.output.tileset", "rebuild_site"),

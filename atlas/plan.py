@@ -53,19 +53,13 @@ def size_text(size: float) -> str:
 
 
 def check_counter(counter: OrbitCounter, where: str = "") -> None:
-    """Refuse what the kernels cannot count: too many states, too many samples, too deep a zoom.
+    """Refuse what the kernels cannot count: too many orbits, too many samples, too deep a zoom.
 
     Raises
     ------
     PlanRefused
     """
     lead = f"{where}: " if where else ""
-    family = counter.family
-    if len(family.states) > 1:
-        raise PlanRefused(
-            f"{lead}the family '{family.name}' has {len(family.states)} state variables; "
-            "this version draws families of one"
-        )
     if counter.orbits_per_column > MOST_ORBITS:
         raise PlanRefused(
             f"{lead}{counter.orbits_per_column} orbits a column are too many; use at most {MOST_ORBITS}, "
@@ -88,6 +82,36 @@ def check_counter(counter: OrbitCounter, where: str = "") -> None:
             f"can resolve on {counter.rows} rows: rounding in the map grows to a cell of the picture; "
             f"use fewer rows, or make it at least {needed:.1e} wide"
         )
+
+
+def check_portrait(
+    view: View, columns: int, rows: int, *, samples: int, exposure: int, most: int, where: str = ""
+) -> None:
+    """Refuse a phase portrait that the kernels cannot count.
+
+    Parameters
+    ----------
+    view : View
+    columns, rows : int
+    samples, most : int
+        Asked for, of each start, and what may be asked for.
+    exposure : int
+        Samples of all starts, rounded up to whole numbers for each orbit.
+    where : str
+        What a sentence calls the output.
+
+    Raises
+    ------
+    PlanRefused
+    """
+    lead = f"{where}: " if where else ""
+    if exposure >= 1 << 32:
+        raise PlanRefused(
+            f"{lead}{samples} samples of each start, {exposure} in all, are more than a count can hold; "
+            f"use at most {most} samples"
+        )
+    for axis, cells in ((view.across, columns), (view.up, rows)):
+        _check_depth(axis, cells, 8.0, lead)
 
 
 def check_pixels(view: View, columns: int, rows: int, where: str = "") -> None:

@@ -67,8 +67,11 @@ TABLE = """
 26  atlas.planes.survey atlas.planes.searching atlas.output.panel atlas.output.panels
 27  atlas.planes.plane_dataset atlas.output.panels.histogram atlas.output.panels.plane
 23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.drawing
-24  atlas.orbits.counting atlas.points.counting atlas.figure.plate
-25  atlas.orbits.counts
+23  atlas.orbits.portrait
+24  atlas.orbits.follow atlas.orbits.portrait_counts atlas.points.counting atlas.figure.plate
+25  atlas.orbits.counting
+26  atlas.orbits.counts
+27  atlas.orbits.portrait_dataset
 28  atlas.output.printing atlas.output.tiled
 25  atlas.points.record atlas.points.spool
 29  atlas.output.plane_tiles atlas.output.tileset atlas.points.binning atlas.points.plates
@@ -99,7 +102,7 @@ HOMES = {
     "pyarrow": ("atlas.points",),
     "rich": ("atlas.cli",),
     "sympy": ("atlas.formula.symbolic",),
-    "xarray": ("atlas.orbits.counts", "atlas.planes.plane_dataset",),
+    "xarray": ("atlas.orbits.counts", "atlas.orbits.portrait_dataset", "atlas.planes.plane_dataset"),
     "yaml": ("atlas.reading.yaml_text",),
 }
 NEEDED_LATE = ("dask", "datashader", "matplotlib", "numba", "numpy", "pandas", "sympy", "xarray")

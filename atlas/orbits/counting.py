@@ -8,9 +8,11 @@ from atlas.config.draws import KINDS
 from atlas.config.jobs import Job, TileSet
 from atlas.errors import PlanRefused
 from atlas.orbits.orbit import OrbitCounter, Rules
-from atlas.orbits.sampling import IN_TILES, ON_PLATES, automatic, whole_height
+from atlas.orbits.portrait import PortraitCounter, most_samples
+from atlas.orbits.portrait_counts import automatic_samples
+from atlas.orbits.sampling import IN_TILES, LEAST, ON_PLATES, automatic, whole_height
 from atlas.orbits.schedule import Schedule
-from atlas.plan import check_counter
+from atlas.plan import check_counter, check_portrait
 
 
 def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
@@ -23,36 +25,71 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     ------
     PlanRefused
     """
-    _refuse_what_is_not_drawn_yet(job)
+    if job.kind not in ("histogram", "follow"):
+        raise PlanRefused(f"{job.name}: {KINDS[job.kind]} has no columns of samples")
+    if job.by_attractor:
+        raise PlanRefused(f"{job.name}: a density by attractor is not drawn by this version; leave it away")
     samples = job.samples
     if not isinstance(samples, int):
         samples = whole_height(rows, job.values_per_column * len(job.starts), counts_per_cell(job))
-    rules = Rules(job.transient, job.transient_limit, samples, job.values_per_column, job.longest_period)
+    rules = rules_of(job, samples)
     counter = OrbitCounter(job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts)
     check_counter(counter, job.name)
     return counter
 
 
-# To be deleted as the kinds of view come to be drawn.
-def _refuse_what_is_not_drawn_yet(job: Job) -> None:
-    """Refuse what configs can ask for and this version does not draw."""
-    what = ""
-    if job.kind != "histogram":
-        what = KINDS[job.kind]
-    elif job.record:
-        what = "a density of recorded states"
-    elif job.by_attractor:
-        what = "a density by attractor"
-    elif job.up.name not in job.family.state_names:
-        what = "a density of an observable"
-    elif job.family.patterns:
-        what = "a map with a pattern"
-    elif any(state.wrap for state in job.family.states):
-        what = "a map with a wrapped state variable"
-    if what:
-        raise PlanRefused(
-            f"{job.name}: {what} is not drawn by this version; draw the density of a state variable"
-        )
+def rules_of(job: Job, samples: int) -> Rules:
+    """Return how the orbits of a job are sampled."""
+    every, phase = job.record or (1, 0)
+    return Rules(
+        job.transient,
+        job.transient_limit,
+        samples,
+        job.values_per_column,
+        job.longest_period,
+        every=every,
+        phase=phase,
+    )
+
+
+def portrait_of(job: Job, columns: int, rows: int) -> PortraitCounter:
+    """Return the counter of the orbits of a phase portrait, refused where it cannot be counted.
+
+    With ``samples: auto`` it has those of an attractor that fills the view; :func:`resolved_portrait` looks
+    closer.
+
+    Raises
+    ------
+    PlanRefused, TooLarge
+    """
+    starts = len(job.starts)
+    samples = job.samples
+    if not isinstance(samples, int):
+        samples = min(max(LEAST, counts_per_cell(job) * columns * rows // starts), most_samples(starts))
+    counter = PortraitCounter(
+        job.family, job.view, columns, rows, rules_of(job, samples), set=job.set, starts=job.starts
+    )
+    exposure = counter.exposure if isinstance(job.samples, int) else 0
+    check_portrait(
+        job.view,
+        columns,
+        rows,
+        samples=samples,
+        exposure=exposure,
+        most=most_samples(starts),
+        where=job.name,
+    )
+    return counter
+
+
+def resolved_portrait(job: Job, counter: PortraitCounter, schedule: Schedule) -> PortraitCounter:
+    """Return the counter with the samples that a pilot found for ``samples: auto``."""
+    if isinstance(job.samples, int):
+        return counter
+    counter.warm()
+    found: list[int] = []
+    schedule.run([lambda: automatic_samples(counter, counts_per_cell(job), schedule.stop)], found.append)
+    return counter.with_samples(found[0])
 
 
 def resolved(job: Job, counter: OrbitCounter, schedule: Schedule) -> OrbitCounter:

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Callable, Mapping, Sequence
 from decimal import Decimal
 from fractions import Fraction
+from hashlib import blake2b
 from typing import Any
 
 import numpy as np
@@ -16,6 +18,7 @@ from atlas.config.jobs import Plate
 from atlas.config.load import plate_from_parts
 from atlas.families.reader import Family
 from atlas.orbits.counting import Sampled, counter_of, resolved
+from atlas.orbits.follow import count_followed
 from atlas.orbits.histogram import Histogram, count_histogram
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import schedule
@@ -27,7 +30,7 @@ from atlas.reading.place import REQUEST, Place, shown
 from tiles.number import Exact
 from tiles.strip import PER_COLUMN, Strip
 from tiles.tally import density
-from tiles.window import View
+from tiles.window import Axis, View
 
 Number = str | int | float | Fraction | Decimal | Exact
 KIND = "dataset"
@@ -40,13 +43,15 @@ def orbit_counts(
     view: View,
     *,
     size: tuple[int, int],
-    set: Mapping[str, Number] | None = None,
-    starts: Sequence[Mapping[str, Number]] | None = None,
+    set: Mapping[str, Any] | None = None,
+    starts: Sequence[Mapping[str, Number]] | Mapping[str, Any] | None = None,
     transient: int = 1000,
     samples: int | str = 1000,
     values_per_column: int = 4,
     transient_limit: int | None = None,
     longest_period: int = 64,
+    record: Mapping[str, int] | None = None,
+    follow: str | None = None,
     workers: int | None = None,
     memory: str | int | None = None,
 ) -> Any:
@@ -61,9 +66,11 @@ def orbit_counts(
     size : (int, int)
         Columns and rows.
     set : mapping of str to number, optional
-        Parameters that differ from their defaults.
-    starts : sequence of mappings of str to number, optional
-        Initial conditions; by default the family's own.
+        Parameters that differ from their defaults; ``{"r": {"pattern": ["a", "b"]}}`` gives a pattern another
+        word.
+    starts : sequence of mappings of str to number, or mapping, optional
+        Initial conditions, or ``{"grid": [8, 8], "box": {"x": [0, 1], "y": [0, 1]}}``; by default the
+        family's own.
     transient, transient_limit : int
         Steps before sampling, and at most, for orbits that settle slowly; the limit is 1 000 000 by default.
     samples : int or "auto"
@@ -72,6 +79,11 @@ def orbit_counts(
         Parameter values spread over each column.
     longest_period : int
         Longest cycle looked for.
+    record : mapping, optional
+        ``{"every": 12, "phase": 3}`` counts only the states after n steps where n modulo 12 is 3.
+    follow : "up", "down" or "both", optional
+        Each column starts where its neighbour ended (`atlas.orbits.follow`); with ``both`` there are two
+        sweeps.
     workers : int, optional
         Threads; by default one a processor. The result does not depend on it.
     memory : str or int, optional
@@ -82,7 +94,8 @@ def orbit_counts(
     xarray.Dataset
         ``counts`` (uint32) and ``density`` (float64, counts / (exposure * cell size), per unit of the state
         or, on a log axis, of its natural logarithm) on both axes, up first; ``exposure``, ``below``,
-        ``above``, ``escaped``, ``unsettled`` (samples) and ``collapsed`` (orbits) on the across axis.
+        ``above``, ``escaped``, ``unsettled`` (samples) and ``collapsed`` (orbits) on the across axis. With
+        ``follow="both"`` everything has the dimension ``sweep`` first, ``up`` and ``down``.
         Coordinates are cell centres, ascending. In every column
         inside + below + above + escaped + unsettled = exposure. The certificate is in the attribute
         ``atlas-certificate``; a Dataset saved with ``to_netcdf(path, engine="h5netcdf")`` carries it along.
@@ -110,8 +123,8 @@ def orbit_counts(
             f"{view.across.name} across and {view.up.name} up make {KINDS[kind]}; "
             "put a parameter across and a state variable or observable up"
         )
-    columns, rows = _cells(size, place.at("size"))
-    check_arrays((columns, rows), parse_memory(memory))
+    columns, rows = cells_of(size, place.at("size"))
+    check_arrays((columns, rows if follow != "both" else 3 * rows), parse_memory(memory))
     job = plate_from_parts(
         family,
         view.across,
@@ -125,15 +138,38 @@ def orbit_counts(
         samples=samples,
         values_per_column=values_per_column,
         longest_period=longest_period,
+        record=record,
+        follow=follow,
     )
     counter = counter_of(job, columns, rows)
     with schedule(workers) as opened:
         counter = resolved(job, counter, opened)
-        histogram = count_histogram(counter, opened)
-    return dataset(job, counter, histogram)
+        if job.follow is None:
+            return dataset(job, counter, count_histogram(counter, opened))
+        sweeps = count_followed(counter, job.follow, opened)
+    made = {direction: dataset(job, counter, histogram) for direction, histogram in sweeps.items()}
+    return _side_by_side(made) if len(made) > 1 else made[job.follow]
 
 
-def _cells(size: tuple[int, int], place: Place) -> tuple[int, int]:
+def _side_by_side(sweeps: Mapping[str, Any]) -> Any:
+    """Return the Datasets of several sweeps as one, with what tells them apart on a dimension of its own."""
+    import xarray
+
+    both = xarray.concat(list(sweeps.values()), xarray.Variable("sweep", list(sweeps)), combine_attrs="drop")
+    first, *_ = sweeps.values()
+    records = [json.loads(one.attrs[KEY]) for one in sweeps.values()]
+    digest = blake2b("".join(one["counts_digest"] for one in records).encode(), digest_size=16).hexdigest()
+    shares = {name: one["shares"] for name, one in zip(sweeps, records, strict=True)}
+    for name in ("samples_filled_by_repeats", "orbits_on_repelling_start"):
+        both[name] = ("sweep", np.array([one.attrs[name] for one in sweeps.values()], np.uint64))
+    kept = {name: first.attrs[name] for name in ("family", "formula", "samples", "cell_size")}
+    record = records[0] | {"counts_digest": digest, "shares": shares}
+    both.attrs = {**kept, "counts_digest": digest, KEY: as_text(record)}
+    return both
+
+
+def cells_of(size: Any, place: Place) -> tuple[int, int]:
+    """Return a resolution, refused where it is none."""
     if not isinstance(size, tuple | list) or len(size) != 2:
         raise place.refusal(f"{shown(size)} is no resolution; write (columns, rows)")
     across, up = (_CELLS.read(cells, place.at(number)) for number, cells in enumerate(size, 1))
@@ -195,15 +231,19 @@ def labelled(
         attrs={**attributes, "cell_size": cell},
     )
     for axis in (view.across, view.up):
-        label, unit = label_and_unit(axis.name)
-        made[axis.name].attrs = {
-            "long_name": axis.label or label or axis.name,
-            "units": unit,
-            "scale": axis.scale,
-            "low": str(axis.low),
-            "high": str(axis.high),
-        }
+        made[axis.name].attrs = axis_attributes(axis, *label_and_unit(axis.name))
     return made
+
+
+def axis_attributes(axis: Axis, label: str, unit: str) -> dict[str, Any]:
+    """Return what a coordinate says of its axis."""
+    return {
+        "long_name": axis.label or label or axis.name,
+        "units": unit,
+        "scale": axis.scale,
+        "low": str(axis.low),
+        "high": str(axis.high),
+    }
 
 
 def _densities(strip: Strip, cell: float) -> NDArray[np.float64]:
