@@ -110,7 +110,7 @@ class OrbitCounter:
     def module(self) -> ModuleType:
         """The compiled kernels of the family for this view."""
         text = kernel_source(
-            self._source, [self.view.up.scale == "log"], lanes=self.lanes, every=self.rules.every
+            self.source, [self.view.up.scale == "log"], lanes=self.lanes, every=self.rules.every
         )
         return load_module(text)
 
@@ -220,7 +220,8 @@ class OrbitCounter:
         return block
 
     @cached_property
-    def _source(self) -> StepSource:
+    def source(self) -> StepSource:
+        """The compiled map."""
         return step_source(self.family, (self.view.up.name,))
 
     def orbits(self, first: int, last: int) -> Orbits:
@@ -228,7 +229,7 @@ class OrbitCounter:
         values, starts = self._values(first, last), self.starts
         varying = {self.view.across.name: np.repeat(values, len(starts))}
         start = np.tile(starts.T, values.size)
-        return self.setting.orbits(self.module, self._source, start, self._keys(first, last), varying)
+        return self.setting.orbits(self.module, self.source, start, self._keys(first, last), varying)
 
     def _values(self, first: int, last: int) -> NDArray[np.float64]:
         across, each = self.view.across, self.rules.values_per_column

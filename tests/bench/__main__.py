@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import sys
 
-from tests.bench import commands, kernels, plates, tile_sets
+from tests.bench import commands, kernels, planes, plates, tile_sets
 
 PARTS = {"kernels": kernels.run, "plates": plates.run, "tiles": tile_sets.run, "commands": commands.run}
+PARTS |= {"planes": planes.run, "wide": planes.memory}
 
 
 def main(chosen: list[str]) -> int:

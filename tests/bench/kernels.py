@@ -19,6 +19,7 @@ from tiles.window import View
 
 ROWS, COLUMNS, TRANSIENT, SAMPLES = 2300, 256, 1000, 2200
 ORBITS = 2048
+WORD = np.zeros(1, np.int64)
 
 
 def run() -> None:
@@ -46,7 +47,7 @@ def _iterate(name: str, twin: CTwin, steps: int, low: float, high: float, asked:
     times = best_times(
         {
             "C": lambda: twin.iterate(name, theirs, r, steps),
-            "ours": lambda: kernels.advance(ours, c, key, order, 0, steps, 1e6, outcome),
+            "ours": lambda: kernels.advance(ours, c, WORD, key, order, 0, steps, 1e6, outcome),
         },
         12,
     )

@@ -24,6 +24,23 @@ void iterate_ricker(double *restrict x, const double *restrict r, long groups, l
     }
 }
 
+void iterate_henon(double *restrict x, double *restrict y, const double *restrict a, const double *restrict b,
+                   long groups, long steps) {
+    for (long g = 0; g < groups; g++) {
+        double v[LANES], w[LANES], p[LANES], q[LANES];
+        for (int l = 0; l < LANES; l++) {
+            v[l] = x[g * LANES + l]; w[l] = y[g * LANES + l]; p[l] = a[g * LANES + l]; q[l] = b[g * LANES + l];
+        }
+        for (long n = 0; n < steps; n++)
+            for (int l = 0; l < LANES; l++) {
+                double next = 1 - p[l] * (v[l] * v[l]) + w[l];
+                w[l] = q[l] * v[l];
+                v[l] = next;
+            }
+        for (int l = 0; l < LANES; l++) { x[g * LANES + l] = v[l]; y[g * LANES + l] = w[l]; }
+    }
+}
+
 /* One column a group: transient, then every state into a half-open cell, with cells for below and above. */
 void count_logistic(double *restrict x, const double *restrict r, long columns, long transient, long samples,
                     double low, double inverse, long rows, uint32_t *restrict counts) {

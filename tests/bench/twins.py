@@ -35,6 +35,14 @@ class CTwin:
         function = getattr(self._library, f"iterate_{family}")
         function(pointer(x), pointer(r), ctypes.c_long(x.size // 32), ctypes.c_long(steps))
 
+    def iterate_henon(
+        self, x: NDArray[np.float64], y: NDArray[np.float64], a: NDArray[np.float64],
+        b: NDArray[np.float64], steps: int,
+    ) -> None:  # fmt: skip
+        """Advance orbits of the Henon map in full groups of 32."""
+        arrays = map(pointer, (x, y, a, b))
+        self._library.iterate_henon(*arrays, ctypes.c_long(x.size // 32), ctypes.c_long(steps))
+
     def count(
         self, x: NDArray[np.float64], r: NDArray[np.float64], transient: int, samples: int,
         counts: NDArray[np.uint32],
