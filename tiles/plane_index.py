@@ -111,17 +111,14 @@ class PlaneIndex(Index):
         for column, row in self._db.execute(query, pair):
             yield Address(*pair, number_of(column), number_of(row))
 
-    def classes_present(self) -> list[int]:
-        """Return the classes that occur anywhere, ascending."""
-        query = f"SELECT DISTINCT class FROM classes {_OF_PAIR} ORDER BY class"
-        return [number for (number,) in self._db.execute(query, self.pairs[-1])]
-
     def class_totals(self) -> dict[int, int]:
-        """Return how many pixels of the deepest level pair have each class, by class, ascending."""
+        """Return how many pixels of the view have each class, by class, ascending.
+
+        Every level pair holds the same pixels, so those of the pair with the fewest tiles are added.
+        """
         totals: dict[int, int] = {}
-        for number, blob in self._db.execute(
-            f"SELECT class, counts FROM classes {_OF_PAIR} ORDER BY class", self.pairs[-1]
-        ):
+        query = f"SELECT class, counts FROM classes {_OF_PAIR} ORDER BY class"
+        for number, blob in self._db.execute(query, min(self.pairs, key=sum)):
             totals[number] = totals.get(number, 0) + int(decode(blob).sum(dtype=np.uint64))
         return totals
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -43,7 +43,7 @@ def plane_meta(
     header: Mapping[str, Any],
     view: View,
     present: Mapping[Pair, Mapping[int, Runs]],
-    classes: Iterable[int],
+    totals: Mapping[int, int],
     layers: Sequence[ValueLayer],
     *,
     background: str,
@@ -58,8 +58,8 @@ def plane_meta(
     view : View
     present : mapping
         As for :func:`tiles.meta.meta`.
-    classes : iterable of int
-        Classes that occur, ascending.
+    totals : mapping of int to int
+        How many pixels have each class that occurs.
     layers : sequence of ValueLayer
     background : str
         Colour of what has no picture, ``#rrggbb``.
@@ -73,7 +73,7 @@ def plane_meta(
     return {
         **common(header, view, present, certificate),
         "kind": "plane",
-        "layers": [_class_layer(header, list(classes)), *map(_value_layer, layers)],
+        "layers": [_class_layer(header, totals), *map(_value_layer, layers)],
         "background": background,
     }
 
@@ -89,10 +89,18 @@ def class_name(names: Mapping[str, str], number: int) -> str:
     return names.get(str(number)) or names.get("period", "{}").replace("{}", str(number))
 
 
-def _class_layer(header: Mapping[str, Any], classes: list[int]) -> dict[str, Any]:
+def _class_layer(header: Mapping[str, Any], totals: Mapping[int, int]) -> dict[str, Any]:
+    """Return the layer of classes; in its legend those with names of their own come first, then by number."""
     names = header.get("class_names") or {}
+    classes = sorted(totals, key=lambda number: (str(number) not in names, number))
+    pixels = sum(totals.values())
     legend = [
-        {"class": number, "label": class_name(names, number), "colour": hexadecimal(colour)}
+        {
+            "class": number,
+            "label": class_name(names, number),
+            "colour": hexadecimal(colour),
+            "share": totals[number] / pixels,
+        }
         for number, colour in zip(classes, class_colours(classes), strict=True)
     ]
     name = str(header["class_layer"])

@@ -64,7 +64,7 @@ def fill_planes(
             index.header,
             index.view,
             present,
-            index.classes_present(),
+            index.class_totals(),
             layers,
             background=hexadecimal(classes[0].tolist()),
             certificate=index.certificate,

@@ -7,7 +7,8 @@ A script, since a page opened from the disk may load scripts and pictures only. 
 - of every cell, column after column from the left, each from the lowest cell, the place of its class among
   them, one byte, or two bytes little-endian where n exceeds 256;
 - of every layer of values three planes: the lowest, the middle and the highest byte of the upper 24 bits of
-  each value as a 32-bit IEEE 754 number, rounded to nearest (to five digits), or not a number. Larger ones are cut to the largest.
+  each value as a 32-bit IEEE 754 number, rounded to nearest (to five digits), or not a number. What is larger
+  than any of them becomes the largest.
 """
 
 from __future__ import annotations

@@ -148,13 +148,17 @@ def test_the_description(site, plane):
     assert found["kind"] == "plane"
     fate, lyapunov, rotation = found["layers"]
     assert [layer["kind"] for layer in found["layers"]] == ["classes", "values", "values"]
-    numbers = np.unique(plane.classes).tolist()
-    assert [entry["class"] for entry in fate["legend"]] == numbers
+    numbers, counts = np.unique(plane.classes, return_counts=True)
+    own = [1, 60002, 60003]
+    assert [entry["class"] for entry in fate["legend"]] == own + sorted({*numbers.tolist()} - {*own})
+    shares = dict(zip(numbers.tolist(), counts / plane.classes.size, strict=True))
+    assert {entry["class"]: entry["share"] for entry in fate["legend"]} == shares
     assert fate["legend"][0]["label"] == "fixed point"
-    assert fate["legend"][1] == {
+    assert fate["legend"][3] == {
         "class": 2,
         "label": "period 2",
         "colour": "#{:02x}{:02x}{:02x}".format(*class_colours([2])[0]),
+        "share": shares[2],
     }
     assert fate["name"] == fate["label"] == "fate"
     assert (lyapunov["label"], lyapunov["palette"]) == ("largest exponent", "balance")

@@ -175,6 +175,11 @@ class Axis {
     return this.pixelOf(index << (this.bits - BigInt(level)));
   }
 
+  /** Number of the tile pixel of a level that holds a position. */
+  cellAt(level, at) {
+    return at >> (this.bits - BigInt(level + 8));
+  }
+
   /** First and last index of the tiles of a level that lie in the window. */
   tilesAt(level) {
     const size = 1n << (this.bits - BigInt(level));

@@ -35,7 +35,9 @@ class Input {
 
   onKey(event) {
     const choosing = event.target.matches("input") && event.key in Input.ARROWS; // arrows choose among its buttons
-    if (choosing || event.target.closest("dialog") || event.ctrlKey || event.metaKey) return;
+    const listing = event.target.matches("select"); // letters and arrows choose in its list
+    const reading = event.target.id === "legend" && event.key in Input.ARROWS; // arrows scroll it
+    if (choosing || listing || reading || event.target.closest("dialog") || event.ctrlKey || event.metaKey) return;
     const action = this.actionOf(event);
     if (!action) return;
     event.preventDefault();

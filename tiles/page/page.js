@@ -12,7 +12,9 @@ class Page {
     this.across = new Axis(meta.axes.across, deepest(0));
     this.up = new Axis(meta.axes.up, deepest(1));
     this.frame = new Frame(element("canvas"), this.across, this.up, meta.marks);
-    this.tiles = new Tiles(meta, this.across, this.up, () => this.redraw());
+    this.layers = new Layers(meta, () => this.switched());
+    this.tiles = new Tiles(meta, this.layers, this.across, this.up, () => this.redraw());
+    this.sideCars = meta.kind === "plane" ? new SideCars(this.layers, this.across, this.up, () => this.redraw()) : null;
     this.pointer = null; // canvas position under the mouse or finger
     this.notice = ""; // a sentence that stands until the view changes
     this.drawing = 0; // the animation frame asked for
@@ -59,7 +61,18 @@ class Page {
       line.append(make("i", axis.name), ` = ${values[k].replace("-", "−")}${measure}`);
       return line;
     });
+    if (this.sideCars) lines.push(...this.layers.words(this.found()));
     element("readout").replaceChildren(make("b", this.pointer ? "pointer" : "centre"), ...lines);
+  }
+
+  /** Class and values at the pointer, or at the centre once the keyboard moves the view; null where nothing is asked. */
+  found() {
+    const { left, top, width, height } = this.frame.plot;
+    if (!this.pointer && document.activeElement !== element("canvas")) return null;
+    const [x, y] = this.pointer || [left + width / 2, top + height / 2];
+    const [column, row] = [Math.floor(x - left), height - 1 - Math.floor(y - top)];
+    if (column < 0 || row < 0 || column >= width || row >= height) return null;
+    return this.sideCars.under(this.tiles.choose().pair, column, row);
   }
 
   showStatus() {
@@ -108,6 +121,22 @@ class Page {
     this.changed();
   }
 
+  /** Another layer was chosen. */
+  switched() {
+    this.showLayer();
+    this.changed();
+  }
+
+  showLayer() {
+    const { shown } = this.layers;
+    const { key, marks, kind } = this.meta;
+    const axes = kind === "plane" ? `${this.across.name} and ${this.up.name}` : `${this.up.name} against ${this.across.name}`;
+    const what = `${shown.label} ${kind === "plane" ? "over" : "of"} ${axes}`;
+    element("canvas").setAttribute("aria-label", `${what}; arrows move, plus and minus zoom, Home shows everything`);
+    showKey(shown, shown.key || key, Boolean(marks && Object.keys(marks).length));
+    thinKey();
+  }
+
   showWhole() {
     this.across.showWhole();
     this.up.showWhole();
@@ -130,6 +159,7 @@ class Page {
       b: () => Input.choose("both"),
       p: () => this.showTilePixels(),
       y: () => this.copyPlate(),
+      ...(this.layers.all.length > 1 ? { l: () => [this.layers.next(), this.switched()] } : {}),
     };
     new Input(element("canvas"), {
       actions,
@@ -151,6 +181,7 @@ class Page {
       about: () => this.showAbout(),
     };
     for (const [id, action] of Object.entries(clicks)) element(id).addEventListener("click", action);
+    if (this.sideCars) for (const turn of ["focus", "blur"]) element("canvas").addEventListener(turn, () => this.redraw());
     addEventListener("hashchange", () => this.followHash());
   }
 
@@ -167,8 +198,10 @@ class Page {
 
   /** The hash of this view; none for the whole view, so that such a link fits every window. */
   hash() {
-    if (this.across.showsWhole() && this.up.showsWhole()) return "";
-    return `#across=${this.across.address()}&up=${this.up.address()}`;
+    const whole = this.across.showsWhole() && this.up.showsWhole();
+    const range = whole ? "" : `across=${this.across.address()}&up=${this.up.address()}`;
+    const parts = [range, this.layers.part].filter(Boolean);
+    return parts.length ? `#${parts.join("&")}` : "";
   }
 
   remember() {
@@ -179,11 +212,15 @@ class Page {
 
   followHash() {
     if (location.hash === this.hash()) return;
-    const parts = /^#across=([^&]*)&up=([^&]*)$/.exec(location.hash);
-    if (location.hash.length < 2) this.showWhole();
-    else if (parts && Axis.isAddress(parts[1]) && Axis.isAddress(parts[2])) {
-      this.across.follow(parts[1]);
-      this.up.follow(parts[2]);
+    const parts = /^#?(?:across=([^&]*)&up=([^&]*))?(?:(?:^#|&)layer=([^&]*))?$/.exec(location.hash);
+    const [across, up] = parts ? parts.slice(1, 3) : [];
+    const layer = decoded(parts?.[3]) ?? this.layers.all[0].name;
+    if (parts && this.layers.isKnown(layer) && (across === undefined || (Axis.isAddress(across) && Axis.isAddress(up)))) {
+      this.layers.show(layer);
+      this.showLayer();
+      if (across === undefined) return this.showWhole();
+      this.across.follow(across);
+      this.up.follow(up);
       this.changed();
     } else {
       this.notice = "The view in this page's address could not be read, so the view was left as it is.";
@@ -202,7 +239,9 @@ class Page {
 
   /** The view as a text that draws it: a config, or a command for a tile set of points. */
   plateText() {
-    return (this.meta.plate.points ? commandText : configText)(this.meta, this.across, this.up);
+    const { plate, kind } = this.meta;
+    const drawn = kind === "plane" ? { ...this.meta, plate: this.layers.recipe(plate) } : this.meta;
+    return (plate.points ? commandText : configText)(drawn, this.across, this.up);
   }
 
   copyPlate() {
@@ -215,26 +254,27 @@ class Page {
   }
 
   showWords() {
-    const { title, formula, layers, key, marks } = this.meta;
+    const { title, formula, kind } = this.meta;
+    document.body.classList.toggle("plane", kind === "plane");
+    document.body.style.setProperty("--half", Math.ceil((2 + this.layers.all.length) / 2));
     document.title = element("title").textContent = title;
     element("formula").textContent = formula.join(";  ");
     const button = element("plate");
     button.ariaLabel = button.querySelector(".long").textContent = this.recipe.button;
     button.querySelector(".short").textContent = this.recipe.short;
     button.title = `Copy this view as ${this.recipe.what} (Y)`;
-    const what = `${layers[0].label} of ${this.up.name} against ${this.across.name}`;
-    element("canvas").setAttribute("aria-label", `${what}; arrows move, plus and minus zoom, Home shows everything`);
-    showKey(key, Boolean(marks && Object.keys(marks).length));
+    this.showLayer();
   }
 
   showAbout() {
     const { title, note, family, formula, certificate } = this.meta;
     const list = make("dl");
-    const keys = [...KEYS, ["Y", `copy this view as ${this.recipe.what}`]];
+    const keys = [...KEYS, ...(this.layers.all.length > 1 ? [LAYER_KEY] : []), ["Y", `copy this view as ${this.recipe.what}`]];
     for (const [key, words] of keys) list.append(make("dt", key), make("dd", words));
     showDialog(title, [
       ...(note ? [make("p", note)] : []),
       ...(formula.length ? [make("h3", `Formula: ${family}`), make("pre", formula.join("\n"))] : []),
+      ...(this.sideCars ? [make("h3", "Coarser levels"), make("p", COARSER)] : []),
       make("h3", "Keys"),
       list,
       make("h3", "Certificate"),
@@ -250,6 +290,7 @@ class Page {
       plot()         {left, top, width, height} of the box that the tiles fill
       shown()        {asked, pair, kind} as Tiles.choose
       readout(x, y)  texts of the values at a canvas position
+      layer()        name of the layer shown
       plateText()    what 'Copy YAML' or 'Copy command' copies */
   hook() {
     const fraction = ({ num, den }) => `${num}/${den}`;
@@ -262,11 +303,12 @@ class Page {
       pixel: `${axis.unit()}/${axis.full}`,
     });
     return Object.freeze({
-      ready: () => this.sized && !this.drawing && !this.remembering && this.tiles.pending === 0,
+      ready: () => this.sized && !this.drawing && !this.remembering && this.tiles.pending === 0 && !this.sideCars?.pending,
       view: () => ({ across: described(this.across), up: described(this.up) }),
       plot: () => ({ ...this.frame.plot }),
       shown: () => this.tiles.choose(),
       readout: (x, y) => this.readout(x, y),
+      layer: () => this.layers.shown.name,
       plateText: () => this.plateText(),
     });
   }
@@ -280,6 +322,10 @@ const KEYS = [
   ["Home", "whole view"],
   ["P", "nearest levels at which one tile pixel is one screen pixel"],
 ];
+const LAYER_KEY = ["L", "next layer"];
+const COARSER =
+  "At the deepest level a tile pixel is one computed point. At coarser levels it shows the class of most of its " +
+  "points (of equally frequent ones that of the shortest period or lowest number) and the mean of their values.";
 const RECIPES = {
   config: { button: "Copy YAML", short: "YAML", what: "YAML for a plate" },
   command: { button: "Copy command", short: "Shell", what: "a command line that draws it" },
@@ -304,31 +350,13 @@ function showText(title, text) {
   area.select();
 }
 
-/** Colour bar with its labels. */
-function showKey({ caption, colours, labels }, marked) {
-  element("caption").append(make("span", caption));
-  if (marked) {
-    const sign = make("span");
-    sign.className = "mark";
-    sign.append(make("i"), "unsettled columns");
-    element("caption").append(sign);
-  }
-  element("bar").style.background = `linear-gradient(to right, ${colours.join(", ")})`;
-  for (const [share, text] of labels) {
-    const label = make("span", text);
-    label.style.left = `${100 * share}%`;
-    label.style.transform = `translateX(${-100 * share}%)`;
-    element("scale").append(label);
-  }
-  element("key").hidden = false;
-}
-
-/** Hide the labels of the colour bar that would touch the one before. */
-function thinKey() {
-  const fits = spacer(6);
-  for (const label of element("scale").children) {
-    const { left, right } = label.getBoundingClientRect();
-    label.style.visibility = fits(left, right) ? "" : "hidden";
+/** A part of an address as text; undefined where there is none, empty where it makes no sense. */
+function decoded(part) {
+  try {
+    return part === undefined ? undefined : decodeURIComponent(part);
+  } catch (problem) {
+    if (!(problem instanceof URIError)) throw problem;
+    return "";
   }
 }
 

@@ -4,8 +4,8 @@
 class Tiles {
   static KEPT = 320; // tiles held in memory
 
-  constructor(meta, across, up, arrived) {
-    this.layer = meta.layers[0].name;
+  constructor(meta, layers, across, up, arrived) {
+    this.layers = layers;
     this.present = meta.present;
     this.pairs = [...meta.pairs].sort(([a, u], [b, v]) => b + v - a - u || b - a);
     this.across = across;
@@ -64,14 +64,15 @@ class Tiles {
     const { pair, kind } = this.choose();
     this.wanted.clear();
     const [a, u] = pair || [0, 0];
+    const smooth = kind === "shrunk" && this.layers.shown.kind !== "classes"; // colours of classes never mix
     if (!pair) return this.forget();
     for (const column of indices(this.across.tilesAt(a))) {
       for (const row of indices(this.up.tilesAt(u))) {
         if (!this.has(a, u, column, row)) continue;
         const tile = this.fetch(a, u, column, row);
         if (tile.state === "ready") {
-          context.imageSmoothingEnabled = kind === "shrunk";
-          const image = kind === "shrunk" ? halved(tile, this.across.halvings(a), this.up.halvings(u)) : tile.image;
+          context.imageSmoothingEnabled = smooth;
+          const image = smooth ? halved(tile, this.across.halvings(a), this.up.halvings(u)) : tile.image;
           this.place(context, plot, image, this.across.pieces(a, column), this.up.pieces(u, row));
         } else {
           this.standIn(context, plot, a, u, column, row);
@@ -112,7 +113,7 @@ class Tiles {
   }
 
   url(a, u, column, row) {
-    return `tiles/${this.layer}/${a}/${u}/${column}/${row}.png`;
+    return `tiles/${this.layers.shown.name}/${a}/${u}/${column}/${row}.png`;
   }
 
   /** The held tile of an address, asked for when it is new: {image, state}. */
