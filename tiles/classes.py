@@ -16,10 +16,11 @@ codes                  used for                                              col
 60005                  none of what is counted                               white, as paper
 =====================  ====================================================  ==========================
 
-Classes 1 to 13 have the colours of the palette ``kinds``. Every further thirteen repeat them lighter or
-darker, so that the classes 1 to 65 all differ; then the sequence begins anew at 14. Thirteen is a prime: a
-class and its double, which border in cascades of period doublings, have one base colour only where 13 divides
-the class. There are fewer colours in all than a palette image holds, so pictures of classes are such images.
+Classes 1 to 13 have the colours of the palette ``kinds``. Every further thirteen repeat them lighter,
+darker or greyer, so that the classes 1 to 65 all differ; then the sequence begins anew at 14. Thirteen is a
+prime: a class and its double, which border in cascades of period doublings, have one base colour only where
+13 divides the class. There are fewer colours in all than a palette image holds, so that pictures of classes
+are such images.
 """
 
 from __future__ import annotations
@@ -33,12 +34,12 @@ from numpy.typing import ArrayLike, NDArray
 from tiles.errors import Refusal
 from tiles.palette import PALETTES, colour
 
-__all__ = ["COLOURS", "class_colours", "class_shades", "class_table"]
+__all__ = ["COLOURS", "FIRST_OWN", "class_colours", "class_shades", "class_table"]
 
 Rgb = tuple[int, int, int]
 
 _BASE = PALETTES["kinds"].stops
-_TONES = ((255, 0.45), (0, 0.4), (255, 0.7), (0, 0.65))  # towards white or black, and how far
+_TONES = ((255, 0.45), (0, 0.3), (128, 0.55), (255, 0.7))  # towards white, black or grey, and how far
 _OWN = {
     60000: "#c4c4c4",
     60001: "#7486a0",
@@ -47,6 +48,8 @@ _OWN = {
     60004: "#e6d08e",
     60005: "#ffffff",
 }
+FIRST_OWN = min(_OWN)
+"""The least class with a colour of its own; those below are numbered."""
 _NUMBERED = len(_BASE) * (1 + len(_TONES))
 _CODES = 1 << 16
 COLOURS = 1 + _NUMBERED + len(_OWN)
@@ -123,7 +126,7 @@ def _slots() -> NDArray[np.uint8]:
     codes = np.arange(_CODES)
     repeated = 1 + first + (codes - first - 1) % (_NUMBERED - first)
     slots = np.where(codes <= first, codes, repeated).astype(np.uint8)
-    slots[min(_OWN) :] = 0
+    slots[FIRST_OWN:] = 0
     for place, code in enumerate(_OWN):
         slots[code] = 1 + _NUMBERED + place
     slots.flags.writeable = False

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from tiles.curve import LEVELS
 from tiles.palette import colour, lightness
 
-__all__ = ["INKS", "ink_table", "inked", "mixed"]
+__all__ = ["INKS", "ink_table", "inked", "mixed", "swatch"]
 
 Rgb = tuple[int, int, int]
 
@@ -26,6 +26,7 @@ INKS: tuple[Rgb, ...] = tuple(
 
 _FULL = 65535
 _LIGHTEST, _DARKEST = 88.0, 28.0
+_SWATCH = 2 * LEVELS // 3
 _LINES = 64
 
 
@@ -108,6 +109,13 @@ def inked(
         block[np.all([part == LEVELS + 1 for part in parts], axis=0)] = missing
         out[first : first + _LINES] = block
     return out
+
+
+def swatch(*inks: Rgb) -> Rgb:
+    """Return the colour that stands in a legend for an ink, or for several where they meet."""
+    shade = np.array([[_SWATCH]], np.uint8)
+    red, green, blue = inked([shade] * len(inks), inks)[0, 0]
+    return int(red), int(green), int(blue)
 
 
 @lru_cache(maxsize=32)

@@ -133,7 +133,7 @@ PALETTES = {
             "kinds",
             (
                 *("#7ecaff", "#d8a10a", "#bc0049", "#0054c1", "#aa7200", "#008069", "#5d90ff"),
-                *("#645474", "#8cb893", "#854f01", "#c1a5c4", "#8e8c5e", "#7e6ebc"),
+                *("#8cb893", "#645474", "#854f01", "#8e8c5e", "#7e6ebc", "#c1a5c4"),
             ),
             safe_for=_ALL,
             note="separate colours for fates, periods, attractors and basins",

@@ -184,7 +184,7 @@ def _key(box: Box, table: NDArray[np.uint8], text: PanelText, spacing: Spacing) 
     outer = box.right + spacing.line
     x = outer + spacing.minor + spacing.ems(margins.LABEL_GAP)
     room = spacing.ems(margins.KEY_LABELS)
-    free = box.bottom + spacing.em
+    free = box.bottom + 1.2 * spacing.em
     for at, label in text.key_labels:
         y = box.bottom - at * box.height
         if free - y < 1.1 * spacing.em:

@@ -12,7 +12,7 @@ from atlas.reading.sheet import Inset
 from tiles.errors import Refusal
 from tiles.window import Axis, View
 
-HINTED = 1.04  # type fitted to pixels may be a little wider than its font says
+HINTED = 1.08  # type fitted to pixels may be a little wider than its font says
 
 
 class LayoutRefused(Refusal):

@@ -63,10 +63,13 @@ class LegendEntry:
         Plain text.
     colour : tuple of int
         Red, green and blue of its swatch, 0 to 255.
+    kept : bool
+        Whether it stands there even where others are left out for want of lines.
     """
 
     label: str
     colour: Colour
+    kept: bool = False
 
 
 @dataclass(frozen=True)

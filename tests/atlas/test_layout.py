@@ -80,13 +80,22 @@ def test_the_page_is_the_size_asked_for() -> None:
     font=st.sampled_from([None, 6.0, 8.0, 14.0]),
     view=st.sampled_from([VIEW, DEEP, LOG]),
     key=st.booleans(),
+    legend=st.sampled_from([0.0, 3.0, 7.5]),
     letter=st.sampled_from(["", "a"]),
     title=st.sampled_from(["", "Title"]),
 )
 def test_a_plate_fits_its_page_or_is_refused(
-    width: int, height: int, dpi: int, font: float | None, view: View, key: bool, letter: str, title: str
+    width: int,
+    height: int,
+    dpi: int,
+    font: float | None,
+    view: View,
+    key: bool,
+    legend: float,
+    letter: str,
+    title: str,
 ) -> None:
-    request = PlateRequest("p", view, width, height, dpi, font, key, letter, title)
+    request = PlateRequest("p", view, width, height, dpi, font, key, letter, title, legend_width=legend)
     page = laid_out(request)
     if page is None:
         return
@@ -94,8 +103,14 @@ def test_a_plate_fits_its_page_or_is_refused(
     assert contains(Box(0, 0, width, height), panel.raster.grown(page.spacing.line + page.spacing.tick))
     assert min(panel.width, panel.height) >= 3 * page.spacing.em - 1
     assert all(isinstance(side, int) for side in (panel.left, panel.top, panel.width, panel.height))
-    if key:
-        assert panel.key is not None
+    assert (panel.legend is not None) == (legend > 0)
+    assert (panel.key is not None) == (key and not legend)
+    if panel.legend is not None:
+        assert contains(panel.area, panel.legend)
+        assert not overlap(panel.legend, panel.raster.grown(page.spacing.line))
+        assert panel.legend.width >= page.spacing.ems(legend)
+        assert (panel.legend.top, panel.legend.height) == (panel.top, panel.height)
+    if panel.key is not None:
         assert contains(panel.area, panel.key.grown(page.spacing.line))
         assert not overlap(panel.key.grown(page.spacing.line), panel.raster.grown(page.spacing.line))
     assert layout(request) == page
@@ -238,6 +253,44 @@ def test_font_sizes_grow_with_the_page() -> None:
     assert sizes == sorted(sizes)
     assert sizes[1:3] == [7.0, 8.0]
     assert 18 < sizes[4] < 30
+
+
+def test_only_what_is_coloured_by_kind_has_a_legend() -> None:
+    head = "{family: henon, size: 180x110, dpi: 300, longest_period: 4096, "
+    states, plane, both = (
+        "across: [x, -1, 1], up: [y, -1, 1]",
+        "across: [a, 0, 1], up: [b, 0, 1]",
+        "across: [a, 0, 1], up: [x, -1, 1]",
+    )
+    config = parse_config(
+        f"""
+        plates:
+          fate: {head} {plane}, draw: fate}}
+          period: {head} {plane}, draw: period}}
+          attractors: {head} {plane}, draw: attractors}}
+          basin: {head} {states}, draw: basin}}
+          follow: {head} {both}, follow: both}}
+          split: {head} {both}, by_attractor: true}}
+          lyapunov: {head} {plane}, draw: lyapunov}}
+          escape: {head} {plane}, draw: escape}}
+          portrait: {head} {states}}}
+          histogram: {head} {both}}}
+        """,
+        "test",
+    )
+    widths = {}
+    for name, plate in config.plates.items():
+        asked = request_of(plate)
+        assert isinstance(asked, PlateRequest)
+        widths[name] = asked.legend_width
+        assert (layout(asked).panels[0].legend is not None) == (asked.legend_width > 0)
+    assert [name for name, width in widths.items() if width == 0] == [
+        "lyapunov",
+        "escape",
+        "portrait",
+        "histogram",
+    ]
+    assert widths["fate"] > widths["basin"] > widths["follow"] > 3
 
 
 def test_requests_come_from_a_config() -> None:

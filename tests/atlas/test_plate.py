@@ -16,16 +16,32 @@ from xml.etree import ElementTree
 import numpy as np
 import pytest
 
+from atlas.figure.boxes import Box, Spacing
 from atlas.figure.drawing import GREY_MARK, MARK, pieces
 from atlas.figure.layout import FigureRequest, PlateRequest
-from atlas.figure.pieces import Words
-from atlas.figure.plate import draw, files
+from atlas.figure.legends import class_legend, fitted, legend_pieces
+from atlas.figure.pieces import BLACK, Block, Words
+from atlas.figure.plate import Raster, draw, files
 from atlas.figure.typeset import LetteringRefused, Typesetter, settings
 from atlas.output.certificate_reader import read
 from atlas.reading.sheet import Inset
-from tests.atlas.plates import RECORD, VIEW, filled, made, opened, pdf_images, pdf_objects, request
+from tests.atlas.plates import (
+    LEGEND,
+    LEGEND_WIDTH,
+    RECORD,
+    VIEW,
+    filled,
+    made,
+    mixed_raster,
+    opened,
+    pdf_images,
+    pdf_objects,
+    request,
+)
+from tiles.classes import class_shades, class_table
 from tiles.errors import OutputFailed, Refusal
 from tiles.shading import LEVELS, colour_table
+from tiles.values import fit_values, value_key_labels
 from tiles.window import View
 
 ALL = ("png", "tiff", "pdf", "svg")
@@ -78,6 +94,123 @@ def test_every_pixel_of_the_raster_is_in_every_file(width: int, height: int, dpi
     assert np.array_equal(image, colours)
     (inside,) = re.findall(rb'"data:image/png;base64,([^"]+)"', data["svg"])
     assert np.array_equal(opened(base64.b64decode(inside)), colours)
+
+
+@pytest.mark.parametrize(("width", "height"), [(320, 230), (241, 203)])
+def test_every_mixed_pixel_is_in_every_file(width: int, height: int) -> None:
+    from PIL import Image
+
+    page, _, texts = filled(request(width, height, 72, legend_width=LEGEND_WIDTH))
+    panel = page.panels[0]
+    raster = mixed_raster(panel.width, panel.height)
+    data = dict(files(page, {"plate": raster}, texts, ALL, RECORD))
+    for form in ("png", "tiff"):
+        with Image.open(io.BytesIO(data[form])) as image:
+            assert (image.mode, image.size) == ("RGB", (width, height))
+        crop = opened(data[form])[panel.top : panel.top + panel.height, panel.left : panel.left + panel.width]
+        assert np.array_equal(crop, raster.pixels)
+    (image,) = pdf_images(data["pdf"])
+    assert np.array_equal(image, raster.pixels)
+    (inside,) = re.findall(rb'"data:image/png;base64,([^"]+)"', data["svg"])
+    assert np.array_equal(opened(base64.b64decode(inside)), raster.pixels)
+    assert dict(files(page, {"plate": raster}, texts, ALL, RECORD)) == data
+
+
+def test_mixed_pixels_and_palettes_share_a_figure() -> None:
+    asked = FigureRequest("f", FOUR, 500, 400, 90, 7.0)
+    page, rasters, texts = filled(asked, "blue", "grey")
+    second = page.panels[1]
+    rasters["b"] = mixed_raster(second.width, second.height)
+    data = dict(files(page, rasters, texts, ALL, RECORD))
+    for panel, image in zip(page.panels, pdf_images(data["pdf"]), strict=True):
+        raster, box = rasters[panel.name], panel.raster
+        colours = raster.pixels if raster.table is None else raster.table[raster.indices]
+        assert np.array_equal(image, colours)
+        for form in ("png", "tiff"):
+            assert np.array_equal(opened(data[form])[box.top : box.bottom, box.left : box.right], colours)
+
+
+@pytest.mark.parametrize("grey", [False, True])
+def test_unsettled_columns_of_mixed_pixels_are_marked(grey: bool) -> None:
+    page, _, texts = filled(request(640, 400, 96))
+    box, line = page.panels[0].raster, page.spacing.line
+    pixels = mixed_raster(box.width, box.height).pixels
+    assert pixels is not None
+    pixels = np.repeat(pixels[..., :1], 3, axis=2) if grey else pixels
+    raster = Raster(None, None, VIEW, np.arange(box.width) == 40, pixels)
+    found = opened(dict(files(page, {"plate": raster}, texts, ("png",), RECORD))["png"])
+    assert tuple(found[box.top - line - 1, box.left + 40]) == (GREY_MARK if grey else MARK)
+
+
+def test_a_key_beside_mixed_pixels_has_the_table_that_comes_with_them() -> None:
+    page, _, texts = filled(request(640, 400, 96, has_key=True))
+    panel = page.panels[0]
+    assert panel.key is not None
+    table, pixels = colour_table("balance"), mixed_raster(panel.width, panel.height).pixels
+    raster = Raster(None, table, VIEW, None, pixels)
+    found = opened(dict(files(page, {"plate": raster}, texts, ("png",), RECORD))["png"])
+    key = found[panel.key.top : panel.key.bottom, panel.key.left]
+    assert [tuple(key[-1]), tuple(key[0])] == [tuple(table[1]), tuple(table[LEVELS])]
+    without = Raster(None, None, VIEW, None, pixels)
+    found = opened(dict(files(page, {"plate": without}, texts, ("png",), RECORD))["png"])
+    assert (found[panel.key.top : panel.key.bottom, panel.key.left] == 255).all()
+
+
+def test_the_ends_of_a_key_are_labelled() -> None:
+    turns = value_key_labels(fit_values(np.zeros(0), kind="cyclic"))
+    page, rasters, texts = filled(request(640, 400, 96, has_key=True))
+    text = {"plate": replace(texts["plate"], key_labels=turns)}
+    key = page.panels[0].key
+    assert key is not None
+    words = [piece for piece in pieces(page, rasters, text) if isinstance(piece, Words) and not piece.turned]
+    assert [each.text for each in words if each.x > key.right] == [label for _, label in turns]
+
+
+def test_a_raster_is_indices_with_a_table_or_pixels() -> None:
+    indices, table, pixels = np.zeros((1, 1), np.uint8), colour_table("grey"), np.zeros((1, 1, 3), np.uint8)
+    for one, two, three in (
+        (None, None, None),
+        (indices, None, None),
+        (indices, table, pixels),
+        (None, table, None),
+    ):
+        with pytest.raises(ValueError, match="either indices and their table or pixels"):
+            Raster(one, two, VIEW, None, three)
+
+
+def test_a_legend_shows_its_colours_beside_the_frame() -> None:
+    page, rasters, texts = filled(request(1063, 709, 300, legend_width=LEGEND_WIDTH, has_key=True))
+    panel = page.panels[0]
+    assert panel.key is None
+    assert panel.legend is not None
+    pixels = opened(dict(files(page, rasters, texts, ("png",), RECORD))["png"])
+    column = pixels[panel.legend.top : panel.legend.bottom, panel.legend.left + round(page.spacing.em / 2)]
+    runs = [tuple(map(int, colour)) for colour, _ in itertools.groupby(map(tuple, column))]
+    seen = [colour for colour in runs if colour not in ((0, 0, 0), (255, 255, 255))]
+    drawn = [entry.colour for entry in fitted(LEGEND, 99)[:3] if not isinstance(entry, int)]
+    assert seen[:3] == drawn
+    assert seen[-2:] == [LEGEND[-3].colour, LEGEND[-2].colour]
+    words = [piece.text for piece in pieces(page, rasters, texts) if isinstance(piece, Words)]
+    (more,) = (text for text in words if text.startswith("and "))
+    labels = {entry.label for entry in LEGEND}
+    assert more == f"and {len(labels - set(words))} more"
+    assert {"quasi-periodic", "chaotic", "escapes"} <= set(words)
+
+
+def test_a_picture_of_classes_with_a_legend_is_a_palette_png() -> None:
+    from PIL import Image
+
+    page, _, texts = filled(request(640, 400, 96, legend_width=LEGEND_WIDTH))
+    panel = page.panels[0]
+    codes = np.random.default_rng(3).integers(1, 65, (panel.height, panel.width), np.uint16)
+    for table in (class_table(), colour_table("kinds")):
+        raster = Raster(class_shades(codes), table, VIEW)
+        text = replace(texts["plate"], legend=class_legend(np.unique(codes), str))
+        data = dict(files(page, {"plate": raster}, {"plate": text}, ("png",), RECORD))["png"]
+        with Image.open(io.BytesIO(data)) as image:
+            assert image.mode == "P"
+        crop = opened(data)[panel.top : panel.top + panel.height, panel.left : panel.left + panel.width]
+        assert np.array_equal(crop, class_table()[class_shades(codes)])
 
 
 def test_the_frame_stands_outside_the_raster() -> None:
@@ -287,7 +420,18 @@ PAGES = [
     request(700, 500, 300, view=DEEP, has_key=True),
     request(2126, 1299, 300, view=LOG, font_size=9.0, has_key=True, title="Two log axes", inset=None),
     request(11811, 8268, 300, font_size=24.4, has_key=True, title="A poster", letter="a"),
+    request(2126, 1299, 300, font_size=8.0, legend_width=LEGEND_WIDTH),
+    request(640, 400, 96, font_size=8.0, title="For a screen", legend_width=LEGEND_WIDTH),
+    request(600, 420, 300, font_size=6.0, view=DEEP, letter="a", legend_width=LEGEND_WIDTH),
     FigureRequest("f", FOUR, 2126, 1535, 300, 8.0, frozenset({"across", "up"}), title="Four"),
+    FigureRequest(
+        "f",
+        tuple(tuple(replace(plate, legend_width=LEGEND_WIDTH) for plate in row) for row in FOUR),
+        2126,
+        1436,
+        300,
+        7.0,
+    ),
     FigureRequest("f", (FOUR[0], FOUR[1][:1]), 1800, 1300, 300, 7.0),
     FigureRequest(
         "f",
@@ -325,7 +469,10 @@ def test_no_words_touch_others_or_leave_the_page(asked: PlateRequest | FigureReq
                 assert setter.points(piece) > 0.75 * piece.points, piece.text
     keys = [panel.key.grown(page.spacing.line) for panel in page.panels if panel.key]
     frames = [panel.raster.grown(page.spacing.line) for panel in page.panels]
-    boxes = [(str(box), box.left, box.top, box.right, box.bottom) for box in (*keys, *frames)]
+    swatches = [
+        box for panel in page.panels if panel.legend for box in swatches_of(panel.legend, page.spacing)
+    ]
+    boxes = [(str(box), box.left, box.top, box.right, box.bottom) for box in (*keys, *frames, *swatches)]
     assert len(found) > 8 * len(page.panels)
     for text, left, top, right, bottom in found:
         assert left >= 0, text
@@ -335,6 +482,14 @@ def test_no_words_touch_others_or_leave_the_page(asked: PlateRequest | FigureReq
     for one, other in itertools.combinations([*found, *boxes], 2):
         apart = one[3] < other[1] or other[3] < one[1] or one[4] < other[2] or other[4] < one[2]
         assert apart, (one, other)
+
+
+def swatches_of(legend: Box, spacing: Spacing) -> list[Box]:
+    """Return where the swatches of a full legend stand, with their frames."""
+    drawn = legend_pieces(legend, LEGEND, spacing)
+    return [
+        piece.box.grown(spacing.line) for piece in drawn if isinstance(piece, Block) and piece.colour != BLACK
+    ]
 
 
 def filled_without_pixels(asked: PlateRequest | FigureRequest):  # type: ignore[no-untyped-def]

@@ -32,12 +32,12 @@ def test_classes_to_65_all_differ_and_longer_ones_repeat_them():
     assert class_colours([59999])[0] in class_colours(range(14, 66))
 
 
-def test_a_class_and_its_double_differ_as_much_as_any_two():
+def test_a_class_and_its_double_are_told_apart_by_all_eyes():
     for code in range(1, 33):
-        assert least_difference(class_colours([code, 2 * code])) > 6, code
+        assert least_difference(class_colours([code, 2 * code])) > 9, code
 
 
-@pytest.mark.parametrize(("first", "least"), [(4, 13.0), (8, 12.0), (13, 9.5)])
+@pytest.mark.parametrize(("first", "least"), [(4, 13.0), (8, 11.0), (13, 9.5)])
 def test_the_first_classes_are_told_apart_by_all_eyes(first, least):
     # in CIEDE2000, where 1 to 2 is just noticed (common practice, no source)
     own = class_colours([60000, 60001, 60002, 60003, 60004])

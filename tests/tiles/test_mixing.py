@@ -10,7 +10,7 @@ from hypothesis.extra.numpy import arrays
 
 from tests.tiles.colour_vision import difference, lab, least_difference, linear
 from tiles.curve import LEVELS
-from tiles.mixing import INKS, ink_table, inked, mixed
+from tiles.mixing import INKS, ink_table, inked, mixed, swatch
 from tiles.palette import lightness
 from tiles.shading import MISSING, colour_table
 
@@ -122,6 +122,13 @@ def test_empty_cells_have_the_colours_asked_for():
         missing=(9, 9, 9),
     )
     assert found.tolist() == [[[1, 2, 3], [9, 9, 9], [1, 2, 3]]]
+
+
+def test_a_legend_shows_an_ink_and_where_two_meet():
+    one, two, both = swatch(INKS[0]), swatch(INKS[1]), swatch(*INKS[:2])
+    assert one == tuple(ink_table(INKS[0])[2 * LEVELS // 3].tolist())
+    assert lightness(both) < min(lightness(one), lightness(two)) - 10
+    assert least_difference([one, two, both]) > 15
 
 
 def test_every_density_needs_an_ink():
