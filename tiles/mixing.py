@@ -94,21 +94,32 @@ def inked(
     """
     if len(shades) != len(colours) or not shades:
         raise ValueError(f"{len(shades)} densities need as many inks, not {len(colours)}")
+    parts = [np.minimum(each, LEVELS + 1) for each in shades]
+    if len(parts) == 2:
+        all_pairs = np.indices((LEVELS + 2, LEVELS + 2), np.uint8)
+        return _printed(list(all_pairs), colours, background, missing)[parts[0], parts[1]]
+    out = np.empty((*parts[0].shape, 3), np.uint8)
+    for first in range(0, len(out), _LINES):
+        block = slice(first, first + _LINES)
+        out[block] = _printed([part[block] for part in parts], colours, background, missing)
+    return out
+
+
+def _printed(
+    parts: Sequence[NDArray[np.uint8]], colours: Sequence[Rgb], background: Rgb, missing: Rgb
+) -> NDArray[np.uint8]:
+    """Return what :func:`inked` does for arrays of few cells."""
     tables = [_light()[ink_table(each)].astype(np.uint64) for each in colours]
     for table in tables:
         table[0] = table[LEVELS + 1] = _FULL
-    out = np.empty((*shades[0].shape, 3), np.uint8)
-    for first in range(0, len(out), _LINES):
-        parts = [np.minimum(each[first : first + _LINES], LEVELS + 1) for each in shades]
-        each_light = [table[part] for part, table in zip(parts, tables, strict=True)]
-        light, *others = np.sort(each_light, axis=0)  # the same rounding in whatever order they come
-        for other in others:
-            light = (light * other + _FULL // 2) // _FULL
-        block = _written()[light]
-        block[np.all([part % (LEVELS + 1) == 0 for part in parts], axis=0)] = background
-        block[np.all([part == LEVELS + 1 for part in parts], axis=0)] = missing
-        out[first : first + _LINES] = block
-    return out
+    each_light = [table[part] for part, table in zip(parts, tables, strict=True)]
+    light, *others = np.sort(each_light, axis=0)  # the same rounding in whatever order they come
+    for other in others:
+        light = (light * other + _FULL // 2) // _FULL
+    colour_of = _written()[light]
+    colour_of[np.all([part % (LEVELS + 1) == 0 for part in parts], axis=0)] = background
+    colour_of[np.all([part == LEVELS + 1 for part in parts], axis=0)] = missing
+    return colour_of
 
 
 def swatch(*inks: Rgb) -> Rgb:

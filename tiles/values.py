@@ -202,8 +202,9 @@ def _sequential(ordered: Floats, shading: str) -> ValueFit:
     if shading == "linear":
         low, high = _share(ordered, _FEW), _share(ordered, _NEARLY_ALL)
         return ValueFit("sequential", low, high, np.linspace(low, high, LEVELS + 1)[1:-1])
-    values, often = np.unique(ordered, return_counts=True)
-    return ValueFit("sequential", low, high, thresholds(values, often.astype(np.uint64), shading))
+    starts = np.flatnonzero(np.diff(ordered, prepend=-np.inf))
+    often = np.diff(starts, append=ordered.size).astype(np.uint64)
+    return ValueFit("sequential", low, high, thresholds(ordered[starts], often, shading))
 
 
 def _share(ordered: Floats, share: float) -> float:
