@@ -116,7 +116,7 @@ def _printed(
     light, *others = np.sort(each_light, axis=0)  # the same rounding in whatever order they come
     for other in others:
         light = (light * other + _FULL // 2) // _FULL
-    colour_of = _written()[light]
+    colour_of: NDArray[np.uint8] = _written()[light]
     colour_of[np.all([part % (LEVELS + 1) == 0 for part in parts], axis=0)] = background
     colour_of[np.all([part == LEVELS + 1 for part in parts], axis=0)] = missing
     return colour_of
