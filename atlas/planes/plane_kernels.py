@@ -10,12 +10,33 @@ OPEN, GONE, DEAD, MET, NEAR, AGAIN = range(6)
 START = """
     lx = np.empty((NX, LANES))
     ls = np.empty((NX, LANES))
+    lz = np.empty((NX, LANES))
     lc = np.empty((ROWS, LANES))
     lg = np.empty(LANES, np.int64)
     lt = np.empty(LANES, np.int64)
     lf = np.zeros(LANES, np.bool_)
     lk = np.empty(LANES, np.uint64)
 """
+
+PART_GONE = '''
+@compiled
+def part_gone(lx, ls, lz, lf, bound, began, lg, lt):
+    """Note which lanes a test finds gone for the first time, and where the test before left them.
+
+    Their states are put to 0, so that they need not be found again and again.
+    """
+    for l in range(LANES):
+        LOAD_STATE
+        out = OUTSIDE
+        if lg[l] == OPEN and FOUND:
+            lg[l] = GONE if out else DEAD
+            lt[l] = began
+            for k in range(NX):
+                lz[k, l] = ls[k, l]
+        if lg[l] != OPEN:
+            for k in range(NX):
+                lx[k, l] = 0.0
+'''
 
 FLEE = f'''
 @compiled
@@ -28,18 +49,20 @@ def flee(x, c, word, key, order, before, steps, bound, low, outcome, since):
             m = order[first + min(l, lanes - 1)]
             for k in range(NX):
                 lx[k, l] = x[k, m]
-                ls[k, l] = x[k, m]
             for k in range(ROWS):
                 lc[k, l] = c[k, m]
             lg[l] = OPEN
-            lt[l] = before
             lk[l] = key[m]
         n = before
         done = 0
         while done < steps:
             now = min(CHUNK, steps - done)
-            for l in range(LANES):
-                KEEP n
+            began = n
+            for k in range(NX):
+                for l in range(LANES):
+                    ls[k, l] = lx[k, l]
+            MORTAL for l in range(LANES):
+                MORTAL lf[l] = False
             for part in range(now // UNROLL):
                 PHASE n
                 for l in range(LANES):
@@ -60,9 +83,12 @@ def flee(x, c, word, key, order, before, steps, bound, low, outcome, since):
                     STORE
                 n += 1
             END_REST
+            some = False
             for l in range(LANES):
                 LOAD
-                FOUND
+                some = some | FOUND
+            if some:
+                part_gone(lx, ls, lz, lf, bound, began, lg, lt)
             done += now
         for l in range(lanes):
             m = order[first + l]
@@ -70,7 +96,7 @@ def flee(x, c, word, key, order, before, steps, bound, low, outcome, since):
             if lg[l] != OPEN:
                 since[m] = lt[l]
                 for k in range(NX):
-                    x[k, m] = ls[k, l]
+                    x[k, m] = lz[k, l]
             else:
                 for k in range(NX):
                     x[k, m] = lx[k, l]
@@ -89,21 +115,23 @@ def measure(x, v, c, word, key, order, before, steps, bound, low, outcome, since
             m = order[first + min(l, lanes - 1)]
             for k in range(NX):
                 lx[k, l] = x[k, m]
-                ls[k, l] = x[k, m]
                 le[k, l] = 0.0
             for k in range(NV_ALL):
                 lv[k, l] = v[k, m]
             for k in range(ROWS):
                 lc[k, l] = c[k, m]
             lg[l] = OPEN
-            lt[l] = before
             lk[l] = key[m]
         n = before
         done = 0
         while done < steps:
             now = min(CHUNK, steps - done)
-            for l in range(LANES):
-                KEEP n
+            began = n
+            for k in range(NX):
+                for l in range(LANES):
+                    ls[k, l] = lx[k, l]
+            MORTAL for l in range(LANES):
+                MORTAL lf[l] = False
             for part in range(now // UNROLL):
                 PHASE n
                 for l in range(LANES):
@@ -128,20 +156,25 @@ def measure(x, v, c, word, key, order, before, steps, bound, low, outcome, since
                     STORE
                 n += 1
             END_REST
+            some = False
             for l in range(LANES):
                 LOAD
-                FOUND
-                LOAD_VECTORS
-                RESCALE
-                STORE_VECTORS
+                some = some | FOUND
+            if some:
+                part_gone(lx, ls, lz, lf, bound, began, lg, lt)
             done += now
+            if done % RESCALED == 0 or done == steps:
+                for l in range(LANES):
+                    LOAD_VECTORS
+                    RESCALE
+                    STORE_VECTORS
         for l in range(lanes):
             m = order[first + l]
             outcome[m] = lg[l]
             if lg[l] != OPEN:
                 since[m] = lt[l]
             for k in range(NX):
-                x[k, m] = lx[k, l] if lg[l] == OPEN else ls[k, l]
+                x[k, m] = lx[k, l] if lg[l] == OPEN else lz[k, l]
             at = 0
             for g in range(NX):
                 side = SIDES[g]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 
 from atlas.orbits.kernel_source import DISTURB, Writer
@@ -9,7 +10,19 @@ from atlas.orbits.lane_kernels import RETURNS
 from atlas.orbits.orbit_kernels import FILL, LOOK, VOLUMES
 from atlas.orbits.step import StepSource
 from atlas.orbits.volumes import lengths
-from atlas.planes.plane_kernels import AGAIN, DEAD, FLEE, GONE, JUDGE, MEASURE, MET, NEAR, OPEN, TURN
+from atlas.planes.plane_kernels import (
+    AGAIN,
+    DEAD,
+    FLEE,
+    GONE,
+    JUDGE,
+    MEASURE,
+    MET,
+    NEAR,
+    OPEN,
+    PART_GONE,
+    TURN,
+)
 
 BACKWARD = 2.0**-8
 """Turns about a mean by half a turn, and by so much less, count as backward: else rounding would decide of
@@ -43,11 +56,14 @@ def plane_source(source: StepSource, *, lanes: int, mortal: Sequence[int], windi
     many = [writer.written(text) for text in (FLEE, MEASURE, RETURNS)]
     if winding is not None or source.states > 1:
         many.append(writer.written(TURN))
-    single = [writer.written(text, step="one_step") for text in (VOLUMES, LOOK, *_on_cycle(), JUDGE)]
+    single = [
+        writer.written(text, step="one_step") for text in (VOLUMES, LOOK, *_on_cycle(), JUDGE, PART_GONE)
+    ]
     text = "\n".join([source.text, writer.single_steps(), *single, *many, *disturbed])
     codes = {"OPEN": OPEN, "GONE": GONE, "DEAD": DEAD, "MET": MET, "NEAR": NEAR, "AGAIN": AGAIN}
     constants = {name: str(code) for name, code in codes.items()}
-    return writer.named(text, constants | {"LANES": str(lanes), "NV_ALL": str(sum(lengths(source.states)))})
+    constants |= {"LANES": str(lanes), "NV_ALL": str(sum(lengths(source.states)))}
+    return writer.named(text, constants | {"RESCALED": "32" if source.states == 1 else "16"})
 
 
 def _on_cycle() -> list[str]:
@@ -75,21 +91,20 @@ class PlaneWriter(Writer):
             "CARRY": carried,
             "LOAD_VECTORS": [f"{name} = lv[{k}, l]" for k, name in enumerate(vectors)],
             "STORE_VECTORS": [f"lv[{k}, l] = {name}" for k, name in enumerate(vectors)],
-            "KEEP": [
-                "kept = lg[l] == OPEN",
-                "lt[l] = {number} if kept else lt[l]",
-                *(f"ls[{k}, l] = lx[{k}, l] if kept else ls[{k}, l]" for k in range(len(states))),
-                *(["lf[l] = False"] if self.mortal else []),
-            ],
+            "LOAD_STATE": [f"{name} = lx[{k}, l]" for k, name in enumerate(states)],
             "DYING": [f"lf[l] = lf[l] | (abs({states[k]}) < low[{k}])" for k in self.mortal],
-            "FOUND": self._found(),
             "RESCALE": self._rescaled(vectors),
             "TURNED": self._turned(blocks["STEP"]),
         }
 
-    def _found(self) -> list[str]:
-        other = "(DEAD if lf[l] else OPEN)" if self.mortal else "OPEN"
-        return [f"lg[l] = (GONE if OUTSIDE else {other}) if lg[l] == OPEN else lg[l]"]
+    def _words(self) -> dict[str, str]:
+        words = super()._words()
+        outside = words["OUTSIDE"]
+        return words | {"FOUND": f"({outside} | lf[l])" if self.mortal else outside}
+
+    def _chosen(self, text: str) -> str:
+        text = super()._chosen(text)
+        return re.sub(r"\bMORTAL ", "", text) if self.mortal else re.sub(r" *MORTAL .*\n", "", text)
 
     def _rescaled(self, vectors: Sequence[str]) -> list[str]:
         lines = []
