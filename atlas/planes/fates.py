@@ -22,11 +22,11 @@ numbers:
    *approaching*. It is run on, as many steps again as it has done, up to the limit of the transient, and is
    then *unsettled*. One that stops approaching on the way is measured anew, as after the transient.
 4. Else the exponents decide. Over N steps in 16 batches, tangent volumes give the exponents (Benettin,
-   Galgani, Giorgilli & Strelcyn 1980, Meccanica 15, 9-20), rescaled by powers of two every 16 steps
-   (every 32 with one state variable); the standard error s is that of the means of the batches. With the tolerance 3 s + ln(N) / N the orbit is
-   *chaotic* when the largest exponent lies above it, *quasi-periodic* when it lies within it, and
-   *unsettled* when it lies below the negative tolerance although no cycle was found, or is not finite: then
-   the tests disagree.
+   Galgani, Giorgilli & Strelcyn 1980, Meccanica 15, 9-20), rescaled by powers of two every 16 steps (every 32
+   with one state variable); the standard error s is that of the means of the batches. With the tolerance
+   3 s + ln(N) / N the orbit is *chaotic* when the largest exponent lies above it, *quasi-periodic* when it
+   lies within it, and *unsettled* when it lies below the negative tolerance although no cycle was found, or
+   is not finite: then the tests disagree.
 """
 
 from __future__ import annotations
