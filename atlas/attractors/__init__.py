@@ -1,0 +1,1 @@
+"""Attractors: which orbits reach the same one, in basin charts, planes and densities."""
