@@ -31,7 +31,7 @@ SIDE_CARS = "values"
 
 
 def fill_planes(
-    index_path: Path, site: Path, *, shading: str, chosen: str, background: str | None, run: Run
+    index_path: Path, site: Path, *, shading: str, chosen: str | None, background: str | None, run: Run
 ) -> None:
     """Fill an unfinished folder with the page, its description, the pictures and the side-car scripts.
 
@@ -42,7 +42,7 @@ def fill_planes(
         The unfinished folder.
     shading : str
         Of sequential values; the fits of others have none.
-    chosen : str
+    chosen : str, optional
         Name of a palette, which the layers get whose kind it fits. The others get that of the header, or
         the usual one of their kind.
     background : str, optional
@@ -50,7 +50,8 @@ def fill_planes(
     run : callable
         Scheduler of the tasks; each writes one tile column of a level pair.
     """
-    palette(chosen)  # an unknown name is refused, even where no layer has use for it
+    if chosen is not None:
+        palette(chosen)  # an unknown name is refused, even where no layer has use for it
     with intact(index_path), PlaneIndex.open(index_path) as index:
         layers = value_layers(index, shading=shading, chosen=chosen, background=background)
         classes = colour_table(CLASS_PALETTE, background=background)
@@ -85,18 +86,20 @@ def fill_planes(
 
 
 def value_layers(
-    index: PlaneIndex, *, shading: str, chosen: str, background: str | None
+    index: PlaneIndex, *, shading: str, chosen: str | None, background: str | None
 ) -> tuple[ValueLayer, ...]:
     """Return the layers of values of an index with their fits and colours, see :func:`fill_planes`."""
     return tuple(_value_layer(index, given, shading, chosen, background) for given in index.value_layers)
 
 
 def _value_layer(
-    index: PlaneIndex, given: Mapping[str, Any], shading: str, chosen: str, background: str | None
+    index: PlaneIndex, given: Mapping[str, Any], shading: str, chosen: str | None, background: str | None
 ) -> ValueLayer:
     name, kind = str(given["name"]), str(given["palette_kind"])
     fit = index.value_fit(name) if kind != "sequential" or shading == "equalised" else None
-    picked = chosen if palette(chosen).kind == kind else given.get("palette") or PALETTE_OF_KIND[kind]
+    picked = given.get("palette") or PALETTE_OF_KIND[kind]
+    if chosen is not None and palette(chosen).kind == kind:
+        picked = chosen
     return ValueLayer(
         name,
         given.get("label") or name,

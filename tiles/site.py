@@ -24,6 +24,7 @@ from tiles.store import Readers, intact, written
 from tiles.strip import PER_COLUMN
 from tiles.tasks import Run, serially
 
+DENSITY_PALETTE = "blue"
 _SHORTEST_TABLE, _LONGEST_TABLE = 1 << 16, 1 << 20
 
 
@@ -32,7 +33,7 @@ def build_site(
     out_dir: Path,
     *,
     shading: str = "equalised",
-    palette: str = "blue",
+    palette: str | None = None,
     background: str | None = None,
     missing: str | None = None,
     run: Run = serially,
@@ -52,8 +53,9 @@ def build_site(
         Its fit is taken from the index, or fitted to the middle level pair. Of planes, that of sequential
         values.
     palette, background, missing : str
-        See :func:`tiles.shading.colour_table`. Of planes, the palette of those layers of values whose kind
-        it fits; the others keep their own, and classes have one palette always.
+        See :func:`tiles.shading.colour_table`; the default palette is ``blue``. Of planes, the palette of
+        those layers of values whose kind it fits; the others keep their own, and classes have one palette
+        always.
     run : callable
         Scheduler of the tasks; each writes one tile column of a level pair.
     unfinished : Path, optional
@@ -72,7 +74,12 @@ def build_site(
     if planes:
         fill_planes(index_path, site, shading=shading, chosen=palette, background=background, run=run)
     else:
-        colours = {"shading": shading, "palette": palette, "background": background, "missing": missing}
+        colours = {
+            "shading": shading,
+            "palette": palette or DENSITY_PALETTE,
+            "background": background,
+            "missing": missing,
+        }
         _fill(index_path, site, shading, colours, run)
     with written(out_dir):
         site_folder.name(site, out_dir)

@@ -227,7 +227,7 @@ def test_side_cars_are_read_when_the_pointer_comes(planes: Made, open_page: Open
         return [url.split("/values/")[1] for url in opened.requests if "/values/" in url]
 
     assert asked() == []
-    assert opened.page.text_content("#readout").endswith("–largest exponent = –rotation number = –")
+    assert opened.page.text_content("#readout").endswith("fate = –largest exponent = –rotation number = –")
     left, top = opened.plot_corner()
     columns, rows = window(opened)
     height = opened.call("plot")["height"]
@@ -243,7 +243,7 @@ def test_side_cars_are_read_when_the_pointer_comes(planes: Made, open_page: Open
     opened.go("0,0.8", "0,0.8")
     opened.page.mouse.move(left + 2, top + 2)  # beyond the ends of the axes
     opened.settle()
-    assert opened.page.text_content("#readout").endswith("–largest exponent = –rotation number = –")
+    assert opened.page.text_content("#readout").endswith("fate = –largest exponent = –rotation number = –")
     assert len(asked()) == 2
 
 

@@ -240,6 +240,16 @@ def test_a_later_version_is_refused(index):
         Index.open(index.path)
 
 
+def test_the_version_before_is_read(index):
+    index.put(Address(1, 1, 0, 0), a_tile())
+    index.finish()
+    index._db.executescript("DROP TABLE classes; DROP TABLE sums; PRAGMA user_version = 1")
+    with Index.open(index.path) as old:
+        assert np.array_equal(old.get(Address(1, 1, 0, 0)), a_tile())
+        assert old.present((1, 1)) == {0: [(0, 0)]}
+        assert len(old.counts_digest()) == 64
+
+
 def test_a_damaged_tile_is_named(index):
     index.put(Address(1, 0, 1, 0), a_tile())
     index._db.execute("UPDATE tiles SET counts = ?", (b"nonsense",))

@@ -1,11 +1,15 @@
 """A built index of planes holds exactly the class counts and sums of its source, however it was built."""
 
+import contextlib
+import hashlib
 import math
 import os
 import signal
+import sqlite3
 import subprocess
 import sys
 import threading
+import zlib
 
 import numpy as np
 import pytest
@@ -250,6 +254,30 @@ def test_the_digest_depends_on_classes_values_and_addresses(tmp_path, plane, ref
     diagonal = contents(built(tmp_path / "same", plane))[2]
     assert diagonal == reference[2]
     assert len({one, two, three, diagonal}) == 4
+
+
+def test_the_written_description_suffices_to_read_a_tile(tmp_path, plane):
+    """Every step is one of INDEX.md, without our own readers; sums are read in the tests of their codec."""
+    path, deepest = built(tmp_path, plane), "WHERE across_level = 2 AND up_level = 2"
+    at = f"{deepest} AND tile_column = x'0103' AND tile_row = x'0101'"
+    with contextlib.closing(sqlite3.connect(path)) as plain:
+        found = np.zeros((256, 256), int)
+        for number, blob in plain.execute(f"SELECT class, counts FROM classes {at}"):
+            raw = zlib.decompress(blob)
+            size = int.from_bytes(raw[1:5], "little")
+            assert raw[0] == 1
+            if size == 65536:
+                found[np.frombuffer(raw, np.uint8, size, 5).reshape(256, 256) == 1] = number
+            else:
+                found[list(raw[5 : 5 + size]), list(raw[5 + size : 5 + 2 * size])] = number
+        digest = hashlib.sha256()
+        order = f"{deepest} ORDER BY tile_column, tile_row"
+        for row in plain.execute(f"SELECT tile_column, tile_row, class, digest FROM classes {order}, class"):
+            digest.update(row[0] + row[1] + row[2].to_bytes(2, "big") + row[3])
+        for row in plain.execute(f"SELECT tile_column, tile_row, layer, digest FROM sums {order}, layer"):
+            digest.update(row[0] + row[1] + row[2].encode() + b"\0" + row[3])
+    assert np.array_equal(found, plane.classes[768:1024, 256:512])
+    assert digest.hexdigest() == contents(path)[2]
 
 
 def test_what_the_index_says_of_its_planes(tmp_path, plane):

@@ -247,6 +247,8 @@ def test_sequential_values_follow_the_shading(tmp_path):
         shades = shade_values(plane.means((0, 0), "escape"), fit)
         expected = colour_table("teal")[shades].transpose(1, 0, 2)[::-1]
         assert np.array_equal(picture(tmp_path / shading, "escape", Address(0, 0, 0, 0)), expected)
+    build_site(path, tmp_path / "usual")
+    assert described(tmp_path / "usual")["layers"][1]["palette"] == "teal"
     build_site(path, tmp_path / "brick", palette="brick")
     assert described(tmp_path / "brick")["layers"][1]["palette"] == "brick"
 

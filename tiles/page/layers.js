@@ -56,7 +56,7 @@ class Layers {
       if (layer.kind === "classes") {
         const entry = layer.legend.find((each) => each.class === found?.class);
         if (entry) line.append(swatch(entry.colour));
-        line.append(entry ? entry.label : vacancy(found, `class ${found?.class}`));
+        line.append(entry ? entry.label : `${layer.label} = ${vacancy(found, String(found?.class))}`);
       } else {
         const value = found?.values?.[this.valueLayers.indexOf(layer)];
         const unit = layer.unit ? ` ${layer.unit}` : "";
