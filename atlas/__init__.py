@@ -10,6 +10,7 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    from atlas.attractors.basin_dataset import basins as basins
     from atlas.config.load import load as load
     from atlas.config.load import parse_config as parse_config
     from atlas.config.load import plate_from_parts
@@ -25,6 +26,7 @@ if TYPE_CHECKING:
     from atlas.output.printing import draw_plate as draw_plate
     from atlas.output.tileset import rebuild_site as rebuild_site
     from atlas.planes.plane_dataset import parameter_plane as parameter_plane
+    from atlas.planes.spectrum import lyapunov_spectrum as lyapunov_spectrum
     from atlas.points.binning import bin_points as bin_points
     from atlas.points.plates import draw_points as draw_points
     from atlas.points.tile_sets import tile_points as tile_points
@@ -38,6 +40,7 @@ if TYPE_CHECKING:
 _HOMES = {
     "Axis": ("tiles.window", "Axis"),
     "View": ("tiles.window", "View"),
+    "basins": ("atlas.attractors.basin_dataset", "basins"),
     "bin_points": ("atlas.points.binning", "bin_points"),
     "draw_axes": ("atlas.figure.axes_image", "draw_axes"),
     "draw_plate": ("atlas.output.printing", "draw_plate"),
@@ -45,6 +48,7 @@ _HOMES = {
     "family": ("atlas.families.catalogue", "family"),
     "family_names": ("atlas.families.catalogue", "NAMES"),
     "load": ("atlas.config.load", "load"),
+    "lyapunov_spectrum": ("atlas.planes.spectrum", "lyapunov_spectrum"),
     "needs": ("atlas.output.batch", "needs"),
     "orbit_counts": ("atlas.orbits.counts", "orbit_counts"),
     "parameter_plane": ("atlas.planes.plane_dataset", "parameter_plane"),

@@ -17,75 +17,68 @@ import pytest
 ROOT = Path(__file__).parents[1]
 
 TABLE = """
- 0  tiles tiles.page tiles.page_files tiles.errors tiles.tasks tiles.colour_tables
- 1  tiles.number tiles.grid tiles.strip tiles.palette tiles.tally tiles.key tiles.png tiles.store
- 1  tiles.site_folder
- 2  tiles.window tiles.pyramid tiles.curve tiles.classes tiles.side_car
- 3  tiles.codec tiles.shading tiles.stages tiles.values tiles.mixing tiles.plane
- 4  tiles.column tiles.index tiles.meta tiles.value_codec
- 5  tiles.unfinished tiles.plane_index tiles.plane_meta
+ 0  tiles tiles.colour_tables tiles.errors tiles.key tiles.page tiles.page_files tiles.png
+ 0  tiles.site_folder tiles.strip tiles.tally tiles.tasks
+ 1  tiles.curve tiles.grid tiles.number tiles.palette tiles.store
+ 2  tiles.classes tiles.codec tiles.mixing tiles.pyramid tiles.side_car tiles.stages tiles.values
+ 2  tiles.window
+ 3  tiles.column tiles.plane tiles.shading tiles.value_codec
+ 4  tiles.index tiles.meta
+ 5  tiles.plane_index tiles.plane_meta tiles.unfinished
  6  tiles.build tiles.plane_build tiles.plane_site
  7  tiles.site
 
-10  atlas.errors atlas.arithmetic atlas.config atlas.families atlas.figure atlas.formula atlas.orbits
-10  atlas.output atlas.planes atlas.planes.fates atlas.planes.plane_kernels atlas.points atlas.reading
-10  atlas.orbits.lane_kernels atlas.orbits.orbit_kernels
-10  atlas.config.draws
-12  atlas.orbits.block atlas.output.remarks
-11  atlas.arithmetic.functions atlas.orbits.schedule atlas.figure.lettering atlas.output.reporter
-11  atlas.output.whole_file
-12  atlas.formula.tree atlas.reading.place atlas.figure.tick_labels atlas.output.folders atlas.output.ledger
-13  atlas.formula.algebra atlas.formula.grammar atlas.formula.formula_text atlas.formula.evaluation
-13  atlas.formula.symbolic
-13  atlas.arithmetic.float64 atlas.reading.kinds atlas.reading.yaml_text atlas.reading.sheet
-13  atlas.figure.ticks atlas.figure.axes_image atlas.output.certificate_reader atlas.points.tables
-14  atlas.formula.differentiation atlas.orbits.volumes atlas.reading.section atlas.figure.boxes
-14  atlas.points.files atlas.points.cells
-15  atlas.formula.expression atlas.reading.view_kinds atlas.figure.pieces atlas.figure.vector_files
-15  atlas.points.opening atlas.reading.orbit_kinds
-16  atlas.families.kinds atlas.families.records atlas.families.patterns atlas.families.wrapping
-16  atlas.families.rows_one_variable atlas.families.rows_several_variables
-16  atlas.reading.sheet_kinds atlas.figure.painting
-16  atlas.points.intervals atlas.reading.start_kinds
-17  atlas.families.keys atlas.families.map_family atlas.families.checks
-17  atlas.config.settings atlas.figure.raster_files atlas.figure.typeset
-18  atlas.families.reader atlas.config.keys
-19  atlas.families.catalogue atlas.config.jobs atlas.config.view_rules atlas.config.view_kind
-19  atlas.config.names
-20  atlas.config.schema
-20  atlas.orbits.step atlas.config.digests atlas.config.assembly atlas.figure.panels
-21  atlas.points.jobs
-21  atlas.orbits.kernel_source atlas.orbits.setting atlas.config.load atlas.output.certificate
-21  atlas.figure.margins
-21  atlas.figure.insets
-22  atlas.orbits.orbit atlas.planes.plane_source atlas.planes.pixels atlas.config.remake
-22  atlas.figure.layout atlas.figure.legends
-23  atlas.planes.turns
-24  atlas.planes.finder
-25  atlas.planes.layers
-24  atlas.output.colouring
-26  atlas.planes.survey atlas.planes.searching atlas.output.panel atlas.output.panels
-27  atlas.planes.plane_dataset atlas.output.panels.histogram atlas.output.panels.plane
-23  atlas.orbits.sampling atlas.orbits.histogram atlas.plan atlas.figure.drawing
-23  atlas.orbits.portrait
-24  atlas.orbits.follow atlas.orbits.portrait_counts atlas.points.counting atlas.figure.plate
-25  atlas.orbits.counting
-26  atlas.orbits.counts
-27  atlas.orbits.portrait_dataset
-28  atlas.output.printing atlas.output.tiled
-25  atlas.points.record atlas.points.spool
-29  atlas.output.plane_tiles atlas.output.tileset atlas.points.binning atlas.points.plates
-30  atlas.output.tile_makers
-31  atlas.output.forecast
-32  atlas.output.batch atlas.points.tile_sets
+10  atlas.arithmetic atlas.arithmetic.functions atlas.attractors atlas.config atlas.config.draws
+10  atlas.errors atlas.families atlas.families.rows_one_variable atlas.families.rows_several_variables
+10  atlas.figure atlas.figure.lettering atlas.formula atlas.orbits atlas.orbits.lane_kernels
+10  atlas.orbits.orbit_kernels atlas.output atlas.output.panels atlas.output.remarks
+10  atlas.output.reporter atlas.output.whole_file atlas.planes atlas.planes.fates
+10  atlas.planes.plane_kernels atlas.points atlas.reading atlas.reading.sheet
+11  atlas.figure.axes_image atlas.figure.tick_labels atlas.formula.tree atlas.orbits.block
+11  atlas.orbits.schedule atlas.output.certificate_reader atlas.output.folders atlas.output.ledger
+11  atlas.reading.place
+12  atlas.arithmetic.float64 atlas.figure.ticks atlas.formula.algebra atlas.formula.evaluation
+12  atlas.formula.formula_text atlas.formula.grammar atlas.formula.symbolic atlas.points.tables
+12  atlas.reading.kinds atlas.reading.yaml_text
+13  atlas.figure.boxes atlas.formula.differentiation atlas.orbits.volumes atlas.points.cells
+13  atlas.points.files atlas.reading.section
+14  atlas.figure.pieces atlas.figure.vector_files atlas.formula.expression atlas.planes.pixels
+14  atlas.points.opening atlas.reading.orbit_kinds atlas.reading.view_kinds
+15  atlas.attractors.ends atlas.families.kinds atlas.families.patterns atlas.families.records
+15  atlas.families.wrapping atlas.figure.painting atlas.output.colouring atlas.planes.turns
+15  atlas.points.intervals atlas.reading.sheet_kinds atlas.reading.start_kinds
+16  atlas.config.settings atlas.families.checks atlas.families.keys atlas.families.map_family
+16  atlas.figure.raster_files atlas.figure.typeset atlas.output.inking atlas.planes.layers
+17  atlas.config.keys atlas.families.reader
+18  atlas.config.jobs atlas.config.names atlas.config.view_kind atlas.config.view_rules
+18  atlas.families.catalogue atlas.orbits.step
+19  atlas.config.assembly atlas.config.digests atlas.config.schema atlas.figure.panels
+19  atlas.orbits.kernel_source atlas.orbits.setting atlas.output.certificate atlas.output.panel
+20  atlas.attractors.kernels atlas.config.load atlas.figure.insets atlas.figure.margins
+20  atlas.orbits.orbit atlas.output.tiled atlas.planes.plane_source atlas.points.jobs
+21  atlas.config.remake atlas.figure.layout atlas.figure.legends atlas.orbits.histogram
+21  atlas.orbits.portrait atlas.orbits.sampling atlas.plan atlas.planes.exponents atlas.planes.finder
+22  atlas.attractors.per_pixel atlas.attractors.registry atlas.figure.drawing atlas.orbits.follow
+22  atlas.orbits.portrait_counts atlas.planes.searching atlas.planes.spectrum atlas.points.counting
+23  atlas.attractors.by_start atlas.figure.plate atlas.orbits.counting atlas.planes.survey
+23  atlas.points.record atlas.points.spool
+24  atlas.attractors.basins atlas.attractors.split_counts atlas.orbits.counts
+24  atlas.output.panels.histogram atlas.output.panels.plane atlas.planes.plane_dataset
+25  atlas.attractors.basin_dataset atlas.orbits.portrait_dataset atlas.output.panels.basin
+25  atlas.output.panels.follow atlas.points.binning
+26  atlas.output.panels.portrait
+27  atlas.output.printing
+28  atlas.output.plane_tiles atlas.output.tileset atlas.points.plates
+29  atlas.output.tile_makers
+30  atlas.output.forecast
+31  atlas.output.batch atlas.points.tile_sets
 
-40  atlas.cli.options atlas.cli.progress atlas.cli.sentences atlas.cli.tables atlas.cli.family_text
-40  atlas.cli.requests atlas.cli.point_requests
-41  atlas.cli.colour_options
-42  atlas.cli.bin atlas.cli.check atlas.cli.draw atlas.cli.families atlas.cli.render atlas.cli.schema
-42  atlas.cli.show atlas.cli.site
-43  atlas.cli
-44  atlas
+50  atlas.cli.family_text atlas.cli.options atlas.cli.point_requests atlas.cli.progress
+50  atlas.cli.requests atlas.cli.sentences atlas.cli.tables
+51  atlas.cli atlas.cli.check atlas.cli.colour_options atlas.cli.families atlas.cli.render
+51  atlas.cli.schema atlas.cli.show
+52  atlas.cli.bin atlas.cli.draw atlas.cli.site
+53  atlas
 """
 LAYERS = {module: int(row.split()[0]) for row in TABLE.split("\n") if row for module in row.split()[1:]}
 
@@ -102,7 +95,12 @@ HOMES = {
     "pyarrow": ("atlas.points",),
     "rich": ("atlas.cli",),
     "sympy": ("atlas.formula.symbolic",),
-    "xarray": ("atlas.orbits.counts", "atlas.orbits.portrait_dataset", "atlas.planes.plane_dataset"),
+    "xarray": (
+        "atlas.orbits.counts",
+        "atlas.orbits.portrait_dataset",
+        "atlas.planes.plane_dataset",
+        "atlas.planes.spectrum",
+    ),
     "yaml": ("atlas.reading.yaml_text",),
 }
 NEEDED_LATE = ("dask", "datashader", "matplotlib", "numba", "numpy", "pandas", "sympy", "xarray")

@@ -36,18 +36,21 @@ def with_patterns(family: Family, given: Mapping[str, Setting], place: Place) ->
     return changed
 
 
-def checked_set(family: Family, given: Mapping[str, Setting], view: View, place: Place) -> dict[str, Exact]:
+def checked_set(
+    family: Family, given: Mapping[str, Setting], view: View | None, place: Place
+) -> dict[str, Exact]:
     """Return the values given to parameters, sorted by name.
 
     Raises
     ------
     ConfigRefused
-        For a name that is no parameter of the family and for one that runs along an axis.
+        For a name that is no parameter of the family and for one that runs along an axis of the view, if
+        there is one.
     """
     letters = {pattern.name: pattern.entries for pattern in family.patterns}
     numbers = {name: value for name, value in given.items() if isinstance(value, Exact)}
     for name in numbers:
-        if name in (view.across.name, view.up.name):
+        if view is not None and name in (view.across.name, view.up.name):
             raise place.at(name).refusal(f"{shown(name)} already runs along an axis; remove it here")
         if name in letters:
             now = ", ".join(map(str, letters[name]))
