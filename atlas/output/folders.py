@@ -8,6 +8,7 @@ from pathlib import Path
 
 from atlas.errors import ConfigRefused, shown
 from tiles.page_files import page_files
+from tiles.plane_site import SIDE_CARS
 
 LONGEST_PATH = 4096
 _META, _META_START = "meta.js", b"window.ATLAS_META"
@@ -73,7 +74,7 @@ def _foreign(site: Path) -> str | None:
     """
     entries, page = sorted(path.name for path in site.iterdir()), page_files()
     for name in entries:
-        if name not in {*page, _META, _PICTURES}:
+        if name not in {*page, _META, _PICTURES, SIDE_CARS}:
             return name
     if _META in entries:
         with (site / _META).open("rb") as file:

@@ -13,7 +13,7 @@ from atlas.orbits.histogram import block_width
 from atlas.output.panels.histogram import counting_seconds
 from atlas.output.panels.plane import finding_seconds
 from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE, plane_finder
-from atlas.output.printing import maker_of, sheet_of
+from atlas.output.printing import MAKERS, sheet_of
 from atlas.output.tile_makers import tile_set_maker
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
 from atlas.plan import BASE_MEMORY, DEFAULT_MEMORY, Need
@@ -51,7 +51,7 @@ def room_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         return _room_of_tile_set(record, workers, budget)
     sheet = sheet_of(record)
-    samples = sum(maker_of(view.plate).room(view).samples for view in sheet.views)
+    samples = sum(MAKERS[view.plate.kind].room(view).samples for view in sheet.views)
     return Need(record.pixels, samples, 0.0, sheet.memory)
 
 
@@ -67,7 +67,7 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
             seconds = counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
         return replace(room, seconds=seconds / builders(record, workers, budget))
     width, height = record.pixels
-    seconds = sum(maker_of(view.plate).seconds(view) for view in sheet_of(record).views) / workers
+    seconds = sum(MAKERS[view.plate.kind].seconds(view) for view in sheet_of(record).views) / workers
     seconds += sum(SECONDS_PER_PIXEL[form] for form in record.formats) * width * height
     return replace(room, seconds=seconds)
 

@@ -34,7 +34,10 @@ BYTES_PER_PLANE_TILE = 24 << 20
 
 
 class PlaneSource:
-    """Finds the fates of the deepest tiles of a plane when the index asks for them."""
+    """Finds the fates of the deepest tiles of a plane when the index asks for them.
+
+    Values are rounded to 24 bits: exponents are not known better, and the index is half as large.
+    """
 
     def __init__(self, job: TileSet, finder: FateFinder, schedule: Schedule, reporter: Reporter) -> None:
         self.finder, self.schedule, self.reporter = finder, schedule, reporter
@@ -58,7 +61,7 @@ class PlaneSource:
             else:
                 classes[at] = classes_of(layers["fate"], layers["period"])
             for name, array in values.items():
-                array[at] = layers[name]
+                array[at] = layers[name].astype(np.float32)
             self.reporter.advance(width * TILE)
         return PlaneTile(classes, values)
 

@@ -8,7 +8,6 @@ from pathlib import Path
 from typing import Any
 
 from atlas.config.digests import normalised
-from atlas.config.draws import KINDS
 from atlas.config.jobs import Figure, Plate
 from atlas.config.keys import FORMATS
 from atlas.errors import PlanRefused
@@ -20,8 +19,11 @@ from atlas.orbits.schedule import Schedule, schedule
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_files, check_folder
 from atlas.output.panel import Maker, View, label_of
+from atlas.output.panels.basin import BasinMaker
+from atlas.output.panels.follow import FollowMaker
 from atlas.output.panels.histogram import HistogramMaker
 from atlas.output.panels.plane import PlaneMaker
+from atlas.output.panels.portrait import PortraitMaker
 from atlas.output.reporter import Reporter, Silence
 from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
@@ -31,7 +33,13 @@ BYTES_PER_COUNT, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, DRAWING_MEMORY = 4, 1, 5
 COLOURED_BYTES_PER_PIXEL = 4
 """Of a page whose rasters are colours, not palette indices: three and the encoder's."""
 
-MAKERS: dict[str, Maker] = {"histogram": HistogramMaker(), "plane": PlaneMaker()}
+MAKERS: dict[str, Maker] = {
+    "histogram": HistogramMaker(),
+    "follow": FollowMaker(),
+    "portrait": PortraitMaker(),
+    "plane": PlaneMaker(),
+    "basin": BasinMaker(),
+}
 
 
 @dataclass(frozen=True)
@@ -53,7 +61,7 @@ class Sheet:
     @property
     def memory(self) -> int:
         """Estimated peak memory of the process in bytes while it is made."""
-        rooms = [maker_of(view.plate).room(view) for view in self.views]
+        rooms = [MAKERS[view.plate.kind].room(view) for view in self.views]
         width, height = self.record.pixels
         coloured = any(room.raster > view.cells for room, view in zip(rooms, self.views, strict=True))
         page = _page_memory(width * height, self.record.formats, coloured)
@@ -71,13 +79,6 @@ class Made:
     samples: int
     record: dict[str, Any]
     remarks: tuple[str, ...] = ()
-
-
-def maker_of(plate: Plate) -> Maker:
-    """Return what makes the panel of a plate."""
-    if plate.kind not in MAKERS:
-        raise PlanRefused(f"{plate.name}: {KINDS[plate.kind]} is not drawn by this version")
-    return MAKERS[plate.kind]
 
 
 def sheet_of(record: Plate | Figure) -> Sheet:
@@ -164,7 +165,7 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
         When a file cannot be written.
     """
     panels = {
-        view.name: maker_of(view.plate).make(view, sheet.record.name, schedule, reporter)
+        view.name: MAKERS[view.plate.kind].make(view, sheet.record.name, schedule, reporter)
         for view in sheet.views
     }
     record = certificate(

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 NOT_DRAWN = {
     "below": "lie below the window",
@@ -73,3 +73,35 @@ def remarks_on_fates(name: str, shares: Mapping[str, float | int]) -> list[str]:
             "stay there; move the start to see the attractor"
         )
     return found
+
+
+def remarks_on_portrait(name: str, shares: Mapping[str, float | int]) -> list[str]:
+    """Return what must not go unsaid of a phase portrait, one sentence each."""
+    beside = float(shares.get("left", 0)) + float(shares.get("right", 0))
+    found = remarks_on(name, {**shares, "below": float(shares["below"]) + beside})
+    return [sentence.replace("their columns are marked at the frame, ", "") for sentence in found]
+
+
+def remarks_on_basins(name: str, shares: Mapping[str, float | int], told: Sequence[str]) -> list[str]:
+    """Return the shares of the basins and what must not go unsaid of the chart, one sentence each.
+
+    Parameters
+    ----------
+    name : str
+    shares : mapping of str to number
+        Of the starts that reach no attractor.
+    told : sequence of str
+        About each attractor.
+    """
+    found = [f"{name}: shares of the box: {', '.join(told)} (standard errors binomial)"] if told else []
+    if shares.get("further_attractors"):
+        found.append(
+            f"{name}: {shares['further_attractors']:.2%} of the starts reach attractors that are not told "
+            "apart; choose a smaller box"
+        )
+    if shares.get("volume_preserving_orbits"):
+        found.append(
+            f"{name}: {shares['volume_preserving_orbits']} orbits preserve volumes; what they visit is no "
+            "attractor, and a basin chart says little of such maps"
+        )
+    return found + remarks_on_fates(name, shares)

@@ -62,7 +62,10 @@ def make_site(
 
 
 def tile_columns(path: Path) -> int:
+    """Return how many tile columns of all level pairs hold something."""
     with Index.open(path) as index:
+        if index.header.get("kind") == "plane":
+            return sum(1 << across for across, _ in index.pairs)
         return sum(len(index.present(pair)) for pair in index.pairs)
 
 
@@ -71,7 +74,8 @@ def header_of(job: TileSet) -> dict[str, Any]:
     settings = {
         key: value
         for key, value in normalised(job)["settings"].items()
-        if key not in ("across", "up", "levels", "pairs", "title") and value not in (None, {}, [], False)
+        if key not in ("across", "up", "levels", "pairs", "title")
+        and (value not in (None, {}, [], False) or (key == "extinct" and job.family.extinct))
     }
     names = (job.across.name, job.up.name)
     return {

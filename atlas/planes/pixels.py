@@ -20,6 +20,8 @@ from atlas.planes.plane_kernels import AGAIN, DEAD, GONE, MET, NEAR, OPEN
 BATCHES = 16
 LOOKS = 4
 FIRST_STAGE = 64
+NEARER = 0.75
+"""To what part its distance must fall, while the steps are doubled, where an orbit approaches its limit."""
 SLICE = 1 << 12
 """Steps of a batch after which growth is added up, whatever orbits are measured together."""
 
@@ -94,6 +96,7 @@ class Pixels:
         self.exponents = np.full((states, number), np.nan)
         self.error = np.full(number, np.nan)
         self.escape = np.full(number, np.nan)
+        self.away = np.full(number, np.inf)
         self.collapsed = np.zeros(number, np.bool_)
         self.repelling = np.zeros(number, np.bool_)
 
@@ -153,10 +156,8 @@ class Pixels:
         seen = (np.zeros(number, np.int64), np.zeros(number, np.int64), np.zeros(number), np.zeros(number))
         self.kernels.returns(self.x, *self.map, order, 0, self.longest, self.longest, *seen)
         rules = (np.ones(len(self.x)), np.zeros(len(self.x), np.bool_))
-        self.kernels.judge(
-            self.x, *self.map, self.start, order, 0, seen, rules, self.outcome, self.period, self.turn,
-            self.exponents, self.repelling,
-        )  # fmt: skip
+        known = (self.outcome, self.period, self.turn, self.repelling, self.away)
+        self.kernels.judge(self.x, *self.map, self.start, order, 0, seen, rules, known, self.exponents)
         left: Order = order[(self.outcome[order] == OPEN) | (self.outcome[order] == NEAR)]
         return left
 
@@ -164,11 +165,11 @@ class Pixels:
         self.outcome[order] = OPEN
         return order
 
-    def _measured(self, order: Order, done: int) -> tuple[Order, int]:
-        """Measure exponents and decide by them; return the orbits that approach a cycle."""
+    def _measured(self, order: Order, done: int, *, anew: bool = False) -> tuple[Order, int]:
+        """Measure exponents and decide by them; return the orbits that approach a cycle, unless anew."""
         growth, steps, left = self._growth(order, done, self.kernels.measure, looks=True)
-        near = left[self.outcome[left] == NEAR]
-        self._decide(left[self.outcome[left] == OPEN], growth, steps)
+        near = left[(self.outcome[left] == NEAR) & (not anew)]
+        self._decide(left[(self.outcome[left] == OPEN) | anew], growth, steps)
         return near, done + steps * BATCHES
 
     def _growth(
@@ -214,14 +215,16 @@ class Pixels:
         self.error[order] = error
 
     def _extended(self, order: Order, done: int) -> None:
-        """Run on the orbits that approach a cycle, also those that do once they were measured anew."""
+        """Run on the orbits that approach a cycle, as long as they come nearer."""
         limit = self.rules.transient_limit
         while order.size and done < limit and not self.stop[0]:
             steps = self._whole(min(max(done, FIRST_STAGE), limit - done))
+            before = self.away.copy()
             order = self._looked(self._fled(self._open(order), done, steps))
             done += steps
-            fresh, order = order[self.outcome[order] == OPEN], order[self.outcome[order] == NEAR]
-            self._extended(*self._measured(fresh, done))
+            nearer = (self.outcome[order] == NEAR) & (self.away[order] < NEARER * before[order])
+            self._measured(self._open(order[~nearer]), done, anew=True)
+            order = order[nearer]
 
     def _again(self) -> None:
         """Run the collapsed orbits once more from their starts, disturbed."""

@@ -189,12 +189,13 @@ def measure(x, v, c, word, key, order, before, steps, bound, low, outcome, since
 
 JUDGE = '''
 @compiled
-def judge(x, c, word, start, order, before, seen, rules, outcome, period, turn, exponents, repelling):
+def judge(x, c, word, start, order, before, seen, rules, known, exponents):
     """Decide whether the orbits of order have met a cycle; seen is what returns() wrote.
 
     outcome[m] becomes MET (then period[m] is the least period, turn[m] the one that was confirmed, and
-    exponents[:, m] are known), NEAR (approaching), AGAIN (collapsed) or stays OPEN.
+    exponents[:, m] are known), NEAR (approaching, away[m] from it), AGAIN (collapsed) or stays OPEN.
     """
+    outcome, period, turn, repelling, away = known
     repeat, nearest, gap, size = seen
     half, relative = rules
     logs = np.empty(NX)
@@ -218,6 +219,7 @@ def judge(x, c, word, start, order, before, seen, rules, outcome, period, turn, 
                 continue
             if left > reach * 2.0 ** -20:
                 outcome[m] = NEAR
+                away[m] = left
                 continue
         multipliers(x, c, word, m, before, p, logs)
         if logs[0] * p > 1e-6:

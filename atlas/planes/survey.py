@@ -10,6 +10,7 @@ from typing import Any, TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
+from atlas.attractors.per_pixel import attractor_counts
 from atlas.orbits.schedule import Schedule
 from atlas.planes.fates import CLASS_ESCAPES, CLASS_EXTINCT, CLASS_UNSETTLED
 from atlas.planes.finder import FateFinder, Region
@@ -88,10 +89,7 @@ def layers_of(finder: FateFinder, region: Region, names: tuple[str, ...], stop: 
     taken: Layers = {}
     for name in names:
         take = LAYERS[name].take
-        if take is None:
-            raise NotImplementedError(name)
-        else:
-            values = take(found, finder.winding)
+        values = take(found, finder.winding) if take else attractor_counts(finder, region, stop)
         taken[name] = values.reshape(region.shape)
     return taken, tally_of(found)
 

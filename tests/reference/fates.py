@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
+from itertools import pairwise
 from math import atan2, exp, frexp, inf, isfinite, log, nan, pi, sqrt
 
 import mpmath
@@ -37,7 +38,7 @@ class Escaped(Exception):
 
 
 class Extinct(Exception):
-    """A test found that a state variable had been below its threshold; carries the state of the test before."""
+    """A test found a state variable that had been below its threshold; carries the state at the test before."""
 
 
 class Collapsed(Exception):
@@ -73,7 +74,11 @@ class Cycle:
     repelling: bool
 
 
-APPROACHING = "approaching"
+@dataclass(frozen=True)
+class Approaching:
+    """What a look finds of an orbit that nears a cycle."""
+
+    away: float
 
 
 @dataclass
@@ -150,7 +155,7 @@ class FateTwin:
                 since, kept = before + n, x
         return x
 
-    def _look(self, x: State) -> Cycle | str | None:
+    def _look(self, x: State) -> Cycle | Approaching | None:
         unit = len(self.map.word)
         longest = max(self.rules.longest_period, unit)
         ahead = [x]
@@ -172,7 +177,7 @@ class FateTwin:
                 return None
             if left > size * 2.0**-20:
                 self._ways.add("approaching")
-                return APPROACHING
+                return Approaching(left)
         exponents = self._multipliers(x, p)
         repelling = exponents[0] * p > 1e-6
         if repelling:
@@ -230,13 +235,11 @@ class FateTwin:
 
     def _met(self, x: State, cycle: Cycle) -> Found:
         fate = FIXED_POINT if cycle.period == 1 else PERIODIC
-        return Found(
-            fate, x, cycle.exponents, 0.0, cycle.period, cycle.turn, repelling=cycle.repelling
-        )
+        return Found(fate, x, cycle.exponents, 0.0, cycle.period, cycle.turn, repelling=cycle.repelling)
 
-    def _measured(self, x: State, done: int) -> Found:
+    def _measured(self, x: State, done: int, *, anew: bool = False) -> Found:
         growth = Growth(self.map, self._whole(max(1, self.rules.steps // BATCHES)))
-        seen: Cycle | str | None = None
+        seen: Cycle | Approaching | None = None
         for batch in range(1, BATCHES + 1):
             x = self._stage(x, done, growth.steps, self.map.step, growth.carry)
             growth.note()
@@ -245,9 +248,11 @@ class FateTwin:
                 seen = self._look(x)
                 if isinstance(seen, Cycle):
                     return self._met(x, seen)
-        return self._extended(x, done) if seen == APPROACHING else self._decided(x, growth)
+        if isinstance(seen, Approaching) and not anew:
+            return self._extended(x, done, seen.away)
+        return self._decided(x, growth)
 
-    def _extended(self, x: State, done: int) -> Found:
+    def _extended(self, x: State, done: int, away: float) -> Found:
         limit = self.rules.transient_limit
         while done < limit:
             steps = self._whole(min(max(done, FIRST_STAGE), limit - done))
@@ -257,9 +262,10 @@ class FateTwin:
             if isinstance(seen, Cycle):
                 self._ways.add("approached, then met")
                 return self._met(x, seen)
-            if seen is None:
+            if seen is None or not seen.away < 0.75 * away:
                 self._ways.add("measured anew")
-                return self._measured(x, done)
+                return self._measured(x, done, anew=True)
+            away = seen.away
         self._ways.add("approached, then unsettled")
         return self._nothing(UNSETTLED, x)
 
@@ -334,7 +340,7 @@ class FateTwin:
         middle = [sum(x[k] for x in states[1:]) / steps for k in range(2)]
         angles = [atan2(x[1] - middle[1], x[0] - middle[0]) / (2.0 * pi) for x in states]
         low = -0.5 - BACKWARD
-        return [(new - old - low) % 1.0 + low for old, new in zip(angles, angles[1:], strict=False)]
+        return [(new - old - low) % 1.0 + low for old, new in pairwise(angles)]
 
 
 class Growth:

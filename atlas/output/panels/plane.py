@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from hashlib import blake2b
 from typing import Any
 
@@ -11,7 +10,8 @@ from numpy.typing import NDArray
 
 from atlas.config.draws import DRAWS
 from atlas.config.jobs import Plate
-from atlas.figure.pieces import LegendEntry, PanelText, Raster
+from atlas.figure.legends import class_legend
+from atlas.figure.pieces import PanelText, Raster
 from atlas.orbits.schedule import Schedule
 from atlas.orbits.step import step_source
 from atlas.output.panel import Panel, Room, View, label_of
@@ -22,7 +22,7 @@ from atlas.planes.finder import FateFinder, Region
 from atlas.planes.layers import Values, classes_of
 from atlas.planes.searching import finder_of
 from atlas.planes.survey import Tally, layers_of, survey
-from tiles.classes import class_colours, class_shades, class_table
+from tiles.classes import class_shades, class_table
 from tiles.mixing import mixed
 from tiles.shading import colour_table
 from tiles.values import fit_values, shade_values, value_key_labels
@@ -34,7 +34,8 @@ CAPTIONS = {
     "rotation": "rotation number (turns per step)",
     "escape": "steps to escape",
 }
-MOST_PERIODS, LEAST_SHARE = 12, 5e-4
+FAR_BELOW = -1e30
+"""Stands for the exponent of a superstable cycle, minus infinity, in pictures."""
 
 
 class PlaneMaker:
@@ -101,31 +102,6 @@ def record_of(finder: FateFinder, supersampling: int = 1) -> dict[str, Any]:
     return found | ({"supersampling": supersampling} if supersampling > 1 else {})
 
 
-def legend_of(classes: Mapping[int, int], names: Mapping[int, str] | None = None) -> list[LegendEntry]:
-    """Return the legend of the classes present: numbers in ascending order, then the others.
-
-    Parameters
-    ----------
-    classes : mapping of int to int
-        Pixels of each class.
-    names : mapping of int to str, optional
-        Names of classes that are not called as in a plane of fates.
-    """
-    total = sum(classes.values())
-    numbered = sorted(number for number in classes if number < CLASS_NONE - 100)
-    shown = [number for number in numbered if classes[number] >= LEAST_SHARE * total][:MOST_PERIODS]
-    others = sorted(number for number in classes if number not in numbered and number != CLASS_NONE)
-    listed = [*shown, *others]
-    entries = [
-        LegendEntry((names or {}).get(number) or class_name(number), colour)
-        for number, colour in zip(listed, class_colours(listed), strict=True)
-    ]
-    if len(numbered) > len(shown):
-        more = len(numbered) - len(shown)
-        entries.insert(len(shown), LegendEntry(f"{more} other periods", (255, 255, 255)))
-    return entries
-
-
 class _Classes:
     """A picture of classes, kept as palette indices of the small pixels."""
 
@@ -159,10 +135,8 @@ class _Classes:
     def finished(self) -> tuple[Raster, PanelText]:
         """Return the raster and its lettering."""
         plate, table = self.view.plate, class_table()
-        names = None
-        if self.draw == "attractors":
-            names = {number: f"{number} attractor{'s' * (number > 1)}" for number in self.classes}
-        legend = tuple(legend_of(self.classes, names))
+        listed = sorted(number for number in self.classes if number != CLASS_NONE)
+        legend = tuple(class_legend(listed, _count_name if self.draw == "attractors" else class_name))
         text = PanelText(label_of(plate, plate.across), label_of(plate, plate.up), legend=legend)
         if self.factor == 1:
             return Raster(self.lines, table, plate.view), text
@@ -183,7 +157,8 @@ class _Values:
 
     def kept(self, layers: dict[str, Values]) -> Values:
         """Return the values of a region."""
-        return layers[self.layers[0]]
+        values = layers[self.layers[0]]
+        return np.where(values == -np.inf, FAR_BELOW, values)
 
     def put(self, region: Region, values: Values) -> None:
         """Keep a region; regions come in order."""
@@ -211,6 +186,10 @@ class _Values:
     def digest(self) -> str:
         """Return the digest of all values."""
         return self.hash.hexdigest()
+
+
+def _count_name(number: int) -> str:
+    return f"{number} attractor{'s' * (number > 1)}"
 
 
 def _kind(plate: Plate) -> str:
