@@ -69,9 +69,10 @@ TABLE = """
 26  atlas.output.panels.portrait
 27  atlas.output.printing
 28  atlas.output.plane_tiles atlas.output.tileset atlas.points.plates
-29  atlas.output.tile_makers
-30  atlas.output.forecast
-31  atlas.output.batch atlas.points.tile_sets
+29  atlas.output.whole_tiles
+30  atlas.output.tile_makers
+31  atlas.output.forecast
+32  atlas.output.batch atlas.points.tile_sets
 
 50  atlas.cli.family_text atlas.cli.options atlas.cli.point_requests atlas.cli.progress
 50  atlas.cli.requests atlas.cli.sentences atlas.cli.tables

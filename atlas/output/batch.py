@@ -21,7 +21,7 @@ from atlas.output.forecast import builders, need_of, room_of
 from atlas.output.ledger import Ledger
 from atlas.output.printing import Made, check_lettering, make_sheet, sheet_of
 from atlas.output.reporter import Reporter, Silence
-from atlas.output.tile_makers import tile_set_maker
+from atlas.output.tile_makers import TILE_SET_MAKERS
 from atlas.output.tiled import Places
 from atlas.plan import Need, check_fits, parse_memory
 from atlas.reading.place import REQUEST, path_of
@@ -212,7 +212,7 @@ def _checked(need: Need, record: Record, budget: int) -> Need:
 def _planned(record: Record, out: Path, workers: int, budget: int) -> _Planned:
     request = digest(record)
     if isinstance(record, TileSet):
-        places, tile_set = Places.of(out, record.name), record
+        places, tile_set, make = Places.of(out, record.name), record, TILE_SET_MAKERS[record.kind]
         at_once = builders(record, workers, budget)
         check_site(places.site)
         check_files([places.index])
@@ -221,7 +221,9 @@ def _planned(record: Record, out: Path, workers: int, budget: int) -> _Planned:
             "tile set",
             request,
             (places.index, places.site),
-            lambda opened, reporter: tile_set_maker(tile_set)(tile_set, places, opened, reporter, at_once),
+            lambda opened, reporter: TILE_SET_MAKERS[tile_set.kind](
+                tile_set, places, opened, reporter, at_once
+            ),
         )
     sheet = sheet_of(record)
     files = sheet.files(out)

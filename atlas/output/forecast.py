@@ -8,14 +8,14 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from atlas.config.draws import PLANES
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
-from atlas.output.panels.histogram import counting_seconds
-from atlas.output.panels.plane import finding_seconds
-from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE, plane_finder
+from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE
 from atlas.output.printing import MAKERS, sheet_of
-from atlas.output.tile_makers import tile_set_maker
+from atlas.output.tile_makers import samples_of, seconds_of
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
+from atlas.output.whole_tiles import BYTES_PER_CELL
 from atlas.plan import BASE_MEMORY, DEFAULT_MEMORY, Need
 from tiles.column import strip_width
 from tiles.grid import TILE, level_pairs
@@ -61,10 +61,8 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         pairs = level_pairs(record.levels.across, record.levels.up, record.pairs)
         tiles = sum(2 ** (across + up) for across, up in pairs)
-        if record.kind == "plane":
-            seconds = finding_seconds(plane_finder(record)) + tiles * SECONDS_PER_PLANE_TILE
-        else:
-            seconds = counting_seconds(tile_counter(record)) + OCCUPIED_TILES * tiles * SECONDS_PER_TILE
+        each = SECONDS_PER_PLANE_TILE if record.kind in PLANES else OCCUPIED_TILES * SECONDS_PER_TILE
+        seconds = seconds_of(record) + tiles * each
         return replace(room, seconds=seconds / builders(record, workers, budget))
     width, height = record.pixels
     seconds = sum(MAKERS[view.plate.kind].seconds(view) for view in sheet_of(record).views) / workers
@@ -73,29 +71,26 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
 
 
 def _room_of_tile_set(record: TileSet, workers: int, budget: int) -> Need:
-    tile_set_maker(record)
+    samples = samples_of(record)
     memory = _fixed_memory(record) + builders(record, workers, budget) * _task_memory(record)
-    if record.kind == "plane":
-        finder = plane_finder(record)
-        return Need(record.cells, finder.columns * finder.rows, 0.0, memory)
-    counter = tile_counter(record)
-    return Need(record.cells, counter.columns * counter.exposure, 0.0, memory)
+    return Need(record.cells, samples, 0.0, memory)
 
 
 def builders(record: TileSet, workers: int, budget: int) -> int:
     """Return how many tasks of a tile set are under way side by side within a memory budget, 1 at least."""
     room = (budget - _fixed_memory(record)) // _task_memory(record)
-    tasks = record.levels.across + (record.levels.up if record.kind == "plane" else 0)
+    tasks = record.levels.across + (record.levels.up if record.kind in PLANES else 0)
     return max(1, min(workers, room, 1 << tasks))
 
 
 def _fixed_memory(record: TileSet) -> int:
-    edges = sum(record.cells) if record.kind == "plane" else record.cells[1]
-    return BASE_MEMORY + BYTES_PER_EDGE * edges
+    columns, rows = record.cells
+    edges = columns + rows if record.kind in PLANES else rows
+    return BASE_MEMORY + BYTES_PER_EDGE * edges + BYTES_PER_CELL.get(record.kind, 0) * columns * rows
 
 
 def _task_memory(record: TileSet) -> int:
-    return BYTES_PER_PLANE_TILE if record.kind == "plane" else _column_memory_of(record)
+    return BYTES_PER_PLANE_TILE if record.kind in PLANES else _column_memory_of(record)
 
 
 def building_memory(rows: int, workers: int) -> int:
@@ -113,8 +108,9 @@ def building_memory(rows: int, workers: int) -> int:
 
 def _column_memory_of(record: TileSet) -> int:
     waiting = BYTES_PER_CELL_OF_DIAGONAL if record.pairs == "diagonal" else BYTES_PER_CELL_OF_ALL_PAIRS
-    counter = tile_counter(record)
-    return _column_memory(counter.rows, block_width(counter), waiting)
+    rows = record.cells[1]
+    block = block_width(tile_counter(record)) if record.kind == "histogram" else 0
+    return _column_memory(rows, block, waiting)
 
 
 def _column_memory(rows: int, block: int, waiting: float) -> int:

@@ -17,6 +17,7 @@ from atlas.output.reporter import PREPARING, Reporter
 from tiles.shading import colour_table, fit_counts, key_labels, shade_counts
 
 SECONDS_PER_SAMPLE, SECONDS_PER_SLOW_CALL = 4e-9, 0.6e-9
+KEY_CAPTION = "density (share of samples per unit of area)"
 
 
 class PortraitMaker:
@@ -30,8 +31,7 @@ class PortraitMaker:
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
-        slow = SECONDS_PER_SLOW_CALL * step_source(view.plate.family).slow_calls
-        return _counter(view).exposure * (SECONDS_PER_SAMPLE + slow)
+        return portrait_seconds(_counter(view))
 
     def make(self, view: View, name: str, schedule: Schedule, reporter: Reporter) -> Panel:
         """Count and shade a view."""
@@ -54,6 +54,12 @@ class PortraitMaker:
         )
 
 
+def portrait_seconds(counter: PortraitCounter) -> float:
+    """Return the estimated time of one core for the orbits of a portrait."""
+    slow = SECONDS_PER_SLOW_CALL * step_source(counter.family).slow_calls
+    return counter.exposure * (SECONDS_PER_SAMPLE + slow)
+
+
 def _shaded(view: View, portrait: Portrait) -> tuple[Raster, PanelText]:
     """Shade the counts by one fit; every column had the same exposure, that of the whole portrait."""
     plate = view.plate
@@ -69,7 +75,7 @@ def _shaded(view: View, portrait: Portrait) -> tuple[Raster, PanelText]:
         label_of(plate, plate.across),
         label_of(plate, plate.up),
         key_labels(fit) if plate.key else (),
-        "density (share of samples per unit of area)" if plate.key else "",
+        KEY_CAPTION if plate.key else "",
     )
     return Raster(lines, table, plate.view), text
 
