@@ -93,7 +93,7 @@ class Spectra(Pixels):
 
     def _clear(self, orbit: int) -> Floats:
         """Return the exponents of an orbit, those that cannot be told from 0 as 0."""
-        exponents = np.nan_to_num(self.exponents[:, orbit], nan=-np.inf)
+        exponents: Floats = np.nan_to_num(self.exponents[:, orbit], nan=-np.inf, neginf=-np.inf)
         if self.period[orbit]:
             return exponents
         tolerance = 3.0 * self.errors[:, orbit] + np.log(self.measured) / self.measured
