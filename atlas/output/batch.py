@@ -221,9 +221,7 @@ def _planned(record: Record, out: Path, workers: int, budget: int) -> _Planned:
             "tile set",
             request,
             (places.index, places.site),
-            lambda opened, reporter: TILE_SET_MAKERS[tile_set.kind](
-                tile_set, places, opened, reporter, at_once
-            ),
+            lambda opened, reporter: make(tile_set, places, opened, reporter, at_once),
         )
     sheet = sheet_of(record)
     files = sheet.files(out)
