@@ -73,9 +73,15 @@ def _rebuilt(folder: Path) -> bytes:
     return (folder / "again/index.html").read_bytes()
 
 
+STATES = atlas.View(across=("x", "-1.5", "1.5"), up=("y", "-0.5", "0.5"))
+FORCED = atlas.View(across=("a", 3, 4), up=("b", 3, 4))
+
 CALLS: dict[str, Callable[[Path], Any]] = {
     "Axis": lambda folder: atlas.Axis.make(("r", 0, "1/3")),
     "View": lambda folder: atlas.View(across=("r", "2.8", "4"), up=("x", 0, 1)),
+    "basins": lambda folder: atlas.basins(
+        atlas.family("henon"), STATES, size=(6, 4), transient=100, steps=64
+    ),
     "bin_points": _points,
     "draw_axes": lambda folder: atlas.draw_axes(_axes(), logistic()).get_array().tolist(),
     "draw_plate": lambda folder: atlas.draw_plate(_plate(folder), [folder / "a.png"]),
@@ -83,9 +89,18 @@ CALLS: dict[str, Callable[[Path], Any]] = {
     "family": lambda folder: atlas.family("ricker"),
     "family_names": lambda folder: atlas.family_names,
     "load": lambda folder: atlas.load(SMALL),
+    "lyapunov_spectrum": lambda folder: atlas.lyapunov_spectrum(
+        atlas.family("henon"), {"a": "1.2"}, [{"x": 0, "y": 0}], 1000
+    ),
     "needs": lambda folder: [record.name for record, _ in atlas.needs(SMALL)],
     "orbit_counts": lambda folder: logistic(),
+    "parameter_plane": lambda folder: atlas.parameter_plane(
+        atlas.family("forced_logistic"), FORCED, size=(6, 4), transient=100, steps=64
+    ),
     "parse_config": lambda folder: atlas.parse_config(SMALL.read_bytes()),
+    "phase_portrait": lambda folder: atlas.phase_portrait(
+        atlas.family("henon"), STATES, size=(6, 4), samples=500
+    ),
     "plate": _plate,
     "read_certificate": _record,
     "rebuild_site": _rebuilt,
