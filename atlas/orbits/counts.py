@@ -124,7 +124,7 @@ def orbit_counts(
             "put a parameter across and a state variable or observable up"
         )
     columns, rows = cells_of(size, place.at("size"))
-    check_arrays((columns, rows if follow != "both" else 3 * rows), parse_memory(memory))
+    check_arrays((columns, rows if follow != "both" else 2 * rows), parse_memory(memory))
     job = plate_from_parts(
         family,
         view.across,
@@ -159,11 +159,14 @@ def _side_by_side(sweeps: Mapping[str, Any]) -> Any:
     first, *_ = sweeps.values()
     records = [json.loads(one.attrs[KEY]) for one in sweeps.values()]
     digest = blake2b("".join(one["counts_digest"] for one in records).encode(), digest_size=16).hexdigest()
-    shares = {name: one["shares"] for name, one in zip(sweeps, records, strict=True)}
+    told = {
+        key: {name: one[key] for name, one in zip(sweeps, records, strict=True)}
+        for key in ("shares", "samples")
+    }
     for name in ("samples_filled_by_repeats", "orbits_on_repelling_start"):
         both[name] = ("sweep", np.array([one.attrs[name] for one in sweeps.values()], np.uint64))
     kept = {name: first.attrs[name] for name in ("family", "formula", "samples", "cell_size")}
-    record = records[0] | {"counts_digest": digest, "shares": shares}
+    record = records[0] | told | {"counts_digest": digest}
     both.attrs = {**kept, "counts_digest": digest, KEY: as_text(record)}
     return both
 
