@@ -12,7 +12,7 @@ import pytest
 from atlas.families.catalogue import family
 from atlas.families.map_family import Family
 from atlas.families.reader import family_from_config
-from atlas.planes.fates import CHAOTIC, FATES, FIXED_POINT, PERIODIC, QUASI_PERIODIC, UNSETTLED
+from atlas.planes.fates import FATES, FIXED_POINT, PERIODIC
 from atlas.planes.finder import FateFinder, Region
 from atlas.planes.pixels import FateRules, Pixels
 from atlas.planes.turns import rotation
@@ -23,6 +23,7 @@ from tiles.number import exact
 from tiles.window import View
 
 COLUMNS, ROWS = 7, 5
+USUAL = FateRules(150, 96, 700, 16)
 WHOLE = Region(0, COLUMNS, 0, ROWS)
 
 
@@ -33,10 +34,15 @@ class Case:
     family: Family
     across: tuple[Any, ...]
     up: tuple[Any, ...]
-    rules: FateRules = FateRules(150, 96, 700, 16)
+    rules: FateRules = USUAL
     start: dict[str, str] = field(default_factory=dict)
     word: tuple[str, ...] = ()
     number: int = 0
+
+    @property
+    def turns(self) -> bool:
+        """Whether orbits have rotation numbers."""
+        return len(self.family.states) > 1 or any(state.wrap for state in self.family.states)
 
     def finder(self, lanes: int = 7) -> FateFinder:
         """Return what finds its fates."""
@@ -56,7 +62,7 @@ TENT = family_from_config(
     {
         "state": {"x": {"start": "0.3"}, "y": {"start": "0.3"}},
         "parameters": {"mu": {"default": "2"}, "b": {"default": "0.5"}},
-        "step": {"x": "mu * min(x, 1 - x)", "y": "b * y + x / 2"},
+        "step": {"x": "mu * min(x, 1 - x)", "y": "b * y"},
     },
 )
 HUNTED = family_from_config(
@@ -87,6 +93,9 @@ CASES = {
     "windows": Case(
         family("logistic"), ("r", "3.82", "3.86"), ("x", "0.1", "0.9"), FateRules(40, 64, 3000, 32)
     ),
+    "passing": Case(
+        family("logistic"), ("r", "3.82838", "3.82843"), ("x", "0.1", "0.9"), FateRules(80, 64, 3000, 6)
+    ),
     "dying out": Case(family("logistic"), ("r", "0.9", "1.1"), ("x", 0, 1)),
     "full height": Case(
         family("logistic"), ("r", "3.9999999", "4.0000001"), ("x", 0, 1), FateRules(60, 300, 500, 16)
@@ -99,19 +108,16 @@ CASES = {
     "quadratic": Case(family("quadratic"), ("c", "-2.1", "0.3"), ("x", "-2", "2")),
     "forced AB": Case(family("forced_logistic"), ("a", "2.8", "4"), ("b", "2.8", "4")),
     "forced AAB": Case(family("forced_logistic"), ("a", "2.8", "4"), ("b", "2.8", "4"), word=("a", "a", "b")),
-    "forced far": Case(
-        family("forced_logistic"), ("a", "2.8", "4.6"), ("b", "1", "4.6"), word=("a", "b", "b", "a", "b")
-    ),
-    "exponential": Case(family("ricker"), ("r", "1.5", "4"), ("x", "0.1", "3")),
     "henon": Case(family("henon"), ("a", "0.2", "1.5"), ("b", "0.1", "0.4")),
-    "henon long batches": Case(family("henon"), ("a", "0.9", "1.4"), ("b", "0.2", "0.3"), FateRules(64, 640, 900, 8)),
+    "henon long batches": Case(
+        family("henon"), ("a", "0.9", "1.4"), ("b", "0.2", "0.3"), FateRules(64, 640, 900, 8)
+    ),
     "lozi": Case(family("lozi"), ("a", "0.5", "1.8"), ("b", "0.1", "0.6")),
     "delayed logistic": Case(
         family("delayed_logistic"), ("r", "1.5", "2.4"), ("x", "0.3", "0.6"), FateRules(150, 320, 700, 16)
     ),
     "circle": Case(family("circle"), ("Omega", 0, 1), ("K", 0, 3)),
-    "collapse": Case(TENT, ("mu", "1.9", "2.1"), ("b", "0.2", "0.9"), start={"x": "0.7", "y": "0.1"}),
-    "tent": Case(family("tent"), ("mu", "1.5", "2.5"), ("x", 0, 1)),
+    "collapse": Case(TENT, ("mu", "1.9", "2.1"), ("b", "-0.5", "0.5"), start={"x": "0.7", "y": "0.1"}),
     "extinct": Case(HUNTED, ("r", "2.5", "4.2"), ("s", "0.4", "4.5")),
     "three states": Case(SPINNING, ("r", "1.6", "2.4"), ("b", "0.1", "0.9"), FateRules(150, 128, 500, 12)),
 }
@@ -157,7 +163,10 @@ def check(name: str, at: int, slow: Found, quick: Pixels, m: int) -> None:
 
 @pytest.mark.parametrize(
     ("name", "lanes"),
-    [*((name, 7) for name in CASES), *((name, lanes) for name in ("logistic", "windows") for lanes in (1, 32))],
+    [
+        *((name, 7) for name in CASES),
+        *((name, lanes) for name in ("logistic", "windows") for lanes in (1, 32)),
+    ],
 )
 def test_fates_equal_those_of_the_slow_twin(name: str, lanes: int) -> None:
     quick = CASES[name].found(lanes=lanes)
@@ -168,7 +177,12 @@ def test_fates_equal_those_of_the_slow_twin(name: str, lanes: int) -> None:
 @pytest.mark.parametrize("name", CASES)
 def test_fates_do_not_depend_on_the_pixels_side_by_side(name: str) -> None:
     slow = slow_fates(name)
-    for region in (Region(0, 1, 0, 1), Region(0, 3, 0, ROWS), Region(3, COLUMNS, 0, 2), Region(5, 6, 2, ROWS)):
+    for region in (
+        Region(0, 1, 0, 1),
+        Region(0, 3, 0, ROWS),
+        Region(3, COLUMNS, 0, 2),
+        Region(5, 6, 2, ROWS),
+    ):
         quick = CASES[name].found(region)
         for m in range(quick.fate.size):
             column, row = divmod(m, region.shape[1])
@@ -176,11 +190,9 @@ def test_fates_do_not_depend_on_the_pixels_side_by_side(name: str) -> None:
             check(name, at, slow[at][0], quick, m)
 
 
-@pytest.mark.parametrize("name", CASES)
+@pytest.mark.parametrize("name", [name for name, case in CASES.items() if case.turns])
 def test_rotation_numbers_equal_those_of_the_slow_twin(name: str) -> None:
     finder = CASES[name].finder()
-    if finder.winding is None and len(finder.family.states) == 1:
-        pytest.skip("a map of one variable on a line turns about nothing")
     quick = rotation(finder.find(WHOLE, start=1), finder.winding)
     np.testing.assert_allclose(quick, [turns for _, turns in slow_fates(name)], rtol=0, atol=1e-11)
 
@@ -192,8 +204,6 @@ def test_the_cases_meet_every_decision() -> None:
             met |= {FATES[slow.fate], *slow.ways}
             met |= {"collapsed"} if slow.collapsed else set()
             met |= {"repelling start"} if slow.repelling else set()
-            met |= {f"collapsed, then {FATES[slow.fate]}"} if slow.collapsed else set()
-    print(sorted(met))
     ways = {"approaching", "approached, then met", "approached, then unsettled", "measured anew"}
     ways |= {"near a repelling cycle", "tests disagree", "collapsed", "repelling start"}
-    assert met >= {*FATES, *ways, "collapsed, then chaotic", "collapsed, then escapes"}
+    assert met >= {*FATES, *ways}

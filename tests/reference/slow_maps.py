@@ -7,6 +7,7 @@ from collections.abc import Callable, Mapping, Sequence
 from itertools import combinations
 from typing import Any
 
+import mpmath
 import numpy as np
 from numba import njit
 
@@ -195,18 +196,42 @@ class SlowMap:
 
     def distance(self, x: State, y: State) -> float:
         """Return the largest difference of a state variable, the short way round where it is periodic."""
-        return max(self.apart(x[k], y[k], width) for k, width in enumerate(self.widths))
+        return max(apart(x[k], y[k], width) for k, width in enumerate(self.widths))
 
-    @staticmethod
-    def apart(a: float, b: float, width: float) -> float:
-        """Return the difference of two numbers, on a circle of a width unless it is 0."""
-        return min(abs(a - b), width - abs(a - b)) if width else abs(a - b)
+
+def apart(a: float, b: float, width: float) -> float:
+    """Return the difference of two numbers, on a circle of a width unless it is 0."""
+    return min(abs(a - b), width - abs(a - b)) if width else abs(a - b)
+
+
+def exponents_of_cycle(moved: Any, x: State, time: int, steps: int) -> State:
+    """Return the Lyapunov exponents of a cycle, largest first: eigenvalues of the exact product, 50 digits.
+
+    Parameters
+    ----------
+    moved : SlowMap
+        Or anything that has its ``step`` and ``jacobian``.
+    x : tuple of float
+    time, steps : int
+        When the state holds, and after how many steps it comes back.
+    """
+    with mpmath.workdps(50):
+        whole = mpmath.eye(len(x))
+        for n in range(time, time + steps):
+            whole = mpmath.matrix(moved.jacobian(x, n)) * whole
+            x = moved.step(x, n)
+        values, _ = mpmath.eig(whole)
+        sizes = sorted((abs(value) for value in values), reverse=True)
+        return tuple(float(mpmath.log(size) / steps) if size > 0 else -math.inf for size in sizes)
 
 
 def compound(matrix: Sequence[Sequence[float]], order: int) -> list[list[float]]:
     """Return the matrix of the minors of an order."""
     chosen = list(combinations(range(len(matrix)), order))
-    return [[determinant([[matrix[i][j] for j in columns] for i in rows]) for columns in chosen] for rows in chosen]
+    return [
+        [determinant([[matrix[i][j] for j in columns] for i in rows]) for columns in chosen]
+        for rows in chosen
+    ]
 
 
 def determinant(matrix: Sequence[Sequence[float]]) -> float:
