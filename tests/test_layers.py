@@ -67,12 +67,13 @@ TABLE = """
 25  atlas.attractors.basin_dataset atlas.orbits.portrait_dataset atlas.output.panels.basin
 25  atlas.output.panels.follow atlas.points.binning
 26  atlas.output.panels.portrait
-27  atlas.output.printing
-28  atlas.output.plane_tiles atlas.output.tileset atlas.points.plates
-29  atlas.output.whole_tiles
-30  atlas.output.tile_makers
-31  atlas.output.forecast
-32  atlas.output.batch atlas.points.tile_sets
+27  atlas.output.panels.split
+28  atlas.output.printing
+29  atlas.output.plane_tiles atlas.output.tileset atlas.points.plates
+30  atlas.output.whole_tiles
+31  atlas.output.tile_makers
+32  atlas.output.forecast
+33  atlas.output.batch atlas.points.tile_sets
 
 50  atlas.cli.family_text atlas.cli.options atlas.cli.point_requests atlas.cli.progress
 50  atlas.cli.requests atlas.cli.sentences atlas.cli.tables
@@ -97,6 +98,7 @@ HOMES = {
     "rich": ("atlas.cli",),
     "sympy": ("atlas.formula.symbolic",),
     "xarray": (
+        "atlas.attractors.basin_dataset",
         "atlas.orbits.counts",
         "atlas.orbits.portrait_dataset",
         "atlas.planes.plane_dataset",

@@ -27,8 +27,6 @@ def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
     """
     if job.kind not in ("histogram", "follow"):
         raise PlanRefused(f"{job.name}: {KINDS[job.kind]} has no columns of samples")
-    if job.by_attractor:
-        raise PlanRefused(f"{job.name}: a density by attractor is not drawn by this version; leave it away")
     samples = job.samples
     if not isinstance(samples, int):
         samples = whole_height(rows, job.values_per_column * len(job.starts), counts_per_cell(job))

@@ -7,6 +7,7 @@ import importlib.util
 import os
 import sys
 import tempfile
+import threading
 from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cache
@@ -23,6 +24,7 @@ from atlas.formula.tree import Node, free_names
 from atlas.orbits.volumes import carried, compounds, lengths
 from tiles.number import Exact
 
+_LOADING = threading.Lock()
 HEADER = f"""\
 import numpy as np
 from numba import njit
@@ -238,17 +240,18 @@ def load_module(text: str) -> ModuleType:
     stamp = Path(functions.__file__).read_text() + numba_version
     digest = hashlib.blake2b("\0".join((HEADER, text, stamp)).encode(), digest_size=12).hexdigest()
     name = f"atlas_map_{digest}"
-    if name in sys.modules:
-        return sys.modules[name]
-    path = cache_folder() / f"{name}.py"
-    if not path.exists():
-        with tempfile.NamedTemporaryFile("w", dir=path.parent, suffix=".part", delete=False) as part:
-            part.write(f"{HEADER}\n\n{text}\n")
-        os.replace(part.name, path)
-    spec = importlib.util.spec_from_file_location(name, path)
-    if spec is None or spec.loader is None:
-        raise ImportError(f"cannot import {path}")
-    module = importlib.util.module_from_spec(spec)
-    sys.modules[name] = module
-    spec.loader.exec_module(module)
-    return module
+    with _LOADING:  # a module that another thread still executes lacks functions
+        if name in sys.modules:
+            return sys.modules[name]
+        path = cache_folder() / f"{name}.py"
+        if not path.exists():
+            with tempfile.NamedTemporaryFile("w", dir=path.parent, suffix=".part", delete=False) as part:
+                part.write(f"{HEADER}\n\n{text}\n")
+            os.replace(part.name, path)
+        spec = importlib.util.spec_from_file_location(name, path)
+        if spec is None or spec.loader is None:
+            raise ImportError(f"cannot import {path}")
+        module = importlib.util.module_from_spec(spec)
+        sys.modules[name] = module
+        spec.loader.exec_module(module)
+        return module

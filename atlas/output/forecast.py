@@ -12,7 +12,7 @@ from atlas.config.draws import PLANES
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
 from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE
-from atlas.output.printing import MAKERS, sheet_of
+from atlas.output.printing import maker_of, sheet_of
 from atlas.output.tile_makers import samples_of, seconds_of
 from atlas.output.tileset import CELLS_PER_STRIP, tile_counter
 from atlas.output.whole_tiles import BYTES_PER_CELL
@@ -51,7 +51,7 @@ def room_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
     if isinstance(record, TileSet):
         return _room_of_tile_set(record, workers, budget)
     sheet = sheet_of(record)
-    samples = sum(MAKERS[view.plate.kind].room(view).samples for view in sheet.views)
+    samples = sum(maker_of(view.plate).room(view).samples for view in sheet.views)
     return Need(record.pixels, samples, 0.0, sheet.memory)
 
 
@@ -65,7 +65,7 @@ def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
         seconds = seconds_of(record) + tiles * each
         return replace(room, seconds=seconds / builders(record, workers, budget))
     width, height = record.pixels
-    seconds = sum(MAKERS[view.plate.kind].seconds(view) for view in sheet_of(record).views) / workers
+    seconds = sum(maker_of(view.plate).seconds(view) for view in sheet_of(record).views) / workers
     seconds += sum(SECONDS_PER_PIXEL[form] for form in record.formats) * width * height
     return replace(room, seconds=seconds)
 

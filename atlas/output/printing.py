@@ -24,6 +24,7 @@ from atlas.output.panels.follow import FollowMaker
 from atlas.output.panels.histogram import HistogramMaker
 from atlas.output.panels.plane import PlaneMaker
 from atlas.output.panels.portrait import PortraitMaker
+from atlas.output.panels.split import SplitMaker
 from atlas.output.reporter import Reporter, Silence
 from atlas.plan import BASE_MEMORY, check_fits, parse_memory
 from tiles.errors import nearest
@@ -40,6 +41,7 @@ MAKERS: dict[str, Maker] = {
     "plane": PlaneMaker(),
     "basin": BasinMaker(),
 }
+SPLIT: Maker = SplitMaker()
 
 
 @dataclass(frozen=True)
@@ -61,7 +63,7 @@ class Sheet:
     @property
     def memory(self) -> int:
         """Estimated peak memory of the process in bytes while it is made."""
-        rooms = [MAKERS[view.plate.kind].room(view) for view in self.views]
+        rooms = [maker_of(view.plate).room(view) for view in self.views]
         width, height = self.record.pixels
         coloured = any(room.raster > view.cells for room, view in zip(rooms, self.views, strict=True))
         page = _page_memory(width * height, self.record.formats, coloured)
@@ -79,6 +81,11 @@ class Made:
     samples: int
     record: dict[str, Any]
     remarks: tuple[str, ...] = ()
+
+
+def maker_of(plate: Plate) -> Maker:
+    """Return what makes the panel of a plate."""
+    return SPLIT if plate.by_attractor else MAKERS[plate.kind]
 
 
 def sheet_of(record: Plate | Figure) -> Sheet:
@@ -165,7 +172,7 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
         When a file cannot be written.
     """
     panels = {
-        view.name: MAKERS[view.plate.kind].make(view, sheet.record.name, schedule, reporter)
+        view.name: maker_of(view.plate).make(view, sheet.record.name, schedule, reporter)
         for view in sheet.views
     }
     record = certificate(

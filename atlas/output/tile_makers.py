@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 from atlas.config.jobs import TileSet
+from atlas.errors import PlanRefused
 from atlas.orbits.schedule import Schedule
 from atlas.output.panels.histogram import counting_seconds
 from atlas.output.panels.plane import finding_seconds
@@ -34,6 +35,10 @@ TILE_SET_MAKERS: dict[str, TileSetMaker] = {
 
 def samples_of(job: TileSet) -> int:
     """Return the samples or pixels of a tile set, at least; refuses what cannot be computed."""
+    if job.by_attractor:
+        raise PlanRefused(
+            f"{job.name}: a density split by attractor cannot be a tile set; draw it as a plate"
+        )
     if job.kind in ("plane", "basin"):
         finder = plane_finder(job)
         return finder.columns * finder.rows

@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from atlas.figure.pieces import PanelText
 from atlas.orbits.counting import counter_of, piloted
 from atlas.orbits.follow import SWEEPS, count_followed
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule
 from atlas.output.colouring import shaded
-from atlas.output.inking import overprinted
+from atlas.output.inking import Layered, overprinted
 from atlas.output.panel import Panel, Room, View, label_of
 from atlas.output.panels.histogram import BYTES_PER_COUNT, counting_seconds, panel_text, sampled_of
 from atlas.output.remarks import remarks_on
@@ -51,7 +53,14 @@ class FollowMaker:
             fit, raster = shaded(plate, counter.view, strips[0])
             text = panel_text(plate, fit)
         else:
-            raster, legend = overprinted(plate, counter.view, strips, [NAMES[one] for one in sweeps])
+            layered = Layered(
+                np.stack([strip.counts for strip in strips]),
+                strips[0].exposure,
+                counter.view.up.cell_size(counter.rows),
+                [NAMES[one] for one in sweeps],
+                np.any([strip.unsettled > 0 for strip in strips], axis=0),
+            )
+            raster, legend = overprinted(plate, counter.view, layered)
             text = PanelText(label_of(plate, plate.across), label_of(plate, plate.up), legend=legend)
         shares = {direction: sweep.shares() for direction, sweep in sweeps.items()}
         remarks = [

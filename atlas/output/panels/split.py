@@ -1,0 +1,118 @@
+"""Densities split by attractor as panels, each attractor in an ink of its own."""
+
+from __future__ import annotations
+
+from hashlib import blake2b
+
+import numpy as np
+
+from atlas.attractors.split_counts import SplitCounts, split_histogram, split_portrait
+from atlas.config.jobs import Job
+from atlas.figure.pieces import PanelText
+from atlas.orbits.counting import counter_of, portrait_of, resolved, resolved_portrait
+from atlas.orbits.schedule import Schedule
+from atlas.output.inking import Layered, overprinted
+from atlas.output.panel import Panel, Room, View, label_of
+from atlas.output.panels.histogram import BYTES_PER_COUNT, counting_seconds
+from atlas.output.panels.portrait import portrait_seconds
+from atlas.output.remarks import remarks_on
+from atlas.output.reporter import PREPARING, Reporter
+from atlas.planes.pixels import FateRules
+from tiles.mixing import INKS
+
+MOST = len(INKS) - 1
+NO_ATTRACTOR = "no attractor found"
+
+
+class SplitMaker:
+    """Makes orbit histograms and phase portraits with one colour an attractor."""
+
+    def room(self, view: View) -> Room:
+        """Return what a view needs."""
+        plate = view.plate
+        if plate.kind == "portrait":
+            samples = portrait_of(plate, view.columns, view.rows).exposure
+        else:
+            counter = counter_of(plate, view.columns, view.rows)
+            samples = counter.columns * counter.exposure
+        return Room(samples, BYTES_PER_COUNT * (MOST + 2) * view.cells, 3 * view.cells)
+
+    def seconds(self, view: View) -> float:
+        """Return the estimated time of one core."""
+        if view.plate.kind == "portrait":
+            return portrait_seconds(portrait_of(view.plate, view.columns, view.rows))
+        return counting_seconds(counter_of(view.plate, view.columns, view.rows))
+
+    def make(self, view: View, name: str, schedule: Schedule, reporter: Reporter) -> Panel:
+        """Count a view by attractor and ink it."""
+        plate = view.plate
+        reporter.begin(name, PREPARING, 0)
+        if plate.kind == "portrait":
+            split, cell, exposure = _portrait(view, name, schedule, reporter)
+        else:
+            split, cell, exposure = _histogram(view, name, schedule, reporter)
+        shown = [*split.present, *([0] if split.layers[0].any() else [])]
+        layered = Layered(
+            np.ascontiguousarray(split.layers[shown]) if len(shown) < len(split.layers) else split.layers,
+            np.full(view.columns, exposure, np.uint64),
+            cell,
+            [f"attractor {number}" if number else NO_ATTRACTOR for number in shown],
+        )
+        raster, legend = overprinted(plate, plate.view, layered, branches=plate.kind == "histogram")
+        shares = _shares(split)
+        sampled = {
+            "columns": view.columns,
+            "rows": view.rows,
+            "starts": len(plate.starts),
+            "exposure": split.exposure,
+            "attractors": len(split.present),
+        }
+        return Panel(
+            raster,
+            PanelText(label_of(plate, plate.across), label_of(plate, plate.up), legend=legend),
+            shares,
+            sampled,
+            split.exposure,
+            _digest(split),
+            tuple(remarks_on(view.name, shares)),
+        )
+
+
+def _histogram(
+    view: View, name: str, schedule: Schedule, reporter: Reporter
+) -> tuple[SplitCounts, float, int]:
+    counter = counter_of(view.plate, view.columns, view.rows)
+    counter = resolved(view.plate, counter, schedule)
+    counter.warm()
+    reporter.begin(name, "counting", counter.columns * counter.exposure)
+    split = split_histogram(counter, _rules(view.plate), schedule, reporter.advance, most=MOST)
+    return split, view.plate.up.cell_size(view.rows), counter.exposure
+
+
+def _portrait(
+    view: View, name: str, schedule: Schedule, reporter: Reporter
+) -> tuple[SplitCounts, float, int]:
+    counter = portrait_of(view.plate, view.columns, view.rows)
+    counter = resolved_portrait(view.plate, counter, schedule)
+    counter.warm()
+    reporter.begin(name, "counting", counter.exposure)
+    split = split_portrait(counter, _rules(view.plate), schedule, reporter.advance, most=MOST)
+    area = view.plate.across.cell_size(view.columns) * view.plate.up.cell_size(view.rows)
+    return split, area, counter.exposure
+
+
+def _rules(job: Job) -> FateRules:
+    return FateRules(job.transient, job.steps, job.transient_limit, job.longest_period)
+
+
+def _shares(split: SplitCounts) -> dict[str, float]:
+    return {
+        "below": split.outside / split.exposure,
+        "above": 0.0,
+        "escaped": split.escaped / split.exposure,
+        "unsettled": split.unsettled / split.exposure,
+    }
+
+
+def _digest(split: SplitCounts) -> str:
+    return blake2b(np.ascontiguousarray(split.layers, "<u4").data, digest_size=16).hexdigest()
