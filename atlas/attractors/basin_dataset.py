@@ -147,7 +147,7 @@ def basin_dataset(job: Any, found: Basins) -> Any:
             ),
             "fate": (dims, fate[classes], {"long_name": f"fate: {', '.join(FATES)}"}),
             "period": (dims, period[classes], {"long_name": "least period of the cycle, 0 without one"}),
-            **_each_attractor(found),
+            **_each_attractor(found, len(family.states)),
         },
         coords={
             view.up.name: view.up.centres(rows),
@@ -204,10 +204,9 @@ def _of_classes(found: Basins) -> tuple[Any, Any]:
     return fate, period
 
 
-def _each_attractor(found: Basins) -> dict[str, Any]:
+def _each_attractor(found: Basins, states: int) -> dict[str, Any]:
     them = found.attractors
     longest = max([len(one.points) for one in them], default=0)
-    states = them[0].mean.size if them else 0
     points = np.full((len(them), longest, states), np.nan)
     for row, one in zip(points, them, strict=True):
         row[: len(one.points)] = one.points
@@ -216,7 +215,10 @@ def _each_attractor(found: Basins) -> dict[str, Any]:
         return "number", np.array(values, kind), {"long_name": meaning}
 
     boxes = {
-        name: (("number", "state"), np.array([getattr(one, field) for one in them]).reshape(len(them), -1))
+        name: (
+            ("number", "state"),
+            np.array([getattr(one, field) for one in them]).reshape(len(them), states),
+        )
         for name, field in (("lowest", "low"), ("highest", "high"), ("mean", "mean"))
     }
     return {

@@ -20,8 +20,10 @@ from atlas.planes.plane_kernels import AGAIN, DEAD, GONE, MET, NEAR, OPEN
 BATCHES = 16
 LOOKS = 4
 FIRST_STAGE = 64
-NEARER = 0.75
-"""To what part its distance must fall, while the steps are doubled, where an orbit approaches its limit."""
+NEARER = 0.8
+"""To what part its distance must fall, while the steps are doubled, where an orbit approaches its limit: at a
+period doubling, where it does so like a power of time, to 0.71, beside one, where that becomes exponential
+and the estimate of the limit with it, to 0.784 at most."""
 SLICE = 1 << 12
 """Steps of a batch after which growth is added up, whatever orbits are measured together."""
 
@@ -215,14 +217,19 @@ class Pixels:
         self.error[order] = error
 
     def _extended(self, order: Order, done: int) -> None:
-        """Run on the orbits that approach a cycle, as long as they come nearer."""
+        """Run on the orbits that approach a cycle, as long as they come nearer.
+
+        The last steps may be fewer than those done before: how far the distance falls then says nothing.
+        """
         limit = self.rules.transient_limit
         while order.size and done < limit and not self.stop[0]:
             steps = self._whole(min(max(done, FIRST_STAGE), limit - done))
             before = self.away.copy()
             order = self._looked(self._fled(self._open(order), done, steps))
             done += steps
-            nearer = (self.outcome[order] == NEAR) & (self.away[order] < NEARER * before[order])
+            nearer = self.outcome[order] == NEAR
+            if 2 * steps >= done:  # done holds them already
+                nearer &= self.away[order] < NEARER * before[order]
             self._measured(self._open(order[~nearer]), done, anew=True)
             order = order[nearer]
 
