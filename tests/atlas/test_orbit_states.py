@@ -72,8 +72,8 @@ COLUMNS_OF = {
     ),
     "second state, slow": Case(
         family("delayed_logistic"),
-        ("r", "1.975", "2.025"),
-        ("y", "0.45", "0.55"),
+        ("r", "0.9", "1.1"),
+        ("y", 0, "0.2"),
         Rules(60, 400, 100, 1, 8),
         ({},),
     ),

@@ -11,7 +11,7 @@ from typing import Any
 
 import pytest
 
-from tests.world.uncompiled import CASES, counted
+from tests.world.uncompiled import CASES, PLANE, STATES, counted, counted_states, plane
 
 ROOT = Path(__file__).parents[2]
 
@@ -32,8 +32,19 @@ def test_compiled_and_plain_counts_are_equal(case: str, uncompiled: Any) -> None
     assert counted(case) == uncompiled[case]
 
 
+def test_counts_of_two_variables_are_equal(uncompiled: Any) -> None:
+    assert counted_states() == uncompiled[STATES]
+    assert sum(uncompiled[STATES]["escaped"])
+
+
+def test_planes_are_equal(uncompiled: Any) -> None:
+    assert plane() == uncompiled[PLANE]
+    assert len(set(uncompiled[PLANE]["fate"])) > 3
+
+
 def test_the_cases_meet_what_kernels_decide(uncompiled: Any) -> None:
     kinds = ("escaped", "unsettled", "collapsed")
-    assert all(any(sum(made[kind]) for made in uncompiled.values()) for kind in kinds)
-    assert any(made["filled"] for made in uncompiled.values())
-    assert any(made["on_repelling"] for made in uncompiled.values())
+    cases = [uncompiled[case] for case in CASES]
+    assert all(any(sum(made[kind]) for made in cases) for kind in kinds)
+    assert any(made["filled"] for made in cases)
+    assert any(made["on_repelling"] for made in cases)
