@@ -4,9 +4,10 @@
 has just doubled can pass for either) and a point of one lies within 2**-16 of a point of the other. That is
 in units of the largest initial value of any state variable in the view, or of the cycle's own size where this
 is larger; sixteen times what a cycle is confirmed with (`atlas.planes.fates`). *Other* orbits are run on by
-``RECORDS`` states and are on the same attractor where the cells that they visit, of a grid over the box of
-all these states, are joined through cells that others visit too. So two attractors that pass through the same
-cell count as one, and so do the neighbouring curves of a map that preserves areas.
+``RECORDS`` states. One that then ends within 2**-10 of a point of a cycle that another orbit reaches is on
+its way there, too slowly to tell before. The rest are on the same attractor where the cells that they visit,
+of a grid over the box of all these states, are joined through cells that others visit too. So two attractors
+that pass through the same cell count as one, and so do the neighbouring curves of a map that preserves areas.
 
 Where parameters follow a pattern, only states at its beginning are compared: two orbits that go through the
 same states at different places of the pattern are on different attractors.
@@ -30,6 +31,8 @@ RECORDS_AT_ONCE = 1 << 22
 """States of all orbits together that one call of a kernel may look at, so that an interrupt is soon heard."""
 NEAR = 2.0**-16
 """How near points of cycles lie that count as the same."""
+WIDE = 2.0**-10
+"""How near to a point of a cycle an orbit ends that is on its way there."""
 
 _EACH_ORBIT = ("x", "c", "key", "fate", "period", "turn", "collapsed", "steady")
 
@@ -138,11 +141,43 @@ class Visits:
         The box that each orbit visits.
     total : ndarray of float64, shape (states, orbits)
         Sum of its states.
+    end : ndarray of float64, shape (states, orbits)
+        The last of them.
     """
 
     low: Floats
     high: Floats
     total: Floats
+    end: Floats
+
+
+@dataclass(frozen=True)
+class Grid:
+    """Cells over boxes, one box a group of orbits.
+
+    Attributes
+    ----------
+    low, inverse : ndarray of float64, shape (states, groups)
+        Where the cells begin, and their inverse size; 0 where a box is flat.
+    side : int
+        Cells along each axis.
+    """
+
+    low: Floats
+    inverse: Floats
+    side: int
+
+    @staticmethod
+    def over(low: Floats, high: Floats, side: int) -> Grid:
+        """Return cells over boxes, given by their ends, shape (states, groups)."""
+        with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
+            inverse = side / (high - low)
+        return Grid(low, np.where(np.isfinite(inverse), inverse, 0.0), side)
+
+    @property
+    def cells(self) -> int:
+        """Cells of a group."""
+        return int(self.side ** len(self.low))
 
 
 class Sorter:
@@ -166,14 +201,16 @@ class Sorter:
         self.kernels, self.reach, self.before = kernels, reach, before
         self.stop = np.zeros(1, np.uint8) if stop is None else stop
 
-    def cycles(self, ends: Ends, order: Whole, group: Whole, most: int) -> Cycles:
+    def cycles(self, ends: Ends, end: Floats, order: Whole, group: Whole, most: int) -> Cycles:
         """Number the cycles of each group in the order of the orbits.
 
         Parameters
         ----------
         ends : Ends
+        end : ndarray of float64, shape (states, orbits)
+            Last states of orbits that are on no cycle, from :meth:`visits`.
         order : ndarray of int64
-            Orbits on cycles, those of a group next to each other.
+            Orbits of a group next to each other, first those on cycles.
         group : ndarray of int64, shape (orbits,)
         most : int
             Cycles told apart in a group.
@@ -181,14 +218,16 @@ class Sorter:
         own = np.full(ends.fate.size, -1)
         if not order.size:
             return Cycles(own, [], order)
-        longest = int(ends.turn[order].max()) // ends.word.size
+        longest = max(1, int(ends.turn[order].max()) // ends.word.size)
         points = np.empty((most, longest, len(ends.x)))
         sizes, firsts = np.zeros(most, np.int64), np.zeros(most, np.int64)
+        period = np.where(ends.on_cycles, ends.period, 0)
         known = self.kernels.gather(
-            ends.x, ends.c, ends.word, order, group, ends.period, ends.turn, NEAR, self.reach, own, points,
-            sizes, firsts,
+            ends.x, end, ends.c, ends.word, order, group, period, ends.turn, NEAR, WIDE, self.reach, own,
+            points, sizes, firsts,
         )  # fmt: skip
-        own[order] = np.where(own[order] < 0, -2, own[order])
+        full = order[(own[order] < 0) & ends.on_cycles[order]]
+        own[full] = -2
         return Cycles(own, [points[a, : sizes[a]].copy() for a in range(known)], firsts[:known].copy())
 
     def states(self, ends: Ends, orbit: int, number: int) -> Floats:
@@ -200,39 +239,37 @@ class Sorter:
     def visits(self, ends: Ends, order: Whole) -> tuple[Visits, Whole]:
         """Look at the next states of orbits; return them, and the orbits that did not leave the bound."""
         shape = ends.x.shape
-        visits = Visits(np.full(shape, np.inf), np.full(shape, -np.inf), np.zeros(shape))
+        visits = Visits(np.full(shape, np.inf), np.full(shape, -np.inf), np.zeros(shape), np.zeros(shape))
         gone = np.zeros(shape[1], np.bool_)
         for part, kernel in self._parts(ends, order, "visit"):
             kernel(
                 ends.x, ends.c, ends.word, ends.key, part, self.before, RECORDS, ends.bound, visits.low,
-                visits.high, visits.total, gone,
+                visits.high, visits.total, visits.end, gone,
             )  # fmt: skip
         return visits, order[~gone[order]]
 
-    def joined(
-        self, ends: Ends, order: Whole, low: Floats, inverse: Floats, side: int, base: Whole, parent: Whole
-    ) -> Whole:
-        """Join the cells that orbits visit, and return the first cell of each orbit; -1 of others.
+    def joined(self, ends: Ends, order: Whole, grid: Grid, group: Whole, parent: Whole) -> Whole:
+        """Join the cells that orbits visit; return the lowest cell that each is joined to, -1 of others.
 
         Parameters
         ----------
         ends : Ends
         order : ndarray of int64
-        low, inverse : ndarray of float64, shape (states, orbits)
-            Where the grid begins, and the inverse size of its cells.
-        side : int
-            Cells along each axis.
-        base : ndarray of int64, shape (orbits,)
-            Number of the first cell of each orbit's grid.
-        parent : ndarray of int64
+        grid : Grid
+            The cells of each group of orbits.
+        group : ndarray of int64, shape (orbits,)
+            Every orbit's group.
+        parent : ndarray of int64, shape (groups * cells of a group,)
             The cells that cells are joined to; changed.
         """
         entered = np.full(ends.fate.size, -1)
         for part, kernel in self._parts(ends, order, "join"):
             kernel(
-                ends.x, ends.c, ends.word, ends.key, part, self.before, RECORDS, low, inverse, side, base,
-                parent, entered,
+                ends.x, ends.c, ends.word, ends.key, part, self.before, RECORDS, grid.low, grid.inverse,
+                grid.side, group, parent, entered,
             )  # fmt: skip
+        if not self.stop[0]:
+            self.kernels.lowest(parent, order, entered)
         return entered
 
     def _parts(self, ends: Ends, order: Whole, name: str) -> Iterator[tuple[Whole, Callable[..., None]]]:
@@ -254,10 +291,3 @@ def roots(parent: Whole) -> Whole:
         if np.array_equal(further, parent):
             return further
         parent = further
-
-
-def grid(low: Floats, high: Floats, side: int) -> tuple[Floats, Floats]:
-    """Return where a grid over boxes begins and the inverse size of its cells; 0 where a box is flat."""
-    with np.errstate(divide="ignore", invalid="ignore"):
-        inverse = side / (high - low)
-    return low, np.where(np.isfinite(inverse), inverse, 0.0)

@@ -13,13 +13,14 @@ from atlas.orbits.step import StepSource, load_module
 
 GATHER = '''
 @compiled
-def gather(x, c, word, order, group, period, turn, near, reach, own, points, sizes, firsts):
-    """Give the orbits of order, all on cycles, numbers from 0 within their group: the same on the same cycle.
+def gather(x, end, c, word, order, group, period, turn, near, wide, reach, own, points, sizes, firsts):
+    """Give the orbits of order on cycles numbers from 0 within their group: the same on the same cycle.
 
     A cycle is the same where one period divides the other and a point of one lies within near times the
     largest of reach and the cycle's own size of a point of the other. own[m] is -1 where there is no room for
-    another cycle. Returns the number of cycles of the last group; the points of each, their number, and an
-    orbit of the least period stand in the arrays then.
+    another cycle. Orbits of period 0 come last in their group: they are given a cycle where their end state
+    is near one of its points, with wide in the place of near, else -1. Returns the number of cycles of the
+    last group; the points of each, their number, and an orbit of the least period stand in the arrays then.
     """
     scales = np.empty(sizes.size)
     later = np.empty((points.shape[1], NX))
@@ -29,13 +30,18 @@ def gather(x, c, word, order, group, period, turn, near, reach, own, points, siz
         if group[m] != last:
             known = 0
             last = group[m]
+        if period[m] == 0:
+            for k in range(NX):
+                later[0, k] = end[k, m]
+            own[m] = same_cycle(later[:1], 0, period, wide, known, points, sizes, firsts, scales)
+            continue
         for k in range(NX):
             later[0, k] = x[k, m]
-        number = same_cycle(later[:1], period[m], period, near, known, points, sizes, firsts, scales)
+        number = same_cycle(later[:1], int(period[m]), period, near, known, points, sizes, firsts, scales)
         if number < 0:
             size = follow(x, c, word, m, turn[m] // word.size, later)
             some = later[: turn[m] // word.size]
-            number = same_cycle(some, period[m], period, near, known, points, sizes, firsts, scales)
+            number = same_cycle(some, int(period[m]), period, near, known, points, sizes, firsts, scales)
             if number < 0 and known < sizes.size:
                 number = known
                 known += 1
@@ -55,7 +61,7 @@ def gather(x, c, word, order, group, period, turn, near, reach, own, points, siz
 def same_cycle(some, own_period, period, near, known, points, sizes, firsts, scales):
     """Return the first known cycle that has a point near one of some points; -1 without one."""
     for a in range(known):
-        other = period[firsts[a]]
+        other = int(period[firsts[a]])
         if own_period % other != 0 and other % own_period != 0:
             continue
         for n in range(some.shape[0]):
@@ -94,6 +100,13 @@ def root_of(parent, cell):
 
 
 @compiled
+def lowest(parent, order, entered):
+    """Replace the cells where orbits entered by the lowest that they are joined to."""
+    for m in order:
+        entered[m] = root_of(parent, entered[m])
+
+
+@compiled
 def unite(parent, left, right):
     """Join cells pair by pair."""
     for i in range(left.size):
@@ -125,8 +138,8 @@ ONWARD = """
 
 VISIT = f'''
 @compiled
-def visit(x, c, word, key, order, before, records, bound, least, most, total, gone):
-    """Look at the next states of orbits: the box and the sum of each, and whether it left the bound."""
+def visit(x, c, word, key, order, before, records, bound, least, most, total, end, gone):
+    """Look at the next states of orbits: the box, sum and last of each, and whether it left the bound."""
     lx = np.empty((NX, LANES))
     lc = np.empty((ROWS, LANES))
     lk = np.empty(LANES, np.uint64)
@@ -158,29 +171,32 @@ def visit(x, c, word, key, order, before, records, bound, least, most, total, go
                 least[k, m] = low[k, l]
                 most[k, m] = high[k, l]
                 total[k, m] = sums[k, l]
+                end[k, m] = lx[k, l]
 '''
 
 JOIN = f'''
 @compiled
-def join(x, c, word, key, order, before, records, low, inverse, side, base, parent, entered):
+def join(x, c, word, key, order, before, records, low, inverse, side, group, parent, entered):
     """Join all cells that an orbit visits; entered gets the first of them.
 
-    The cells of orbit m are those from base[m] on, side of them along each axis, from low[k, m] on, their
-    inverse size inverse[k, m]; what lies outside counts as in the cells at the edge.
+    Group g = group[m] has side ** NX cells, side of them along each axis, from low[k, g] on, their
+    inverse size inverse[k, g]; what lies outside counts as in the cells at the edge.
     """
     lx = np.empty((NX, LANES))
     lc = np.empty((ROWS, LANES))
     lk = np.empty(LANES, np.uint64)
     ll = np.empty((NX, LANES))
     li = np.empty((NX, LANES))
-    cells = np.empty(LANES, np.int64)
+    cells = np.empty(LANES, np.int32)
     roots = np.empty(LANES, np.int64)
+    lb = np.empty(LANES, np.int64)
     top = float(side - 1)
     for first in range(0, order.size, LANES):
 {LOADED}
             for k in range(NX):
-                ll[k, l] = low[k, m]
-                li[k, l] = inverse[k, m]
+                ll[k, l] = low[k, group[m]]
+                li[k, l] = inverse[k, group[m]]
+            lb[l] = group[m] * side ** NX
         for record in range(records):
 {ONWARD}
             cells[:] = 0
@@ -189,18 +205,19 @@ def join(x, c, word, key, order, before, records, low, inverse, side, base, pare
                     q = (lx[k, l] - ll[k, l]) * li[k, l]
                     q = q if q > 0.0 else 0.0
                     q = q if q < top else top
-                    cells[l] = cells[l] * side + int(q)
+                    cells[l] = cells[l] * np.int32(side) + np.int32(q)
+            if record == 0:
+                for l in range(lanes):
+                    roots[l] = lb[l] + cells[l]
+                    entered[order[first + l]] = roots[l]
             for l in range(lanes):
-                m = order[first + l]
-                cell = base[m] + cells[l]
-                if record == 0:
-                    entered[m] = cell
-                    roots[l] = cell
-                a = root_of(parent, cell)
-                b = root_of(parent, roots[l])
-                if a != b:
-                    parent[max(a, b)] = min(a, b)
-                roots[l] = min(a, b)
+                cell = lb[l] + cells[l]
+                if parent[cell] != roots[l]:
+                    a = root_of(parent, cell)
+                    b = root_of(parent, roots[l])
+                    if a != b:
+                        parent[max(a, b)] = min(a, b)
+                    roots[l] = min(a, b)
 '''
 
 

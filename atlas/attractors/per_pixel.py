@@ -7,16 +7,16 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from atlas.attractors.ends import Ends, Sorter, Whole, grid, roots
+from atlas.attractors.ends import Ends, Grid, Sorter, Visits, Whole
 from atlas.attractors.kernels import attractor_module
 from atlas.planes.finder import FateFinder, Region
 
 ORBITS_AT_ONCE = 1 << 16
-SIDES = {1: 2048, 2: 48, 3: 13}
+SIDES = {1: 1024, 2: 48, 3: 13}
 """Cells along each axis of the grid of a pixel, by the number of state variables."""
 MOST_CYCLES = 256
 """Cycles of one pixel that are told apart; the others are not counted."""
-PIXELS_JOINED = 256
+PIXELS_JOINED = 64
 
 
 def sorter_of(finder: FateFinder, stop: NDArray[np.uint8] | None = None) -> Sorter:
@@ -57,42 +57,38 @@ def sort_groups(sorter: Sorter, ends: Ends, groups: int) -> Sorted:
     """
     each = ends.fate.size // groups
     group = np.repeat(np.arange(groups), each)
-    order = np.flatnonzero(ends.on_cycles)
-    own = sorter.cycles(ends, order, group, min(MOST_CYCLES, each)).own
-    label = np.where(own >= 0, own, -1)
-    others = ends.others.reshape(groups, each)
-    cells = SIDES[len(ends.x)] ** len(ends.x)
-    visited = np.flatnonzero(others.any(axis=1))
-    for first in range(0, visited.size, PIXELS_JOINED):
-        some = visited[first : first + PIXELS_JOINED]
-        place = np.full(groups, -1)
-        place[some] = np.arange(some.size)
-        orbits = np.flatnonzero(others.reshape(-1) & (place[group] >= 0))
-        entered = _joined_in_groups(sorter, ends, orbits, group, place, cells)
-        met = entered >= 0
-        label[met] = each + entered[met] % cells
+    visits, stayed = sorter.visits(ends, np.flatnonzero(ends.others))
+    cyclic = np.flatnonzero(ends.on_cycles)
+    order = np.concatenate([cyclic, stayed])
+    order = order[np.argsort(group[order], kind="stable")]
+    own = sorter.cycles(ends, visits.end, order, group, min(MOST_CYCLES, each)).own
+    label = np.maximum(own, -1)
+    rest = stayed[own[stayed] < 0]
+    label[rest] = each + _joined_in_groups(sorter, ends, visits, rest, group)
     return _numbered(label.reshape(groups, each))
 
 
-def _joined_in_groups(
-    sorter: Sorter, ends: Ends, orbits: Whole, group: Whole, place: Whole, cells: int
-) -> Whole:
-    """Return, of each orbit, the lowest cell that it is joined to in its group's grid; -1 of others."""
-    visits, stayed = sorter.visits(ends, orbits)
-    shape = (len(ends.x), int(place.max()) + 1)
-    low, high = np.full(shape, np.inf), np.full(shape, -np.inf)
-    at = place[group[stayed]]
-    for k in range(len(ends.x)):
-        np.minimum.at(low[k], at, visits.low[k, stayed])
-        np.maximum.at(high[k], at, visits.high[k, stayed])
+def _joined_in_groups(sorter: Sorter, ends: Ends, visits: Visits, orbits: Whole, group: Whole) -> Whole:
+    """Return the lowest cell of its group's grid that each of some orbits is joined to."""
     side = SIDES[len(ends.x)]
-    begin, inverse = grid(low, high, side)
-    spread = np.maximum(place[group], 0)
-    parent = np.arange(shape[1] * cells)
-    entered = sorter.joined(ends, stayed, begin[:, spread], inverse[:, spread], side, spread * cells, parent)
-    met = entered >= 0
-    entered[met] = roots(parent)[entered[met]]
-    return entered
+    cells = side ** len(ends.x)
+    found = np.zeros(orbits.size, np.int64)
+    _, first, often = np.unique(group[orbits], return_index=True, return_counts=True)
+    edges = np.append(first, orbits.size)
+    chosen = np.flatnonzero(often > 1)
+    for start in range(0, chosen.size, PIXELS_JOINED):
+        some = chosen[start : start + PIXELS_JOINED]
+        at = np.concatenate([np.arange(edges[one], edges[one + 1]) for one in some])
+        order = orbits[at]
+        begins = np.concatenate([[0], np.cumsum(often[some])[:-1]])
+        low = np.minimum.reduceat(visits.low[:, order], begins, axis=1)
+        high = np.maximum.reduceat(visits.high[:, order], begins, axis=1)
+        place = np.repeat(np.arange(some.size), often[some])
+        parent = np.arange(some.size * cells)
+        part = ends.taken(order)
+        joined = sorter.joined(part, np.arange(order.size), Grid.over(low, high, side), place, parent)
+        found[at] = joined % cells
+    return found
 
 
 def _numbered(label: Whole) -> Sorted:

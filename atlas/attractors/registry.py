@@ -9,7 +9,19 @@ from types import ModuleType
 import numpy as np
 from numpy.typing import NDArray
 
-from atlas.attractors.ends import NEAR, RECORDS, Cycles, Ends, Floats, Sorter, Visits, Whole, grid, roots
+from atlas.attractors.ends import (
+    NEAR,
+    RECORDS,
+    WIDE,
+    Cycles,
+    Ends,
+    Floats,
+    Grid,
+    Sorter,
+    Visits,
+    Whole,
+    roots,
+)
 from atlas.planes.fates import CHAOTIC, ESCAPES, FIXED_POINT, PERIODIC, QUASI_PERIODIC
 from atlas.planes.finder import FateFinder, Region
 
@@ -70,7 +82,7 @@ class Cycle:
 
 @dataclass(frozen=True)
 class Entries:
-    """What is known of the quasi-periodic and chaotic orbits of a region, by the first cell that they visit.
+    """What is known of the quasi-periodic and chaotic orbits of a region, by the cell they are joined to.
 
     Attributes
     ----------
@@ -79,6 +91,8 @@ class Entries:
         Quasi-periodic, and chaotic.
     lowest : ndarray of int64, shape (cells,)
     low, high, total : ndarray of float64, shape (states, cells)
+    end : ndarray of float64, shape (states, cells)
+        Last state of the lowest start.
     """
 
     cells: Whole
@@ -87,6 +101,7 @@ class Entries:
     low: Floats
     high: Floats
     total: Floats
+    end: Floats
 
 
 @dataclass(frozen=True)
@@ -134,42 +149,42 @@ def look(finder: FateFinder, sorter: Sorter, region: Region, box: Box, stop: NDA
     rank = np.tile(np.arange(region.low, region.high), columns) * finder.columns + column
     lowest_first = np.argsort(rank)
     keys = ends.fate.astype(np.uint32)
-    order = lowest_first[ends.on_cycles[lowest_first]]
-    found = sorter.cycles(ends, order, np.zeros(keys.size, np.int64), MOST_CYCLES)
+    visits, stayed = sorter.visits(ends, lowest_first[ends.others[lowest_first]])
+    order = np.concatenate([lowest_first[ends.on_cycles[lowest_first]], stayed])
+    one_group = np.zeros(keys.size, np.int64)
+    found = sorter.cycles(ends, visits.end, order, one_group, MOST_CYCLES)
+    states = len(ends.x)
+    grid = Grid.over(box.low[:, None], box.high[:, None], SIDES[states])
+    parent = np.arange(grid.cells)
+    rest = stayed[found.own[stayed] < 0]
+    entered = sorter.joined(ends, rest, grid, one_group, parent)
+    keys[ends.others] = ESCAPES
     keys[order] = np.where(found.own[order] < 0, FURTHER, FIRST_CYCLE + found.own[order])
-    cycles = _cycles(ends, found, order, rank)
-    order = lowest_first[ends.others[lowest_first]]
-    visits, stayed = sorter.visits(ends, order)
-    side, states = SIDES[len(ends.x)], len(ends.x)
-    low, inverse = grid(box.low, box.high, side)
-    parent = np.arange(side**states)
-    one = np.ones(keys.size)
-    base = np.zeros(keys.size, np.int64)
-    entered = sorter.joined(ends, stayed, np.outer(low, one), np.outer(inverse, one), side, base, parent)
-    keys[order] = ESCAPES
-    keys[stayed] = FIRST_CELL + entered[stayed]
+    keys[rest] = FIRST_CELL + entered[rest]
     parent = roots(parent)
     changed = np.flatnonzero(parent != np.arange(parent.size))
     return Sighting(
         keys.reshape(region.shape),
-        cycles,
-        _entries(ends, visits, stayed, entered, rank),
+        _cycles(ends, found, rank),
+        _entries(ends, visits, rest, entered, rank),
         (changed, parent[changed]),
-        _box(visits, stayed, states),
-        order.size - stayed.size,
+        _box(visits, rest, states),
+        int(ends.others.sum()) - stayed.size,
         int(ends.steady.sum()),
     )
 
 
-def _cycles(ends: Ends, found: Cycles, order: Whole, rank: Whole) -> list[Cycle]:
-    """Return the cycles of a region, whose orbits are in the order of their ranks."""
-    told = order[found.own[order] >= 0]
+def _cycles(ends: Ends, found: Cycles, rank: Whole) -> list[Cycle]:
+    """Return the cycles of a region."""
+    told = np.flatnonzero(found.own >= 0)
+    told = told[np.argsort(found.own[told], kind="stable")]
     _, at, often = np.unique(found.own[told], return_index=True, return_counts=True)
+    lowest = np.minimum.reduceat(rank[told], at) if told.size else told
     cycles = []
-    for points, orbit, lowest, number in zip(found.points, found.firsts, told[at], often, strict=True):
+    for points, orbit, least, number in zip(found.points, found.firsts, lowest, often, strict=True):
         period = int(ends.period[orbit])
         points = points[: lcm(period, ends.word.size) // ends.word.size]
-        cycles.append(Cycle(points, period, int(rank[lowest]), int(number)))
+        cycles.append(Cycle(points, period, int(least), int(number)))
     return cycles
 
 
@@ -180,11 +195,11 @@ def _box(visits: Visits, orbits: Whole, states: int) -> Box:
 
 
 def _entries(ends: Ends, visits: Visits, orbits: Whole, entered: Whole, rank: Whole) -> Entries:
-    order = orbits[np.argsort(entered[orbits], kind="stable")]
+    order = orbits[np.lexsort((rank[orbits], entered[orbits]))]
     cells, at = np.unique(entered[order], return_index=True)
     if not cells.size:
         none = np.empty((len(ends.x), 0))
-        return Entries(cells, np.empty((2, 0), np.int64), cells, none, none, none)
+        return Entries(cells, np.empty((2, 0), np.int64), cells, none, none, none, none)
     kinds = [np.add.reduceat((ends.fate[order] == one).astype(np.int64), at) for one in _KINDS]
     return Entries(
         cells,
@@ -193,6 +208,7 @@ def _entries(ends: Ends, visits: Visits, orbits: Whole, entered: Whole, rank: Wh
         np.minimum.reduceat(visits.low[:, order], at, axis=1),
         np.maximum.reduceat(visits.high[:, order], at, axis=1),
         np.add.reduceat(visits.total[:, order], at, axis=1),
+        visits.end[:, order[at]],
     )
 
 
@@ -263,7 +279,7 @@ class Registry:
         self.parent = np.arange(cells)
         self.orbits, self.lowest = np.zeros((2, cells), np.int64), np.full(cells, np.iinfo(np.int64).max)
         self.low, self.high = np.full((states, cells), np.inf), np.full((states, cells), -np.inf)
-        self.total = np.zeros((states, cells))
+        self.total, self.end = np.zeros((states, cells)), np.zeros((states, cells))
         self.box = Box.empty(states)
         self.left_late = self.steady = 0
 
@@ -275,7 +291,9 @@ class Registry:
         entries = seen.entries
         self.kernels.unite(self.parent, *seen.joined)
         self.orbits[:, entries.cells] += entries.orbits
-        self.lowest[entries.cells] = np.minimum(self.lowest[entries.cells], entries.lowest)
+        lower = entries.lowest < self.lowest[entries.cells]
+        self.end[:, entries.cells[lower]] = entries.end[:, lower]
+        self.lowest[entries.cells[lower]] = entries.lowest[lower]
         self.low[:, entries.cells] = np.minimum(self.low[:, entries.cells], entries.low)
         self.high[:, entries.cells] = np.maximum(self.high[:, entries.cells], entries.high)
         self.total[:, entries.cells] += entries.total
@@ -307,16 +325,22 @@ class Registry:
 
     def _met(self, cycle: Cycle) -> list[int]:
         """Return the known cycles that one is the same as."""
-        if not self.cycles:
-            return []
-        near = NEAR * max(self.reach, float(np.abs(cycle.points).max()))
-        met = np.zeros(self.owner.size, np.bool_)
-        for point in cycle.points:
-            away = np.abs(self.all_points - point)
-            met |= np.minimum(away, np.abs(self.widths - away)).max(axis=1) <= near
-        found = np.unique(self.owner[met]).tolist()
+        size = max(self.reach, float(np.abs(cycle.points).max()))
+        found = sorted(set().union(*(self._near(point, NEAR * size) for point in cycle.points)))
         periods = {number: self.cycles[number].period for number in found}
         return [n for n in found if cycle.period % periods[n] == 0 or periods[n] % cycle.period == 0]
+
+    def _near(self, state: Floats, distance: float) -> set[int]:
+        """Return the known cycles that have a point near a state."""
+        away = np.abs(self.all_points - state)
+        near = np.minimum(away, np.abs(self.widths - away)).max(axis=1) <= distance
+        return set(self.owner[near].tolist())
+
+    def _on_the_way(self, cells: Whole) -> int | None:
+        """Return the cycle near which all orbits end that entered cells, if there is one."""
+        near = [self._near(state, WIDE * self.reach) for state in self.end[:, cells].T]
+        common = set.intersection(*near)
+        return min(common) if common else None
 
     def attractors(self) -> tuple[list[Attractor], dict[int, int]]:
         """Return all attractors in order, and the number of each key."""
@@ -325,7 +349,15 @@ class Registry:
         entered = np.flatnonzero(self.orbits.sum(axis=0))
         for root in np.unique(parent[entered]):
             cells = entered[parent[entered] == root]
-            found.append((self._of_cells(cells), (FIRST_CELL + cells).tolist()))
+            keys = (FIRST_CELL + cells).tolist()
+            cycle = self._on_the_way(cells)
+            if cycle is None:
+                found.append((self._of_cells(cells), keys))
+            else:
+                attractor, own_keys = found[cycle]
+                attractor.orbits += int(self.orbits[:, cells].sum())
+                attractor.lowest = min(attractor.lowest, int(self.lowest[cells].min()))
+                own_keys += keys
         found.sort(key=lambda pair: pair[0].lowest)
         numbers: dict[int, int] = {}
         for number, (attractor, keys) in enumerate(found, 1):

@@ -73,6 +73,15 @@ def test_mirrored_chaos_is_two_attractors_until_it_merges() -> None:
     assert attractor_counts(made, Region(0, 1, 0, 4)).tolist() == [[2, 2, 1, 1]]
 
 
+def test_an_orbit_that_is_slow_to_reach_a_cycle_is_counted_there() -> None:
+    # the multiplier of the lower fixed point is -0.9991; the upper one is the other attractor
+    made = finder(
+        CUBIC, ("a", "-0.1265635", "-0.1265615"), ("b", "1.80312", "1.80313"), (1, 1),
+        starts=starts_at(*np.linspace(-1.2, 1.2, 49).round(3).tolist()), rules=FateRules(),
+    )  # fmt: skip
+    assert attractor_counts(made, Region(0, 1, 0, 1)).tolist() == [[2]]
+
+
 def test_counts_are_those_of_a_slow_twin_in_any_region() -> None:
     starts = (-1.3, -0.4, 0.2, 0.9, 1.9)
     made = finder(CUBIC, ("a", "-0.4", "0.4"), ("b", "1.3", "2.9"), (7, 6), starts=starts_at(*starts))

@@ -155,6 +155,14 @@ def test_the_number_of_an_attractor_is_that_of_its_lowest_start() -> None:
     assert firsts == sorted(firsts) == [one.lowest for one in basins.attractors]
 
 
+def test_orbits_that_are_slow_to_reach_a_cycle_are_in_its_basin() -> None:
+    slow = {"a": "-0.1265625", "b": "1.803125"}
+    made = finder(CUBIC, ("x", "-1.2", "1.2"), ("y", -1, 1), (300, 8), rules=FateRules(), **slow)
+    basins = chart(made)
+    assert sorted(one.fate for one in basins.attractors) == [FIXED_POINT, FIXED_POINT]
+    assert sum(one.orbits for one in basins.attractors) == 2400
+
+
 def _described(basins: Basins) -> list[Any]:
     return [
         (one.number, one.fate, one.period, one.orbits, one.lowest, one.points.tolist(), one.low.tolist())
