@@ -17,7 +17,7 @@ OUTPUT_NAMES = frozenset(
     {
         *("counts", "density", "exposure", "below", "above", "escaped", "unsettled", "collapsed"),
         *("fate", "period", "lyapunov", "lyapunov_2", "lyapunov_error", "rotation", "escape"),
-        *("attractors", "basin", "attractor"),
+        *("attractors", "basin", "attractor", "left", "right", "filled", "on_repelling", "sweep"),
     }
 )
 """Variables of the datasets whose dimensions carry the names of state variables and parameters."""

@@ -81,6 +81,13 @@ class Spectra(Pixels):
             sums = growth[:, -1, order].sum(axis=0) / self.measured
         self.errors[:, order] = np.where(np.isfinite(errors), errors, np.nan)
         self.sums[order] = sums
+        self._sort(order)
+
+    def _sort(self, order: Order) -> None:
+        """Put the largest exponent first where tangent vectors never left an invariant direction."""
+        ranks = np.argsort(-self.exponents[:, order], axis=0, kind="stable")
+        for values in (self.exponents, self.errors):
+            values[:, order] = np.take_along_axis(values[:, order], ranks, axis=0)
 
     def dimensions(self) -> Floats:
         """Return the Kaplan-Yorke dimension of every orbit; NaN where it escapes or is unsettled."""

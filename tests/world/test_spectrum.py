@@ -140,6 +140,12 @@ def test_coupled_maps_in_step_lose_what_the_coupling_takes(coupling: str) -> Non
     assert (second < 0) == (0.25 < float(coupling) < 0.75)
 
 
+def test_the_larger_exponent_comes_first_where_the_coupling_overshoots() -> None:
+    """In step at eps = 1.2 differences grow faster than the common state: ln |1 - 2 eps| = ln 1.4."""
+    found = spectrum("coupled_logistic", {"r": 4, "eps": "1.2"}, starts=[{"x": "0.3", "y": "0.3"}])
+    np.testing.assert_allclose(found.lyapunov[0], [math.log(2) + math.log(1.4), math.log(2)], atol=1e-4)
+
+
 INSECTS = published("lpa97.seq")
 
 
