@@ -207,3 +207,31 @@ def test_the_cases_meet_every_decision() -> None:
     ways = {"approaching", "approached, then met", "approached, then unsettled", "measured anew"}
     ways |= {"near a repelling cycle", "tests disagree", "collapsed", "repelling start"}
     assert met >= {*FATES, *ways}
+
+
+def test_orbits_that_linger_and_then_escape_are_no_fixed_points() -> None:
+    assert {FATES[fate] for fate in CASES["lingering"].found().fate} == {"escapes"}
+
+
+def test_a_cycle_of_period_2_makes_half_a_turn_a_step_about_its_mean() -> None:
+    finder = CASES["lozi"].finder()
+    found = finder.find(WHOLE, start=1)
+    turns = rotation(found, finder.winding)[found.period == 2]
+    assert turns.size > 3
+    assert set(turns) == {0.5}
+
+
+def test_the_slow_map_computes_what_its_formulas_say() -> None:
+    a, b, x, y = 1.37, 0.29, 0.6180339887, -0.21
+    henon = SlowMap(family("henon"), {"a": a, "b": b})
+    assert henon.step((x, y), 5) == (1 - a * (x * x) + y, b * x)
+    assert henon.jacobian((x, y), 0)[0][1] == 1.0
+    assert henon.jacobian((x, y), 0)[1] == [b, 0.0]
+    np.testing.assert_allclose(henon.jacobian((x, y), 0)[0][0], -2 * a * x, rtol=1e-15)
+    forced = SlowMap(family("forced_logistic"), {"a": 3.1, "b": 3.7})
+    assert [forced.step((0.3,), time)[0] for time in range(3)] == [
+        r * 0.3 * (1 - 0.3) for r in (3.1, 3.7, 3.1)
+    ]
+    turning = SlowMap(family("circle"), {"Omega": 0.75, "K": 0.0})
+    assert (turning.lift((0.5,), 0), turning.step((0.5,), 0)) == ((1.25,), (0.25,))
+    assert turning.distance((0.9375,), (0.0625,)) == 0.125
