@@ -134,9 +134,11 @@ def _plate_request(plate: Plate) -> PlateRequest:
 def legend_labels(plate: Plate) -> tuple[str, ...]:
     """Return the longest labels that the legend of a plate may have; none where it has no legend."""
     if plate.kind == "follow":
-        return (f"{plate.across.name} falling",)
-    if plate.by_attractor or plate.draw == "basin":
-        return ("attractor 10",)
+        return ("upward", "downward")
+    if plate.by_attractor:
+        return ("attractor 10", "no attractor found")
+    if plate.draw == "basin":
+        return ("10: quasi-periodic", f"10: period {plate.longest_period}")
     if plate.draw == "attractors":
         return ("10 attractors",)
     if plate.draw in ("fate", "period"):

@@ -69,9 +69,10 @@ def test_labels_fit_the_width_that_is_reserved_for_them(dpi: float) -> None:
         "quasi-periodic",
         "period 4096",
         "fixed point",
-        "r falling",
+        "downward",
         "10 attractors",
-        "share 41.2 ± 0.3 %",
+        "no attractor found",
+        "10: quasi-periodic",
     )
     with settings():
         setter = Typesetter(dpi)
