@@ -290,7 +290,7 @@ def test_only_what_is_coloured_by_kind_has_a_legend() -> None:
         "portrait",
         "histogram",
     ]
-    assert widths["fate"] > widths["basin"] > widths["follow"] > 3
+    assert widths["basin"] > widths["fate"] > widths["follow"] > 3
 
 
 def test_requests_come_from_a_config() -> None:
