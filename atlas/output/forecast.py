@@ -52,7 +52,7 @@ def room_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAUL
         return _room_of_tile_set(record, workers, budget)
     sheet = sheet_of(record)
     samples = sum(maker_of(view.plate).room(view).samples for view in sheet.views)
-    return Need(record.pixels, samples, 0.0, sheet.memory)
+    return Need(record.pixels, samples, 0.0, sheet.memory(workers))
 
 
 def need_of(record: Plate | Figure | TileSet, workers: int, budget: int = DEFAULT_MEMORY) -> Need:

@@ -70,11 +70,14 @@ class Room:
         Bytes that are alive beside the finished rasters at the peak.
     raster : int
         Bytes of the finished raster.
+    each_worker : int
+        Bytes that every thread works with, and that wait for their turn.
     """
 
     samples: int
     working: int
     raster: int
+    each_worker: int = 0
 
 
 class Maker(Protocol):

@@ -15,7 +15,7 @@ from atlas.figure.boxes import Layout
 from atlas.figure.layout import layout
 from atlas.figure.panels import request_of
 from atlas.figure.typeset import check_characters
-from atlas.orbits.schedule import Schedule, schedule
+from atlas.orbits.schedule import Schedule, schedule, threads
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_files, check_folder
 from atlas.output.panel import Maker, View, label_of
@@ -60,14 +60,14 @@ class Sheet:
     page: Layout
     views: tuple[View, ...]
 
-    @property
-    def memory(self) -> int:
-        """Estimated peak memory of the process in bytes while it is made."""
+    def memory(self, workers: int) -> int:
+        """Return the estimated peak memory of the process in bytes while it is made."""
         rooms = [maker_of(view.plate).room(view) for view in self.views]
         width, height = self.record.pixels
         coloured = any(room.raster > view.cells for room, view in zip(rooms, self.views, strict=True))
         page = _page_memory(width * height, self.record.formats, coloured)
-        return _sheet_memory(page, [room.raster for room in rooms], [room.working for room in rooms])
+        working = [room.working + workers * room.each_worker for room in rooms]
+        return _sheet_memory(page, [room.raster for room in rooms], working)
 
     def files(self, out: Path) -> dict[str, Path]:
         """Return the file of each format in an output folder."""
@@ -224,7 +224,8 @@ def draw_plate(
     """
     files = files_by_format([Path(path) for path in out])
     sheet = sheet_of(replace(plate, formats=tuple(files)))
-    check_fits(sheet.record.name, sheet.record.pixels, sheet.memory, parse_memory(memory))
+    needed = sheet.memory(threads(workers))
+    check_fits(sheet.record.name, sheet.record.pixels, needed, parse_memory(memory))
     check_lettering(sheet)
     for path in files.values():
         check_folder(path.parent)

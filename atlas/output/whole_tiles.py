@@ -199,8 +199,7 @@ def make_basin_tiles(
     make_site(places.growing_index, places.site, colours_of(job), opened, reporter, places.growing_site)
     with written(places.index):
         os.replace(places.growing_index, places.index)
-    shares_told = [told(one) for one in basins.attractors]
-    return Made(starts, record, tuple(remarks_on_basins(job.name, shares, shares_told)))
+    return Made(starts, record, tuple(remarks_on_basins(job.name, shares, told(basins))))
 
 
 def _certify(index: PlaneIndex, record: Mapping[str, Any]) -> None:
@@ -216,5 +215,5 @@ def _basin_names(basins: Basins) -> dict[str, str]:
     names = {str(number): name for number, name in CLASS_NAMES.items() if number >= 60_000}
     names |= {str(one.number): f"{one.number}: {kind_of(one)}" for one in basins.attractors}
     if basins.further:
-        names[str(len(basins.attractors) + 1)] = f"{basins.further} further attractors"
+        names[str(len(basins.attractors) + 1)] = f"{basins.further} further"
     return names | {"period": "attractor {}"}

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from atlas.attractors.basins import Basins, chart_basins
 from atlas.attractors.registry import Attractor
@@ -10,16 +11,17 @@ from atlas.figure.legends import class_legend
 from atlas.figure.pieces import LegendEntry, PanelText, Raster
 from atlas.orbits.schedule import Schedule
 from atlas.output.panel import Panel, Room, View, label_of
-from atlas.output.panels.plane import finding_seconds, record_of
+from atlas.output.panels.plane import finding_seconds, record_of, worker_memory
 from atlas.output.remarks import remarks_on_basins
 from atlas.output.reporter import PREPARING, Reporter
-from atlas.planes.fates import FATES, class_name
+from atlas.planes.fates import CLASS_OF_FATE, FATES, class_name
 from atlas.planes.searching import finder_of
 from tiles.classes import class_shades, class_table
 from tiles.mixing import mixed
 
-BYTES_PER_PIXEL = 7
-MOST_LISTED = 12
+BYTES_PER_PIXEL, BYTES_OF_SIGHTINGS = 7, 16 << 20
+"""Keys, classes and shades; and what regions that wait for their turn have seen, a thread."""
+LINES_SHADED, MOST_LISTED = 64, 12
 
 
 class BasinMaker:
@@ -30,7 +32,8 @@ class BasinMaker:
         finder = finder_of(view.plate, view.columns, view.rows)
         starts = finder.columns * finder.rows
         raster = (3 if view.plate.supersampling > 1 else 1) * view.cells
-        return Room(starts, BYTES_PER_PIXEL * starts, raster)
+        each_worker = worker_memory(finder) + BYTES_OF_SIGHTINGS
+        return Room(starts, BYTES_PER_PIXEL * starts, raster, each_worker)
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
@@ -44,7 +47,7 @@ class BasinMaker:
         finder.warm()
         reporter.begin(name, "finding basins", finder.columns * finder.rows)
         basins = chart_basins(finder, schedule, reporter.advance)
-        lines = np.ascontiguousarray(class_shades(basins.classes.T[::-1]))
+        lines = _shades(basins.classes)
         table = class_table()
         if plate.supersampling == 1:
             raster = Raster(lines, table, plate.view)
@@ -61,17 +64,28 @@ class BasinMaker:
             sampled,
             finder.columns * finder.rows,
             basins.digest(),
-            tuple(remarks_on_basins(view.name, basins.shares(), [told(one) for one in basins.attractors])),
+            tuple(remarks_on_basins(view.name, basins.shares(), told(basins))),
         )
 
 
 def legend_of_basins(basins: Basins) -> tuple[LegendEntry, ...]:
     """Return the legend of a chart: attractors by number, then what reaches none."""
-    found = [int(number) for number in np.unique(basins.classes)]
+    found = [one.number for one in basins.attractors] + [CLASS_OF_FATE[fate] for fate in basins.fates]
     names = {one.number: f"{one.number}: {kind_of(one)}" for one in basins.attractors}
     if basins.further:
-        names[len(basins.attractors) + 1] = f"{basins.further} further attractors"
+        found.append(len(basins.attractors) + 1)
+        names[found[-1]] = f"{basins.further} further"
     return class_legend(found, lambda number: names.get(number) or class_name(number))
+
+
+def _shades(classes: NDArray[np.uint16]) -> NDArray[np.uint8]:
+    """Return palette indices, top line first, a few lines at once: the look-up takes its own room."""
+    lines = np.empty(classes.shape[::-1], np.uint8)
+    turned = classes.T[::-1]
+    for first in range(0, len(lines), LINES_SHADED):
+        some = slice(first, first + LINES_SHADED)
+        lines[some] = class_shades(turned[some])
+    return lines
 
 
 def kind_of(attractor: Attractor) -> str:
@@ -79,11 +93,17 @@ def kind_of(attractor: Attractor) -> str:
     return f"period {attractor.period}" if attractor.period > 1 else FATES[attractor.fate]
 
 
-def told(attractor: Attractor) -> str:
-    """Return a sentence's part about the share of an attractor's basin."""
-    return (
-        f"attractor {attractor.number} ({kind_of(attractor)}) {attractor.share:.2%} ± {attractor.error:.2%}"
-    )
+def told(basins: Basins) -> list[str]:
+    """Return a sentence's parts about the shares of basins: the largest in order of number, then the rest."""
+    largest = sorted(basins.attractors, key=lambda one: -one.share)
+    listed = sorted(largest[:MOST_LISTED], key=lambda one: one.number)
+    parts = [
+        f"attractor {one.number} ({kind_of(one)}) {one.share:.2%} ± {one.error:.2%}" for one in listed
+    ]
+    others = largest[MOST_LISTED:]
+    if others:
+        parts.append(f"{len(others)} smaller ones {sum(one.share for one in others):.2%} together")
+    return parts
 
 
 def attractor_record(attractor: Attractor) -> dict[str, object]:

@@ -17,7 +17,8 @@ from atlas.output.remarks import remarks_on
 from atlas.output.reporter import PREPARING, Reporter
 
 NAMES = {"up": "upward", "down": "downward"}
-BYTES_WHILE_INKED = 3 * BYTES_PER_COUNT
+BYTES_WHILE_INKED = 2 * BYTES_PER_COUNT
+"""A cell of each sweep: its count, and that in the counts of all sweeps that the fit is made to."""
 SLOWNESS = 4.0
 """Columns in series fill the lanes badly: measured against columns side by side."""
 

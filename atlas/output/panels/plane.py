@@ -17,17 +17,21 @@ from atlas.orbits.step import step_source
 from atlas.output.panel import Panel, Room, View, label_of
 from atlas.output.remarks import remarks_on_fates
 from atlas.output.reporter import PREPARING, Reporter
-from atlas.planes.fates import CLASS_NONE, class_name
+from atlas.planes.fates import CLASS_NAMES, CLASS_NONE, class_name
 from atlas.planes.finder import FateFinder, Region
 from atlas.planes.layers import Values, classes_of
 from atlas.planes.searching import finder_of
-from atlas.planes.survey import Tally, layers_of, survey
+from atlas.planes.survey import PIXELS_AT_ONCE, Tally, layers_of, survey
 from tiles.classes import class_shades, class_table
 from tiles.mixing import mixed
 from tiles.shading import colour_table
 from tiles.values import fit_values, shade_values, value_key_labels
 
 SECONDS_PER_STEP, SECONDS_PER_SLOW_CALL = 0.7e-9, 1.2e-9
+BYTES_PER_VALUE, BYTES_PER_FITTED = 4, 24
+BYTES_PER_ORBIT, BYTES_PER_STATE, BYTES_WAITING = 160, 640, 256
+"""Measured: what a thread holds of an orbit, and of each of its states; results of all regions in hand."""
+FITTED_PIXELS, LINES_SHADED = 1 << 22, 64
 CAPTIONS = {
     "lyapunov": "largest Lyapunov exponent (per step)",
     "lyapunov_2": "second Lyapunov exponent (per step)",
@@ -45,9 +49,11 @@ class PlaneMaker:
         """Return what a view needs."""
         finder = finder_of(view.plate, view.columns, view.rows)
         pixels = finder.columns * finder.rows
-        each = 1 if DRAWS[view.plate.draw].palette_kind == "categorical" else 4 + 8
-        raster = (3 if view.plate.supersampling > 1 else 1) * view.cells
-        return Room(pixels, each * pixels, raster)
+        smooth = view.plate.supersampling > 1
+        working = pixels if smooth else 0
+        if DRAWS[view.plate.draw].palette_kind != "categorical":
+            working += BYTES_PER_VALUE * pixels + BYTES_PER_FITTED * min(pixels, FITTED_PIXELS)
+        return Room(pixels, working, (3 if smooth else 1) * view.cells, worker_memory(finder))
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
@@ -85,6 +91,12 @@ class PlaneMaker:
             picture.digest(),
             tuple(remarks_on_fates(view.name, shares)),
         )
+
+
+def worker_memory(finder: FateFinder) -> int:
+    """Return the bytes that a thread works with, and of the regions that wait for their turn."""
+    states = len(finder.family.states)
+    return PIXELS_AT_ONCE * (BYTES_PER_ORBIT + BYTES_PER_STATE * states + BYTES_WAITING)
 
 
 def finding_seconds(finder: FateFinder) -> float:
@@ -135,8 +147,7 @@ class _Classes:
     def finished(self) -> tuple[Raster, PanelText]:
         """Return the raster and its lettering."""
         plate, table = self.view.plate, class_table()
-        listed = sorted(number for number in self.classes if number != CLASS_NONE)
-        legend = tuple(class_legend(listed, _count_name if self.draw == "attractors" else class_name))
+        legend = class_legend(self.classes, _count_name if self.draw == "attractors" else class_name)
         text = PanelText(label_of(plate, plate.across), label_of(plate, plate.up), legend=legend)
         if self.factor == 1:
             return Raster(self.lines, table, plate.view), text
@@ -169,9 +180,12 @@ class _Values:
     def finished(self) -> tuple[Raster, PanelText]:
         """Return the raster and its lettering."""
         plate = self.view.plate
-        fit = fit_values(self.values, kind=_kind(plate), shading=plate.shading)
+        fit = fit_values(fitted_part(self.values), kind=_kind(plate), shading=plate.shading)
         table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
-        shades = shade_values(self.values, fit)
+        shades = np.empty(self.values.shape, np.uint8)
+        for first in range(0, len(shades), LINES_SHADED):
+            lines = slice(first, first + LINES_SHADED)
+            shades[lines] = shade_values(self.values[lines], fit)
         text = PanelText(
             label_of(plate, plate.across),
             label_of(plate, plate.up),
@@ -188,7 +202,17 @@ class _Values:
         return self.hash.hexdigest()
 
 
+def fitted_part(values: NDArray[Any]) -> NDArray[Any]:
+    """Return what a fit is made to: of more than four million pixels every second, fourth, … both ways."""
+    step = 1
+    while -(-values.shape[0] // step) * -(-values.shape[1] // step) > FITTED_PIXELS:
+        step *= 2
+    return values[::step, ::step]
+
+
 def _count_name(number: int) -> str:
+    if number == CLASS_NONE:
+        return CLASS_NAMES[CLASS_NONE]
     return f"{number} attractor{'s' * (number > 1)}"
 
 

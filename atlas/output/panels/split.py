@@ -53,7 +53,7 @@ class SplitMaker:
             split, cell, exposure = _histogram(view, name, schedule, reporter)
         shown = [*split.present, *([0] if split.layers[0].any() else [])]
         layered = Layered(
-            np.ascontiguousarray(split.layers[shown]) if len(shown) < len(split.layers) else split.layers,
+            split.layers[shown],
             np.full(view.columns, exposure, np.uint64),
             cell,
             [f"attractor {number}" if number else NO_ATTRACTOR for number in shown],
