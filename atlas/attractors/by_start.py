@@ -6,17 +6,20 @@ as the one that its own end state reaches when it is run on at the next paramete
 see who moves the parameter slowly, up the axis. An attractor keeps its number as long as it continues. Where
 two continue as the same, it keeps the number of the nearer one: that whose end state, before it is run on,
 lies nearest to one of 1024 states of the attractor; so the number of an attractor that vanishes in a fold or
-a crisis ends there. An attractor that none continues as gets the next number, numbers beginning with 1 at the
-first value in the order of the lowest starts that reach them; none is given twice.
+a crisis ends there. An attractor that none continues as takes over the number that was lost last, if that
+was within the last 64 values: coexisting chaos is not always recognised, and no start may have settled at a
+value. Else it gets the next number, numbers beginning with 1 at the first value in the order of the lowest
+starts that reach them.
 
 So numbers can change where an attractor comes and goes within the starts' reach: one that no start reaches
-for a value or two is new when it is reached again; an attractor that returns after a fold (hysteresis seen
+for longer is new when it is reached again; an attractor that returns after a fold (hysteresis seen
 against its direction) is new; two that merge leave one number, and which of two that part keeps it is decided
 by the end state, which may be on either. Numbers beyond ``most`` are joined in the last.
 """
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import partial
 
@@ -35,6 +38,8 @@ from atlas.planes.pixels import Pixels
 MOST_TOLD_APART = 8
 VALUES_AT_ONCE = 256
 ORBITS_AT_ONCE = 1 << 16
+MISSED = 64
+"""Values for which the number of an attractor that ended is kept for one that begins."""
 STATES_COMPARED = 1024
 """States of an attractor that an end state is compared with."""
 
@@ -188,24 +193,52 @@ def attractor_numbers(
         return reached
 
     numbers = np.zeros((sorter.size, len(sorter.starts)), np.uint8)
-    names: dict[int, int] = {}
-    given = 0
+    names = _Names()
     row = 0
 
     def done(reached: Reached) -> None:
-        nonlocal names, given, row
+        nonlocal row
         for value in range(min(width, sorter.size - row)):
-            for attractor in range(int(reached.number[value].max()) + 1):
-                if attractor not in names:
-                    given += 1
-                    names[attractor] = given
-            own = reached.number[value]
-            numbers[row] = [min(names[one], most) if one >= 0 else 0 for one in own.tolist()]
+            own = reached.number[value].tolist()
+            names.give(range(max(own) + 1))
+            numbers[row] = [min(names.of[one], most) if one >= 0 else 0 for one in own]
             row += 1
             if value < len(reached.onward):
-                links = enumerate(reached.onward[value].tolist())
-                names = {target: names[one] for one, target in links if target >= 0}
+                names.hand_on(reached.onward[value].tolist())
 
     sorter.finder.warm()
     schedule.run((partial(group, first) for first in range(0, sorter.size, width)), done)
     return numbers
+
+
+class _Names:
+    """The numbers of the attractors of one value after the other."""
+
+    def __init__(self) -> None:
+        self.of: dict[int, int] = {}
+        self.lost: dict[int, int] = {}
+        self.given = self.value = 0
+
+    def give(self, attractors: Iterable[int]) -> None:
+        """Give a number to every attractor that has none: one lost of late, else the next."""
+        for attractor in attractors:
+            if attractor in self.of:
+                continue
+            recent = [one for one, value in self.lost.items() if self.value - value <= MISSED]
+            if recent:
+                name = max(recent, key=lambda one: (self.lost[one], -one))
+                del self.lost[name]
+            else:
+                self.given += 1
+                name = self.given
+            self.of[attractor] = name
+
+    def hand_on(self, onward: Sequence[int]) -> None:
+        """Go to the next value, where each attractor continues as ``onward`` says; -1 where it ends."""
+        before, self.of = self.of, {}
+        for attractor, target in enumerate(onward):
+            if target >= 0 and attractor in before:
+                self.of[target] = before[attractor]
+        for name in set(before.values()) - set(self.of.values()):
+            self.lost[name] = self.value
+        self.value += 1

@@ -5,6 +5,7 @@ from __future__ import annotations
 from hashlib import blake2b
 
 import numpy as np
+from numpy.typing import NDArray
 
 from atlas.attractors.split_counts import SplitCounts, split_histogram, split_portrait
 from atlas.config.jobs import Job
@@ -21,7 +22,8 @@ from atlas.planes.pixels import FateRules
 from tiles.mixing import INKS
 
 MOST = len(INKS) - 1
-NO_ATTRACTOR = "no attractor found"
+LEAST_SHARE = 1e-3
+OTHERS = "others"
 
 
 class SplitMaker:
@@ -51,13 +53,8 @@ class SplitMaker:
             split, cell, exposure = _portrait(view, name, schedule, reporter)
         else:
             split, cell, exposure = _histogram(view, name, schedule, reporter)
-        shown = [*split.present, *([0] if split.layers[0].any() else [])]
-        layered = Layered(
-            split.layers[shown],
-            np.full(view.columns, exposure, np.uint64),
-            cell,
-            [f"attractor {number}" if number else NO_ATTRACTOR for number in shown],
-        )
+        counts, names = told_apart(split.layers)
+        layered = Layered(counts, np.full(view.columns, exposure, np.uint64), cell, names)
         raster, legend = overprinted(plate, plate.view, layered, branches=plate.kind == "histogram")
         shares = _shares(split)
         sampled = {
@@ -76,6 +73,27 @@ class SplitMaker:
             _digest(split),
             tuple(remarks_on(view.name, shares)),
         )
+
+
+def told_apart(layers: NDArray[np.uint32]) -> tuple[NDArray[np.uint32], list[str]]:
+    """Return the densities that get an ink each, and what the legend calls them.
+
+    Attractors with less than a thousandth of the counts, mostly such as were not recognised at a few parameter
+    values, are joined with what reaches no attractor; the others are numbered anew.
+
+    Parameters
+    ----------
+    layers : ndarray of uint32, shape (most + 1, columns, rows)
+        As `atlas.attractors.split_counts` returns them.
+    """
+    sums = layers.sum(axis=(1, 2), dtype=np.uint64)
+    large = [number for number in range(1, len(layers)) if sums[number] >= LEAST_SHARE * sums.sum()]
+    rest = [number for number in range(len(layers)) if number not in large and sums[number] > 0]
+    names = [f"attractor {number}" for number in range(1, len(large) + 1)]
+    if not rest and large:
+        return layers[large], names
+    others = layers[rest].sum(axis=0, dtype=np.uint32)
+    return np.concatenate([layers[large], others[None]]), [*names, OTHERS]
 
 
 def _histogram(
