@@ -11,17 +11,30 @@ from atlas.figure.lettering import axis_text, plain
 from atlas.figure.pieces import PanelText, Raster
 from atlas.orbits.schedule import Schedule
 from atlas.output.reporter import Reporter
+from tiles.values import ValueFit
 from tiles.window import Axis
 
 
 @dataclass(frozen=True)
 class View:
-    """One raster to be made: its name on the page, its plate, its pixels."""
+    """One raster to be made.
+
+    Attributes
+    ----------
+    name : str
+        On the page.
+    plate : Plate
+    columns, rows : int
+        Its pixels.
+    fit : ValueFit, optional
+        Of the panel whose magnified part it is, so that one colour key holds for both.
+    """
 
     name: str
     plate: Plate
     columns: int
     rows: int
+    fit: ValueFit | None = None
 
     @property
     def cells(self) -> int:
@@ -47,6 +60,8 @@ class Panel:
         Of the numbers behind the picture.
     remarks : tuple of str
         What must not go unsaid.
+    fit : ValueFit, optional
+        Of a picture of values.
     """
 
     raster: Raster
@@ -56,6 +71,7 @@ class Panel:
     samples: int
     digest: str
     remarks: tuple[str, ...] = ()
+    fit: ValueFit | None = None
 
 
 @dataclass(frozen=True)

@@ -18,7 +18,7 @@ from atlas.figure.typeset import check_characters
 from atlas.orbits.schedule import Schedule, schedule, threads
 from atlas.output.certificate import certificate
 from atlas.output.folders import check_files, check_folder
-from atlas.output.panel import Maker, View, label_of
+from atlas.output.panel import Maker, Panel, View, label_of
 from atlas.output.panels.basin import BasinMaker
 from atlas.output.panels.follow import FollowMaker
 from atlas.output.panels.histogram import HistogramMaker
@@ -33,6 +33,8 @@ BYTES_PER_COUNT, BYTES_PER_PIXEL, TIFF_BYTES_PER_PIXEL, DRAWING_MEMORY = 4, 1, 5
 """What is alive at the peaks, measured: the counts of a raster, or the page with its encoder and its type."""
 COLOURED_BYTES_PER_PIXEL = 4
 """Of a page whose rasters are colours, not palette indices: three and the encoder's."""
+
+INSET = "/inset"
 
 MAKERS: dict[str, Maker] = {
     "histogram": HistogramMaker(),
@@ -105,8 +107,17 @@ def sheet_of(record: Plate | Figure) -> Sheet:
         inset = plate.inset_plate()
         if inset is not None and panel.inset is not None:
             box = panel.inset.raster
-            views.append(View(f"{panel.name}/inset", inset, box.width, box.height))
+            _check_inset(inset)
+            views.append(View(panel.name + INSET, inset, box.width, box.height))
     return Sheet(record, page, tuple(views))
+
+
+def _check_inset(inset: Plate) -> None:
+    if inset.kind == "basin" or inset.by_attractor:
+        raise PlanRefused(
+            f"{inset.name}: attractors are numbered anew in every window, and would have other colours in "
+            "the inset; draw it as a plate of its own"
+        )
 
 
 def check_lettering(sheet: Sheet) -> None:
@@ -171,10 +182,12 @@ def make_sheet(sheet: Sheet, files: dict[str, Path], schedule: Schedule, reporte
     OutputFailed
         When a file cannot be written.
     """
-    panels = {
-        view.name: maker_of(view.plate).make(view, sheet.record.name, schedule, reporter)
-        for view in sheet.views
-    }
+    panels: dict[str, Panel] = {}
+    for view in sheet.views:
+        magnified = panels.get(view.name.removesuffix(INSET))
+        fit = magnified.fit if magnified else None
+        maker = maker_of(view.plate)
+        panels[view.name] = maker.make(replace(view, fit=fit), sheet.record.name, schedule, reporter)
     record = certificate(
         "figure" if isinstance(sheet.record, Figure) else "plate",
         sheet.record.name,

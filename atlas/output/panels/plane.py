@@ -25,7 +25,7 @@ from atlas.planes.survey import PIXELS_AT_ONCE, Tally, layers_of, survey
 from tiles.classes import class_shades, class_table
 from tiles.mixing import mixed
 from tiles.shading import colour_table
-from tiles.values import fit_values, shade_values, value_key_labels
+from tiles.values import ValueFit, fit_values, shade_values, value_key_labels
 
 SECONDS_PER_STEP, SECONDS_PER_SLOW_CALL = 0.7e-9, 1.2e-9
 BYTES_PER_VALUE, BYTES_PER_FITTED = 4, 24
@@ -90,6 +90,7 @@ class PlaneMaker:
             finder.columns * finder.rows,
             picture.digest(),
             tuple(remarks_on_fates(view.name, shares)),
+            picture.fit,
         )
 
 
@@ -119,6 +120,7 @@ class _Classes:
 
     def __init__(self, view: View, finder: FateFinder) -> None:
         self.view, self.draw, self.factor = view, view.plate.draw, view.plate.supersampling
+        self.fit: ValueFit | None = None
         self.lines = np.empty((finder.rows, finder.columns), np.uint8)
         self.classes: dict[int, int] = {}
         self.hash = blake2b(digest_size=16)
@@ -162,7 +164,7 @@ class _Values:
     """A picture of values of the small pixels."""
 
     def __init__(self, view: View, finder: FateFinder) -> None:
-        self.view, self.layers = view, (view.plate.draw,)
+        self.view, self.layers, self.fit = view, (view.plate.draw,), view.fit
         self.values = np.empty((finder.rows, finder.columns), np.float32)
         self.hash = blake2b(digest_size=16)
 
@@ -180,7 +182,8 @@ class _Values:
     def finished(self) -> tuple[Raster, PanelText]:
         """Return the raster and its lettering."""
         plate = self.view.plate
-        fit = fit_values(fitted_part(self.values), kind=_kind(plate), shading=plate.shading)
+        fit = self.fit or fit_values(fitted_part(self.values), kind=_kind(plate), shading=plate.shading)
+        self.fit = fit
         table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
         shades = np.empty(self.values.shape, np.uint8)
         for first in range(0, len(shades), LINES_SHADED):
