@@ -40,8 +40,8 @@ TABLE = """
 12  atlas.arithmetic.float64 atlas.figure.ticks atlas.formula.algebra atlas.formula.evaluation
 12  atlas.formula.formula_text atlas.formula.grammar atlas.formula.symbolic atlas.points.tables
 12  atlas.reading.kinds atlas.reading.yaml_text
-13  atlas.figure.boxes atlas.formula.differentiation atlas.orbits.volumes atlas.points.cells
-13  atlas.points.files atlas.reading.section
+13  atlas.figure.boxes atlas.formula.differentiation atlas.orbits.volumes atlas.output.dataset_parts
+13  atlas.points.cells atlas.points.files atlas.reading.section
 14  atlas.figure.pieces atlas.figure.vector_files atlas.formula.expression atlas.planes.pixels
 14  atlas.points.opening atlas.reading.orbit_kinds atlas.reading.view_kinds
 15  atlas.attractors.ends atlas.families.kinds atlas.families.patterns atlas.families.records

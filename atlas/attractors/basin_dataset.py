@@ -14,9 +14,9 @@ from atlas.families.map_family import Family
 from atlas.orbits.schedule import schedule
 from atlas.output.certificate import as_text, certificate
 from atlas.output.certificate_reader import KEY
+from atlas.output.dataset_parts import KIND, Number, axis_attributes, cells_of
 from atlas.plan import check_layers, parse_memory
 from atlas.planes.fates import CLASS_NAMES, CLASS_OF_FATE, FATES
-from atlas.planes.plane_dataset import KIND, Number, axis_attributes, cells_of
 from atlas.planes.searching import finder_of
 from atlas.reading.place import REQUEST, shown
 from tiles.window import View

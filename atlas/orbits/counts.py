@@ -4,8 +4,6 @@ from __future__ import annotations
 
 import json
 from collections.abc import Callable, Mapping, Sequence
-from decimal import Decimal
-from fractions import Fraction
 from hashlib import blake2b
 from typing import Any
 
@@ -24,18 +22,14 @@ from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import schedule
 from atlas.output.certificate import as_text, certificate
 from atlas.output.certificate_reader import KEY
+from atlas.output.dataset_parts import KIND, Number, axis_attributes, cells_of
 from atlas.plan import check_arrays, parse_memory
-from atlas.reading.kinds import Whole
-from atlas.reading.place import REQUEST, Place, shown
-from tiles.number import Exact
+from atlas.reading.place import REQUEST, shown
 from tiles.strip import PER_COLUMN, Strip
 from tiles.tally import density
-from tiles.window import Axis, View
+from tiles.window import View
 
-Number = str | int | float | Fraction | Decimal | Exact
-KIND = "dataset"
 CELLS_AT_ONCE = 1 << 20
-_CELLS = Whole(1, 1 << 31)
 
 
 def orbit_counts(
@@ -171,14 +165,6 @@ def _side_by_side(sweeps: Mapping[str, Any]) -> Any:
     return both
 
 
-def cells_of(size: Any, place: Place) -> tuple[int, int]:
-    """Return a resolution, refused where it is none."""
-    if not isinstance(size, tuple | list) or len(size) != 2:
-        raise place.refusal(f"{shown(size)} is no resolution; write (columns, rows)")
-    across, up = (_CELLS.read(cells, place.at(number)) for number, cells in enumerate(size, 1))
-    return across, up
-
-
 def dataset(job: Plate, counter: OrbitCounter, histogram: Histogram) -> Any:
     """Return a histogram as an xarray Dataset, as `orbit_counts` describes it."""
     family, digest = job.family, histogram.digest()
@@ -236,17 +222,6 @@ def labelled(
     for axis in (view.across, view.up):
         made[axis.name].attrs = axis_attributes(axis, *label_and_unit(axis.name))
     return made
-
-
-def axis_attributes(axis: Axis, label: str, unit: str) -> dict[str, Any]:
-    """Return what a coordinate says of its axis."""
-    return {
-        "long_name": axis.label or label or axis.name,
-        "units": unit,
-        "scale": axis.scale,
-        "low": str(axis.low),
-        "high": str(axis.high),
-    }
 
 
 def _densities(strip: Strip, cell: float) -> NDArray[np.float64]:

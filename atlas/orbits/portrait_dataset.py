@@ -14,12 +14,13 @@ from atlas.config.jobs import Plate
 from atlas.config.load import plate_from_parts
 from atlas.families.map_family import Family
 from atlas.orbits.counting import portrait_of, resolved_portrait
-from atlas.orbits.counts import CELLS_AT_ONCE, KIND, Number, axis_attributes, cells_of
+from atlas.orbits.counts import CELLS_AT_ONCE
 from atlas.orbits.portrait import TOTALS, Portrait, PortraitCounter
 from atlas.orbits.portrait_counts import count_portrait, workers_that_fit
 from atlas.orbits.schedule import schedule, threads
 from atlas.output.certificate import as_text, certificate
 from atlas.output.certificate_reader import KEY
+from atlas.output.dataset_parts import KIND, Number, axis_attributes, cells_of
 from atlas.plan import BASE_MEMORY, LABELS_MEMORY, check_arrays, parse_memory
 from atlas.reading.place import REQUEST, shown
 from tiles.window import View

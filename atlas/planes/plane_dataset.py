@@ -3,8 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from decimal import Decimal
-from fractions import Fraction
 from hashlib import blake2b
 from typing import Any
 
@@ -18,20 +16,15 @@ from atlas.families.map_family import Family
 from atlas.orbits.schedule import schedule
 from atlas.output.certificate import as_text, certificate
 from atlas.output.certificate_reader import KEY
+from atlas.output.dataset_parts import KIND, Number, axis_attributes, cells_of
 from atlas.plan import check_layers, parse_memory
 from atlas.planes.fates import FATES
 from atlas.planes.layers import LAYERS, Values
 from atlas.planes.searching import finder_of
 from atlas.planes.survey import Tally, whole_plane
-from atlas.reading.kinds import Whole
-from atlas.reading.place import REQUEST, Place, shown
+from atlas.reading.place import REQUEST, shown
 from tiles.errors import nearest
-from tiles.number import Exact
-from tiles.window import Axis, View
-
-Number = str | int | float | Fraction | Decimal | Exact
-KIND = "dataset"
-_CELLS = Whole(1, 1 << 31)
+from tiles.window import View
 
 
 def parameter_plane(
@@ -141,14 +134,6 @@ def parameter_plane(
     return _dataset(job, found, tally)
 
 
-def cells_of(size: Any, place: Place) -> tuple[int, int]:
-    """Return a resolution, refused where it is none."""
-    if not isinstance(size, tuple | list) or len(size) != 2:
-        raise place.refusal(f"{shown(size)} is no resolution; write (columns, rows)")
-    across, up = (_CELLS.read(cells, place.at(number)) for number, cells in enumerate(size, 1))
-    return across, up
-
-
 def _dataset(job: Any, found: Mapping[str, Values], tally: Tally) -> Any:
     import xarray
 
@@ -184,14 +169,3 @@ def _dataset(job: Any, found: Mapping[str, Values], tally: Tally) -> Any:
     for axis in (view.across, view.up):
         made[axis.name].attrs = axis_attributes(axis, *family.label_and_unit(axis.name))
     return made
-
-
-def axis_attributes(axis: Axis, label: str, unit: str) -> dict[str, Any]:
-    """Return what a coordinate says of its axis."""
-    return {
-        "long_name": axis.label or label or axis.name,
-        "units": unit,
-        "scale": axis.scale,
-        "low": str(axis.low),
-        "high": str(axis.high),
-    }

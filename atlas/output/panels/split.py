@@ -78,8 +78,8 @@ class SplitMaker:
 def told_apart(layers: NDArray[np.uint32]) -> tuple[NDArray[np.uint32], list[str]]:
     """Return the densities that get an ink each, and what the legend calls them.
 
-    Attractors with less than a thousandth of the counts, mostly such as were not recognised at a few parameter
-    values, are joined with what reaches no attractor; the others are numbered anew.
+    Attractors with less than a thousandth of the counts, mostly such as were not recognised at a few values
+    of the parameter, are joined with what reaches no attractor; the others are numbered anew.
 
     Parameters
     ----------
