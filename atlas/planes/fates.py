@@ -20,10 +20,10 @@ numbers:
    at; unless its start lies on that cycle itself.
 3. An orbit that comes near its past and whose gaps shrink, but whose limit is still too far, is
    *approaching*. It is run on, as many steps again as it has done, up to the limit of the transient, and is
-   then *unsettled*; each time the steps were doubled its distance must have fallen below 4/5 of what it was
-   (at a period doubling it falls to 0.71, beside one to 0.784 at most). One whose distance does not, as that
-   of a quasi-periodic orbit which came near its past by chance, is measured anew as after the transient, and
-   its exponents decide.
+   then *unsettled*; each time the steps were doubled the widest of the gaps between states p steps apart, over
+   p and at least 64 steps, must have fallen below 4/5 of what it was (at a period doubling it falls to 0.35,
+   at a Neimark-Sacker bifurcation to 0.71). One whose gaps do not, as those of a quasi-periodic orbit which
+   came near its past by chance, is measured anew as after the transient, and its exponents decide.
 4. Else the exponents decide. Over N steps in 16 batches, tangent volumes give the exponents (Benettin,
    Galgani, Giorgilli & Strelcyn 1980, Meccanica 15, 9-20), rescaled by powers of two every 16 steps (every 32
    with one state variable); the standard error s is that of the means of the batches. With the tolerance

@@ -193,7 +193,8 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
     """Decide whether the orbits of order have met a cycle; seen is what returns() wrote.
 
     outcome[m] becomes MET (then period[m] is the least period, turn[m] the one that was confirmed, and
-    exponents[:, m] are known), NEAR (approaching, away[m] from it), AGAIN (collapsed) or stays OPEN.
+    exponents[:, m] are known), NEAR (approaching, with away[m] its widest gap), AGAIN (collapsed) or stays
+    OPEN.
     """
     outcome, period, turn, repelling, away = known
     repeat, nearest, gap, size = seen
@@ -219,7 +220,7 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
                 continue
             if left > reach * 2.0 ** -20:
                 outcome[m] = NEAR
-                away[m] = left
+                away[m] = widest_gap(x, c, word, m, before, p)
                 continue
         multipliers(x, c, word, m, before, p, logs)
         if logs[0] * p > 1e-6:
@@ -245,6 +246,24 @@ def cycle_size(x, c, word, m, before, cycle):
         AT before + n
         STEP 0
         most = max(most, LARGEST)
+    return most
+
+
+@compiled
+def widest_gap(x, c, word, m, before, cycle):
+    """Return the widest gap between states a period apart, over a period and at least 64 steps."""
+    LOAD_ORBIT
+    steps = max(cycle, 64)
+    states = np.empty((NX, steps + cycle))
+    for n in range(steps + cycle):
+        NOTE states
+        AT before + n
+        STEP 0
+    most = 0.0
+    for n in range(steps):
+        for k in range(NX):
+            d = abs(states[k, n + cycle] - states[k, n])
+            most = max(most, min(d, abs(WIDTHS[k] - d)))
     return most
 
 

@@ -126,7 +126,6 @@ class FateTwin:
         while done < whole:
             steps = min(self._whole(max(done, FIRST_STAGE)), whole - done)
             x = self._stage(x, done, steps, self.map.step)
-            doubled = steps >= done
             done += steps
             seen = self._look(x)
             if isinstance(seen, Cycle):
@@ -176,7 +175,7 @@ class FateTwin:
                 return None
             if left > size * 2.0**-20:
                 self._ways.add("approaching")
-                return Approaching(left)
+                return Approaching(self._widest_gap(x, p))
         exponents = self._multipliers(x, p)
         repelling = exponents[0] * p > 1e-6
         if repelling:
@@ -206,6 +205,14 @@ class FateTwin:
         if not ratio < 1.0:
             return None
         return 4.0 * (gaps[0] if one else max(gaps)) * ratio / (1.0 - ratio)
+
+    def _widest_gap(self, x: State, p: int) -> float:
+        """Return the widest gap between states p steps apart, over p and at least 64 steps."""
+        steps = max(p, 64)
+        states = [x]
+        for n in range(steps + p - 1):
+            states.append(self.map.step(states[-1], n))
+        return max(self.map.distance(states[n + p], states[n]) for n in range(steps))
 
     def _multipliers(self, x: State, p: int) -> State:
         if len(x) == 1:
