@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from atlas.orbits.orbit import Rules
-from tests.reference.orbits import ROUND, Collapsed, Column, Escaped, Twin, Unsettled, key
+from tests.reference.orbits import ROUND, Collapsed, Column, Escaped, Orbit, Twin, Unsettled, key
 
 NEGLIGIBLE = 2.0**-40
 
@@ -39,9 +39,9 @@ class FollowingTwin(Twin):
                     states, end, *_ = self._ran(value, start, rules)
             except Collapsed:
                 column.collapsed += 1
-                states = self._disturbed(seed, value, start, rules)
+                states = [x for (x,) in self.at(value, rules).disturbed((start,), seed)]
                 end = states[-1]
-            self._count(column, states)
+            column.add(self.at(value, rules), Orbit([(x,) for x in states]))
         except Escaped:
             column.escaped += rules.samples
             return own
@@ -54,14 +54,11 @@ class FollowingTwin(Twin):
 
     def _ran(self, value: float, start: float, rules: Rules) -> tuple[list[float], float, bool, bool]:
         """Return the states, the last one, whether on a cycle, and whether that is the start's and repels."""
-
-        def step(x: float, _: int) -> float:
-            return self.step(x, value)
-
-        begin, repeats = self._settled(value, start, rules, step)
+        twin = self.at(value, rules)
+        (begin,), repeats = twin.settled((start,))
+        states = [x for (x,) in twin.recorded((start,))]
         if repeats:
-            return self._states(value, start, rules), begin, True, self._repels(value, begin)
-        states = self._states(value, start, rules)
+            return states, begin, True, self._repels(value, begin)
         for done in range(ROUND, rules.samples + ROUND, ROUND):
             before = begin if done == ROUND else states[done - ROUND - 1]
             if before in states[done - ROUND : done]:

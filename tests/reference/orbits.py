@@ -158,10 +158,10 @@ class OrbitTwin:
         self._on_repelling = collapsed = False
         try:
             try:
-                states = self._states(start)
+                states = self.recorded(start)
             except Collapsed:
                 collapsed = True
-                states = self._disturbed(start, seed)
+                states = self.disturbed(start, seed)
         except Escaped:
             return Orbit(escaped=True, collapsed=collapsed)
         except Unsettled:
@@ -172,9 +172,10 @@ class OrbitTwin:
         """Return the cell of a state on every axis."""
         return tuple(axis.cell(self.map.shown(axis.name, x)) for axis in self.axes)
 
-    def _states(self, start: State) -> list[State]:
+    def recorded(self, start: State) -> list[State]:
+        """Return the recorded states of an orbit that is not disturbed."""
         rules = self.rules
-        x, repeats = self._settled(start)
+        x, repeats = self.settled(start)
         states: list[State] = []
         while len(states) < rules.samples:
             now, reference = self._time(len(states)), x
@@ -194,7 +195,8 @@ class OrbitTwin:
     def _time(self, records: int) -> int:
         return self.transient + records * self.rules.every
 
-    def _settled(self, start: State) -> tuple[State, bool]:
+    def settled(self, start: State) -> tuple[State, bool]:
+        """Return the state after the transient and its extensions, and whether it comes back bit for bit."""
         x, done, steps = start, 0, self.transient
         limit = max(self.transient, self.rules.transient_limit)
         unit = self.pattern * self.rules.every
@@ -299,7 +301,9 @@ class OrbitTwin:
         left = 4.0 * (away[0] if len(names) == 1 else max(away)) * ratio / (1.0 - ratio)
         return (left / abs(values[-1]) if axis.relative else left) / axis.half_cell
 
-    def _disturbed(self, start: State, seed: int) -> list[State]:
+    def disturbed(self, start: State, seed: int) -> list[State]:
+        """Return the recorded states of an orbit of which every step is disturbed."""
+
         def step(x: State, time: int) -> State:
             hashed = mixed((seed + (time + 1) * 0x9E3779B97F4A7C15) & MASK)
             factor = 1.0 - float(hashed >> 11) * 2.0**-93
@@ -361,12 +365,16 @@ class Twin:
     half_cell: float
     relative: bool = False
 
+    def at(self, value: float, rules: Rules) -> OrbitTwin:
+        """Return the twin of the orbits at one value of the parameter."""
+        axes = [Shown("x", self.edges, self.half_cell, self.relative)]
+        return OrbitTwin(OneVariable(self.step, self.slope, value, self.bound), axes, rules)
+
     def column(self, number: int, values: Sequence[float], starts: Sequence[float], rules: Rules) -> Column:
         """Run every orbit of a column to its end and count it."""
         column = Column()
-        axes = [Shown("x", self.edges, self.half_cell, self.relative)]
         for v, value in enumerate(values):
-            twin = OrbitTwin(OneVariable(self.step, self.slope, value, self.bound), axes, rules)
+            twin = self.at(value, rules)
             for s, start in enumerate(starts):
                 column.add(twin, twin.orbit((start,), key(number, v, s)))
         return column
