@@ -27,15 +27,18 @@ ROOT = Path(__file__).parents[2]
 CONFIGS = sorted((ROOT / "configs").glob("*.yaml"))
 README = (ROOT / "README.md").read_text("utf-8")
 BLOCKS = re.findall(r"^```yaml\n(.*?)^```$", README, re.MULTILINE | re.DOTALL)
-QUICK = {"samples": 200, "transient": 200, "transient_limit": 2000, "values_per_column": 4}
+QUICK = {"samples": 200, "transient": 200, "transient_limit": 2000, "values_per_column": 4, "steps": 64}
 PLATE_SIZE, FIGURE_SIZE = (
     Size(Fraction(width), Fraction(height), "px") for width, height in ((300, 200), (600, 400))
 )
 
 
 def small(config: Config) -> Config:
-    """Return a config with everything that takes time or room reduced."""
-    plates = {name: small_plate(plate) for name, plate in config.plates.items()}
+    """Return a config with everything that takes time or room reduced.
+
+    Each map is compiled anew, so that of portraits, planes and basins one of what is drawn is kept.
+    """
+    plates = {name: small_plate(plate) for name, plate in first_drawn(config.plates).items()}
     return replace(
         config,
         plates=plates,
@@ -44,8 +47,19 @@ def small(config: Config) -> Config:
     )
 
 
+def first_drawn(plates: dict[str, Plate]) -> dict[str, Plate]:
+    """Return all orbit histograms, and of every other kind of view the first plate for what is drawn."""
+    seen: set[tuple[str, str]] = set()
+    kept = {}
+    for name, plate in plates.items():
+        if plate.kind == "histogram" or (plate.kind, plate.draw) not in seen:
+            kept[name] = plate
+        seen.add((plate.kind, plate.draw))
+    return kept
+
+
 def small_plate(plate: Plate) -> Plate:
-    return replace(plate, size=PLATE_SIZE, dpi=100, **QUICK)
+    return replace(plate, size=PLATE_SIZE, dpi=100, supersampling=1, **QUICK)
 
 
 def small_tile_set(tiles: TileSet) -> TileSet:
@@ -78,9 +92,33 @@ def check_picture(file: Path, record: Plate | TileSet | Figure) -> None:
 
 
 def test_there_are_configs() -> None:
-    assert {"fishery.yaml", "physics.yaml", "ecology.yaml", "switching.yaml"} <= {
-        path.name for path in CONFIGS
+    assert {
+        "ecology.yaml",
+        "fishery.yaml",
+        "hysteresis.yaml",
+        "physics.yaml",
+        "planes.yaml",
+        "portraits.yaml",
+        "seasons.yaml",
+        "switching.yaml",
+    } <= {path.name for path in CONFIGS}
+
+
+def test_configs_show_every_kind_of_view() -> None:
+    outputs = [record for path in CONFIGS for record in load(path).outputs().values()]
+    plates = [record for record in outputs if isinstance(record, Plate)]
+    assert {"histogram", "follow", "plane", "portrait", "basin"} == {plate.kind for plate in plates}
+    assert {"density", "fate", "lyapunov", "rotation", "escape", "attractors", "basin"} <= {
+        plate.draw for plate in plates
     }
+    assert any(plate.draw == "lyapunov" and plate.family.patterns for plate in plates)
+    assert {"histogram", "plane"} <= {record.kind for record in outputs if isinstance(record, TileSet)}
+
+
+@pytest.mark.parametrize("path", CONFIGS, ids=lambda path: path.name)
+def test_what_a_config_needs_is_known(path: Path) -> None:
+    config = load(path)
+    assert [output.name for output, _ in atlas.needs(config)] == list(config.outputs())
 
 
 @pytest.mark.parametrize("path", CONFIGS, ids=lambda path: path.name)
