@@ -13,6 +13,7 @@ from atlas.orbits.portrait_counts import automatic_samples
 from atlas.orbits.sampling import IN_TILES, LEAST, ON_PLATES, automatic, whole_height
 from atlas.orbits.schedule import Schedule
 from atlas.plan import check_counter, check_portrait
+from tiles.errors import TooLarge
 
 
 def counter_of(job: Job, columns: int, rows: int) -> OrbitCounter:
@@ -64,9 +65,11 @@ def portrait_of(job: Job, columns: int, rows: int) -> PortraitCounter:
     samples = job.samples
     if not isinstance(samples, int):
         samples = min(max(LEAST, counts_per_cell(job) * columns * rows // starts), most_samples(starts))
-    counter = PortraitCounter(
-        job.family, job.view, columns, rows, rules_of(job, samples), set=job.set, starts=job.starts
-    )
+    rules = rules_of(job, samples)
+    try:
+        counter = PortraitCounter(job.family, job.view, columns, rows, rules, set=job.set, starts=job.starts)
+    except TooLarge as problem:
+        raise TooLarge(f"{job.name}: {problem}") from None
     exposure = counter.exposure if isinstance(job.samples, int) else 0
     check_portrait(
         job.view,
