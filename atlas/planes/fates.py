@@ -12,18 +12,18 @@ numbers:
    those of the following ``steps``, in which the exponents are measured, at each quarter. A nearest return
    at period p (p a multiple of the length of the pattern) that is nearer than 2**-10 of its size, the
    largest of the next p states and of the start, is *confirmed* when the distance to its limit, estimated
-   from the gaps between states p steps apart as 4 d r / (1 - r), is not above 2**-20 of that size, and no
-   multiplier of the cycle exceeds 1 + 1e-6 in size. The period is the least divisor of p after which all
-   states of the cycle come back within 2**-17 of the size. The exponents of a cycle are those of its
-   multipliers. A state that comes back bit for bit on a repelling cycle has collapsed there by rounding: the
-   orbit is run again from its start, every step disturbed by a hashed factor 1 - u 2**-40, and not looked
-   at; unless its start lies on that cycle itself.
+   as 4 d r / (1 - r) from the widest of the gaps d between states p steps apart on a whole period and their
+   ratio r, is not above 2**-20 of that size, and no multiplier of the cycle exceeds 1 + 1e-6 in size. The
+   period is the least divisor of p after which all states of the next p come back within 2**-17 of the size.
+   The exponents of a cycle are those of its multipliers. A state that comes back bit for bit on a repelling
+   cycle has collapsed there by rounding: the orbit is run again from its start, every step disturbed by a
+   hashed factor 1 - u 2**-40, and not looked at; unless its start lies on that cycle itself.
 3. An orbit that comes near its past and whose gaps shrink, but whose limit is still too far, is
    *approaching*. It is run on, as many steps again as it has done, up to the limit of the transient, and is
-   then *unsettled*; each time the steps were doubled the widest of the gaps between states p steps apart, over
-   p and at least 64 steps, must have fallen below 4/5 of what it was (at a period doubling it falls to 0.35,
-   at a Neimark-Sacker bifurcation to 0.71). One whose gaps do not, as those of a quasi-periodic orbit which
-   came near its past by chance, is measured anew as after the transient, and its exponents decide.
+   then *unsettled*; each time the steps were doubled, the widest of the gaps between states p steps apart,
+   over p and at least 64 steps, must have fallen below 4/5 of what it was (at a period doubling it falls to
+   0.35, at a Neimark-Sacker bifurcation to 0.71). One whose gaps do not, as those of a quasi-periodic orbit
+   which came near its past by chance, is measured anew as after the transient, and its exponents decide.
 4. Else the exponents decide. Over N steps in 16 batches, tangent volumes give the exponents (Benettin,
    Galgani, Giorgilli & Strelcyn 1980, Meccanica 15, 9-20), rescaled by powers of two every 16 steps (every 32
    with one state variable); the standard error s is that of the means of the batches. With the tolerance

@@ -218,9 +218,11 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
             left = distance_left(x, c, word, m, before, p, largest, half, relative, work)
             if left < 0.0:
                 continue
+            if gap[m] > 0.0 and left > 0.0:
+                left *= widest_gap(x, c, word, m, before, p, p) / gap[m]
             if left > reach * 2.0 ** -20:
                 outcome[m] = NEAR
-                away[m] = widest_gap(x, c, word, m, before, p)
+                away[m] = widest_gap(x, c, word, m, before, p, 64)
                 continue
         multipliers(x, c, word, m, before, p, logs)
         if logs[0] * p > 1e-6:
@@ -250,10 +252,10 @@ def cycle_size(x, c, word, m, before, cycle):
 
 
 @compiled
-def widest_gap(x, c, word, m, before, cycle):
-    """Return the widest gap between states a period apart, over a period and at least 64 steps."""
+def widest_gap(x, c, word, m, before, cycle, least):
+    """Return the widest gap between states a period apart, over a period and at least some steps."""
     LOAD_ORBIT
-    steps = max(cycle, 64)
+    steps = max(cycle, least)
     states = np.empty((NX, steps + cycle))
     for n in range(steps + cycle):
         NOTE states
@@ -294,11 +296,14 @@ def multipliers(x, c, word, m, before, cycle, logs):
 
 @compiled
 def least_period(x, c, word, m, before, cycle, near):
-    """Return the least divisor of a period after which all states of the cycle come back, nearly."""
+    """Return the least divisor of a period after which all states of the next round come back, nearly."""
     if cycle == 1:
         return 1
     LOAD_ORBIT
     states = np.empty((NX, cycle))
+    for n in range(cycle):
+        AT before + n
+        STEP 0
     for n in range(cycle):
         NOTE states
         AT before + n

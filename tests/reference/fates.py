@@ -173,9 +173,11 @@ class FateTwin:
             left = self._distance_left(x, p, largest)
             if left is None:
                 return None
+            if left > 0.0:
+                left *= self._widest_gap(x, p, p) / gaps[p]
             if left > size * 2.0**-20:
                 self._ways.add("approaching")
-                return Approaching(self._widest_gap(x, p))
+                return Approaching(self._widest_gap(x, p, 64))
         exponents = self._multipliers(x, p)
         repelling = exponents[0] * p > 1e-6
         if repelling:
@@ -184,7 +186,7 @@ class FateTwin:
                 return None
             if self._start not in ahead[:p]:
                 raise Collapsed
-        return Cycle(p, self._least(ahead[:p], size * 2.0**-17), exponents, repelling)
+        return Cycle(p, self._least(self._next_round(ahead[:p]), size * 2.0**-17), exponents, repelling)
 
     def _distance_left(self, x: State, p: int, size: float) -> float | None:
         """Return the estimated distance to the limit; None where there is none."""
@@ -206,9 +208,9 @@ class FateTwin:
             return None
         return 4.0 * (gaps[0] if one else max(gaps)) * ratio / (1.0 - ratio)
 
-    def _widest_gap(self, x: State, p: int) -> float:
-        """Return the widest gap between states p steps apart, over p and at least 64 steps."""
-        steps = max(p, 64)
+    def _widest_gap(self, x: State, p: int, least: int) -> float:
+        """Return the widest gap between states p steps apart, over p and at least some steps."""
+        steps = max(p, least)
         states = [x]
         for n in range(steps + p - 1):
             states.append(self.map.step(states[-1], n))
@@ -222,6 +224,14 @@ class FateTwin:
                 x = self.map.step(x, n)
             return (float(LOG(abs(product))) / p,)
         return exponents_of_cycle(self.map, x, 0, p)
+
+    def _next_round(self, states: Sequence[State]) -> list[State]:
+        p, x = len(states), states[-1]
+        found = []
+        for n in range(p):
+            x = self.map.step(x, p - 1 + n)
+            found.append(x)
+        return found
 
     def _least(self, states: Sequence[State], near: float) -> int:
         p = len(states)
