@@ -33,7 +33,7 @@ TABLE = """
 10  atlas.figure atlas.figure.lettering atlas.formula atlas.orbits atlas.orbits.lane_kernels
 10  atlas.orbits.orbit_kernels atlas.output atlas.output.panels atlas.output.remarks
 10  atlas.output.reporter atlas.output.whole_file atlas.planes atlas.planes.fates
-10  atlas.planes.plane_kernels atlas.points atlas.reading atlas.reading.sheet
+10  atlas.planes.plane_kernels atlas.planes.turn_kernels atlas.points atlas.reading atlas.reading.sheet
 11  atlas.figure.axes_image atlas.figure.tick_labels atlas.formula.tree atlas.orbits.block
 11  atlas.orbits.schedule atlas.output.certificate_reader atlas.output.folders atlas.output.ledger
 11  atlas.reading.place

@@ -21,8 +21,8 @@ from atlas.planes.plane_kernels import (
     NEAR,
     OPEN,
     PART_GONE,
-    TURN,
 )
+from atlas.planes.turn_kernels import TURN
 
 BACKWARD = 2.0**-8
 """Turns about a mean by half a turn, and by so much less, count as backward: else rounding would decide of
