@@ -5,8 +5,8 @@ Words in capitals are expanded by `atlas.planes.plane_source`.
 
 TURN = '''
 @compiled
-def mean_state(x, c, word, order, before, steps, mean):
-    """Write the mean state of the next steps."""
+def state_sums(x, c, word, order, before, steps, sums):
+    """Add the next states to sums, and leave the orbits where they then stand."""
     lx = np.empty((NX, LANES))
     lm = np.empty((NX, LANES))
     lc = np.empty((ROWS, LANES))
@@ -16,7 +16,7 @@ def mean_state(x, c, word, order, before, steps, mean):
             m = order[first + min(l, lanes - 1)]
             for k in range(NX):
                 lx[k, l] = x[k, m]
-                lm[k, l] = 0.0
+                lm[k, l] = sums[k, m]
             for k in range(ROWS):
                 lc[k, l] = c[k, m]
         for n in range(steps):
@@ -29,28 +29,39 @@ def mean_state(x, c, word, order, before, steps, mean):
                     lm[k, l] += lx[k, l]
         for l in range(lanes):
             for k in range(NX):
-                mean[k, order[first + l]] = lm[k, l] / steps
+                x[k, order[first + l]] = lx[k, l]
+                sums[k, order[first + l]] = lm[k, l]
 
 
 @compiled
-def turning(x, c, word, order, before, weights, mean, total):
-    """Write the weighted sum of the turns that each step makes."""
+def turning(x, c, word, order, before, steps, whole, mean, total, weights):
+    """Add the turns of the next steps to total, and leave the orbits where they then stand.
+
+    Turns have the weight 1 where whole is 0, else that of their time t in as many steps,
+    exp(-1 / (t (1 - t))); weights[0] grows by these.
+    """
     lx = np.empty((NX, LANES))
     lm = np.empty((NX, LANES))
     lc = np.empty((ROWS, LANES))
     lw = np.empty(LANES)
+    sum_of_weights = weights[0]
     for first in range(0, order.size, LANES):
         lanes = min(LANES, order.size - first)
         for l in range(LANES):
             m = order[first + min(l, lanes - 1)]
-            lw[l] = 0.0
+            lw[l] = total[m]
             for k in range(NX):
                 lx[k, l] = x[k, m]
                 lm[k, l] = mean[k, m]
             for k in range(ROWS):
                 lc[k, l] = c[k, m]
-        for n in range(weights.size):
-            weight = weights[n]
+        sum_of_weights = weights[0]
+        for n in range(steps):
+            weight = 1.0
+            if whole > 0:
+                time = (before + n + 0.5) / whole
+                weight = exp(-1.0 / (time * (1.0 - time)))
+            sum_of_weights += weight
             PHASE before + n
             for l in range(LANES):
                 LOAD
@@ -58,5 +69,9 @@ def turning(x, c, word, order, before, weights, mean, total):
                 STORE
                 lw[l] += weight * turned
         for l in range(lanes):
-            total[order[first + l]] = lw[l]
+            m = order[first + l]
+            total[m] = lw[l]
+            for k in range(NX):
+                x[k, m] = lx[k, l]
+    weights[0] = sum_of_weights
 '''

@@ -9,15 +9,15 @@ memory).
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from functools import lru_cache
-from math import exp
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
+from atlas.orbits.block import STEPS_AT_ONCE
+from atlas.orbits.orbit import Stopped
 from atlas.planes.fates import CHAOTIC, FIXED_POINT, PERIODIC, QUASI_PERIODIC
-from atlas.planes.pixels import Pixels
+from atlas.planes.pixels import Order, Pixels
 
 Floats = NDArray[np.float64]
 
@@ -26,15 +26,6 @@ def winding_number(widths: Sequence[float]) -> int | None:
     """Return the number of the state variable whose turns are counted: the last periodic one, if any."""
     periodic = [number for number, width in enumerate(widths) if width]
     return periodic[-1] if periodic else None
-
-
-@lru_cache(maxsize=8)
-def weights(steps: int) -> Floats:
-    """Return weights of that many steps, of sum 1, that vanish smoothly at both ends."""
-    times = [(step + 0.5) / steps for step in range(steps)]
-    raw = np.array([exp(-1.0 / (time * (1.0 - time))) for time in times])
-    found: Floats = raw / raw.sum()
-    return found
 
 
 def rotation(found: Pixels, winding: int | None) -> Floats:
@@ -51,23 +42,43 @@ def rotation(found: Pixels, winding: int | None) -> Floats:
     -------
     ndarray of float64, shape (orbits,)
         Turns per step; about a mean from 0 to 1/2, and none for a fixed point.
+
+    Raises
+    ------
+    Stopped
+        When the work was interrupted.
     """
     turns = np.full(found.fate.size, np.nan)
     cyclic = (found.fate == PERIODIC) | ((found.fate == FIXED_POINT) & (winding is not None))
     for steps in np.unique(found.turn[cyclic]):
         order = np.flatnonzero(cyclic & (found.turn == steps))
-        once = np.ones(int(steps))
-        turns[order] = np.rint(_total(found, order, once, winding))[order] / steps
+        turns[order] = np.rint(_turns(found, order, int(steps), winding, weighted=False)) / steps
     order = np.flatnonzero((found.fate == QUASI_PERIODIC) | (found.fate == CHAOTIC))
     if order.size:
-        turns[order] = _total(found, order, weights(found.rules.steps), winding)[order]
+        turns[order] = _turns(found, order, found.rules.steps, winding, weighted=True)
     size = np.abs(turns)
     return turns if winding is not None else np.minimum(size, 1.0 - size)
 
 
-def _total(found: Pixels, order: NDArray[np.int64], each: Floats, winding: int | None) -> Floats:
+def _turns(found: Pixels, order: Order, steps: int, winding: int | None, *, weighted: bool) -> Floats:
+    """Return the turns of the next steps of some orbits: their sum, or their weighted mean."""
     mean, total = np.zeros_like(found.x), np.zeros(found.fate.size)
     if winding is None:
-        found.kernels.mean_state(found.x, *found.map, order, 0, each.size, mean)
-    found.kernels.turning(found.x, *found.map, order, 0, each, mean, total)
-    return total
+        x = found.x.copy()
+        for first, last in _slices(found, order, steps):
+            found.kernels.state_sums(x, *found.map, order, first, last - first, mean)
+        mean[:, order] /= steps
+    x, weights = found.x.copy(), np.zeros(1)
+    whole = steps if weighted else 0
+    for first, last in _slices(found, order, steps):
+        found.kernels.turning(x, *found.map, order, first, last - first, whole, mean, total, weights)
+    return total[order] / weights[0] if weighted else total[order]
+
+
+def _slices(found: Pixels, order: Order, steps: int) -> Iterator[tuple[int, int]]:
+    """Yield the steps of one call of a kernel after the other; where they part says nothing."""
+    each = max(1, STEPS_AT_ONCE // order.size)
+    for first in range(0, steps, each):
+        if found.stop[0]:
+            raise Stopped("the work was interrupted")
+        yield first, min(first + each, steps)

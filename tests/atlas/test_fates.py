@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import tracemalloc
 from dataclasses import dataclass, field
 from functools import cache
 from typing import Any
@@ -12,6 +13,7 @@ import pytest
 from atlas.families.catalogue import family
 from atlas.families.map_family import Family
 from atlas.families.reader import family_from_config
+from atlas.orbits.orbit import Stopped
 from atlas.planes.fates import FATES, FIXED_POINT, PERIODIC
 from atlas.planes.finder import FateFinder, Region
 from atlas.planes.pixels import FateRules, Pixels
@@ -235,3 +237,37 @@ def test_the_slow_map_computes_what_its_formulas_say() -> None:
     turning = SlowMap(family("circle"), {"Omega": 0.75, "K": 0.0})
     assert (turning.lift((0.5,), 0), turning.step((0.5,), 0)) == ((1.25,), (0.25,))
     assert turning.distance((0.9375,), (0.0625,)) == 0.125
+
+
+def test_rotation_numbers_do_not_depend_on_how_long_kernels_run(monkeypatch: pytest.MonkeyPatch) -> None:
+    for name in ("circle", "lozi", "delayed logistic"):
+        finder = CASES[name].finder()
+        found = finder.find(WHOLE, start=1)
+        whole = rotation(found, finder.winding)
+        assert np.isfinite(whole).any()
+        monkeypatch.setattr("atlas.planes.turns.STEPS_AT_ONCE", 7 * found.fate.size)
+        np.testing.assert_array_equal(rotation(found, finder.winding), whole)
+        monkeypatch.undo()
+
+
+def test_rotation_numbers_of_long_runs_hold_no_weights_of_every_step() -> None:
+    finder = FateFinder(
+        family("circle"), View(("Omega", "0.31", "0.32"), ("K", "0.5", "0.6")), 1, 1, FateRules(64, 10**6)
+    )
+    found = finder.find(Region(0, 1, 0, 1))
+    assert FATES[found.fate[0]] == "quasi-periodic"
+    turns = rotation(found, finder.winding)  # what is compiled now is not compiled below
+    tracemalloc.start()
+    np.testing.assert_array_equal(rotation(found, finder.winding), turns)
+    _, peak = tracemalloc.get_traced_memory()
+    tracemalloc.stop()
+    assert peak < 1 << 20
+    assert 0.305 < turns[0] < 0.31
+
+
+def test_rotation_numbers_stop_when_they_are_told_to() -> None:
+    finder = CASES["circle"].finder()
+    found = finder.find(WHOLE, start=1)
+    found.stop[0] = 1
+    with pytest.raises(Stopped):
+        rotation(found, finder.winding)
