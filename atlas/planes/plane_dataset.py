@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from hashlib import blake2b
 from typing import Any
 
@@ -22,7 +22,7 @@ from atlas.planes.fates import FATES
 from atlas.planes.layers import LAYERS, Values
 from atlas.planes.searching import finder_of
 from atlas.planes.survey import Tally, whole_plane
-from atlas.reading.place import REQUEST, shown
+from atlas.reading.place import REQUEST, Place, shown
 from tiles.errors import nearest
 from tiles.window import View
 
@@ -102,8 +102,7 @@ def parameter_plane(
     if not isinstance(view, View):
         raise place.at("view").refusal(f"{shown(view)} is no view; write atlas.View(across=..., up=...)")
     columns, rows = cells_of(size, place.at("size"))
-    if isinstance(layers, str) or not layers:
-        raise place.at("layers").refusal(f"{shown(layers)} are no layers; name some of {', '.join(LAYERS)}")
+    names = _named(layers, place.at("layers"))
     job = plate_from_parts(
         family,
         view.across,
@@ -119,10 +118,7 @@ def parameter_plane(
         longest_period=longest_period,
         extinct=extinct,
     )
-    names = tuple(dict.fromkeys(layers))
     for name in names:
-        if name not in LAYERS:
-            raise place.at("layers").refusal(f"{shown(name)} is no layer{nearest(str(name), LAYERS)}")
         if name in PLANE_DRAWS:
             checked_draw(job.family, job.view, name, place.at("layers"))
     check_layers(
@@ -132,6 +128,19 @@ def parameter_plane(
     with schedule(workers) as opened:
         found, tally = whole_plane(finder, names, opened)
     return _dataset(job, found, tally)
+
+
+def _named(layers: Any, place: Place) -> tuple[str, ...]:
+    """Return the names of layers, each once."""
+    if isinstance(layers, str) or not isinstance(layers, Iterable):
+        raise place.refusal(f"{shown(layers)} are no layers; name some of {', '.join(LAYERS)}")
+    names = list(layers)
+    for name in names:
+        if not isinstance(name, str) or name not in LAYERS:
+            raise place.refusal(f"{shown(name)} is no layer{nearest(str(name), LAYERS)}")
+    if not names:
+        raise place.refusal(f"there are no layers; name some of {', '.join(LAYERS)}")
+    return tuple(dict.fromkeys(str(name) for name in names))
 
 
 def _dataset(job: Any, found: Mapping[str, Values], tally: Tally) -> Any:

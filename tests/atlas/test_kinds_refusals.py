@@ -6,9 +6,12 @@ import json
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 
+import atlas
 from tests.atlas.test_cli import done, refused
+from tiles.errors import Refusal
 
 PLANE = ("forced_logistic", "--across", "a=2:4", "--up", "b=2:4")
 STATES = ("henon", "--across", "x=-1:1", "--up", "y=-1:1")
@@ -217,3 +220,14 @@ def test_no_transient_and_few_steps_are_allowed(tmp_path: Path) -> None:
     words = (*PLANE, "--transient", "0", "--steps", "64", "--size", "300x200px", "--dpi", "72")
     done("draw", *words, "--out", tmp_path / "a.png")
     assert (tmp_path / "a.png").is_file()
+
+
+@pytest.mark.parametrize(
+    "layers",
+    [(), "fate", 5, None, ["fat"], [["fate"]], [0], np.array(["period", "fat"])],
+    ids=repr,
+)
+def test_layers_that_are_none_are_refused_in_one_sentence(layers: Any) -> None:
+    view = atlas.View(across=("a", 0, 1), up=("b", 0, 1))
+    with pytest.raises(Refusal, match=r"^layers: .*lay"):
+        atlas.parameter_plane(atlas.family("henon"), view, size=(2, 2), layers=layers)
