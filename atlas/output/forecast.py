@@ -11,6 +11,7 @@ from dataclasses import replace
 from atlas.config.draws import PLANES
 from atlas.config.jobs import Figure, Plate, TileSet
 from atlas.orbits.histogram import block_width
+from atlas.output.panels.plane import KERNELS_MEMORY
 from atlas.output.plane_tiles import BYTES_PER_PLANE_TILE
 from atlas.output.printing import maker_of, sheet_of
 from atlas.output.tile_makers import samples_of, seconds_of
@@ -86,7 +87,10 @@ def builders(record: TileSet, workers: int, budget: int) -> int:
 def _fixed_memory(record: TileSet) -> int:
     columns, rows = record.cells
     edges = columns + rows if record.kind in PLANES else rows
-    return BASE_MEMORY + BYTES_PER_EDGE * edges + BYTES_PER_CELL.get(record.kind, 0) * columns * rows
+    kernels = KERNELS_MEMORY if record.kind in PLANES else 0
+    return (
+        BASE_MEMORY + kernels + BYTES_PER_EDGE * edges + BYTES_PER_CELL.get(record.kind, 0) * columns * rows
+    )
 
 
 def _task_memory(record: TileSet) -> int:

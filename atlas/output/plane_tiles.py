@@ -29,7 +29,7 @@ from tiles.plane_build import build_planes
 from tiles.plane_index import PlaneIndex
 from tiles.store import written
 
-BYTES_PER_PLANE_TILE = 24 << 20
+BYTES_PER_PLANE_TILE = 16 << 20
 """What a task holds: a tile's orbits, its classes and sums, and those that a coarser tile is made from."""
 
 

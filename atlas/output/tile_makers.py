@@ -7,6 +7,7 @@ from collections.abc import Callable
 from atlas.config.jobs import TileSet
 from atlas.errors import PlanRefused
 from atlas.orbits.schedule import Schedule
+from atlas.output.panels.basin import basin_seconds
 from atlas.output.panels.histogram import counting_seconds
 from atlas.output.panels.plane import finding_seconds
 from atlas.output.panels.portrait import portrait_seconds
@@ -51,7 +52,8 @@ def samples_of(job: TileSet) -> int:
 def seconds_of(job: TileSet) -> float:
     """Return the estimated time of one core for the numbers of a tile set."""
     if job.kind in ("plane", "basin"):
-        return finding_seconds(plane_finder(job))
+        finder = plane_finder(job)
+        return basin_seconds(finder) if job.kind == "basin" else finding_seconds(finder)
     if job.kind == "portrait":
         return portrait_seconds(portrait_counter(job))
     return counting_seconds(follow_counter(job) if job.kind == "follow" else tile_counter(job))

@@ -25,7 +25,7 @@ from atlas.planes.fates import CLASS_CHAOTIC, CLASS_ESCAPES
 from tests.atlas import kinds
 from tests.atlas.kinds import KINDS, classes_of, config, plane
 from tests.atlas.rendered import files, render, statuses
-from tests.atlas.test_interrupt import interrupted, started
+from tests.atlas.test_interrupt import started
 from tiles.classes import class_colours
 from tiles.errors import Refusal
 from tiles.grid import TILE, Address
@@ -359,20 +359,14 @@ def finished(out: Path, name: str) -> Counter[str]:
     return told.steps
 
 
-@pytest.mark.parametrize("kill", [True, False])
-def test_a_killed_or_interrupted_plane_goes_on_from_the_tiles_it_had(
-    made: Path, tmp_path: Path, kill: bool
-) -> None:
+def test_a_killed_plane_goes_on_from_the_tiles_it_had(made: Path, tmp_path: Path) -> None:
     out = tmp_path / "out"
     with started("finding fates", "step of finding fates", KINDS, out, "fate_tiles") as process:
         assert process.stderr is not None
         for _ in range(12):  # a tile takes four steps
             process.stderr.readline()
-        if kill:
-            process.kill()
-            process.wait()
-        else:
-            interrupted(process)
+        process.kill()
+        process.wait()
     assert files(out) == {}
     pixels = job_of("fate_tiles").cells[0] * job_of("fate_tiles").cells[1]
     assert 0 < finished(out, "fate_tiles")["finding fates"] < pixels

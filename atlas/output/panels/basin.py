@@ -6,20 +6,28 @@ import numpy as np
 from numpy.typing import NDArray
 
 from atlas.attractors.basins import Basins, chart_basins
+from atlas.attractors.ends import RECORDS
 from atlas.attractors.registry import Attractor
 from atlas.figure.legends import class_legend
 from atlas.figure.pieces import LegendEntry, PanelText, Raster
 from atlas.orbits.schedule import Schedule
 from atlas.output.panel import Panel, Room, View, label_of
-from atlas.output.panels.plane import finding_seconds, record_of, worker_memory
+from atlas.output.panels.plane import (
+    KERNELS_MEMORY,
+    finding_seconds,
+    record_of,
+    step_seconds,
+    worker_memory,
+)
 from atlas.output.remarks import remarks_on_basins
 from atlas.output.reporter import PREPARING, Reporter
 from atlas.planes.fates import CLASS_OF_FATE, FATES, class_name
+from atlas.planes.finder import FateFinder
 from atlas.planes.searching import finder_of
 from tiles.classes import class_shades, class_table
 from tiles.mixing import mixed
 
-BYTES_PER_PIXEL, BYTES_OF_SIGHTINGS = 7, 16 << 20
+BYTES_PER_PIXEL, BYTES_OF_SIGHTINGS = 7, 4 << 20
 """Keys, classes and shades; and what regions that wait for their turn have seen, a thread."""
 LINES_SHADED, MOST_LISTED = 64, 12
 
@@ -33,11 +41,11 @@ class BasinMaker:
         starts = finder.columns * finder.rows
         raster = (3 if view.plate.supersampling > 1 else 1) * view.cells
         each_worker = worker_memory(finder) + BYTES_OF_SIGHTINGS
-        return Room(starts, BYTES_PER_PIXEL * starts, raster, each_worker)
+        return Room(starts, KERNELS_MEMORY + BYTES_PER_PIXEL * starts, raster, each_worker)
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
-        return finding_seconds(finder_of(view.plate, view.columns, view.rows))
+        return basin_seconds(finder_of(view.plate, view.columns, view.rows))
 
     def make(self, view: View, name: str, schedule: Schedule, reporter: Reporter) -> Panel:
         """Find the attractors of a view and colour their basins."""
@@ -66,6 +74,12 @@ class BasinMaker:
             basins.digest(),
             tuple(remarks_on_basins(view.name, basins.shares(), told(basins))),
         )
+
+
+def basin_seconds(finder: FateFinder) -> float:
+    """Return the estimated time of one core for a chart, as if no orbit were on a cycle."""
+    starts = finder.columns * finder.rows
+    return finding_seconds(finder) + starts * 2 * RECORDS * step_seconds(finder)
 
 
 def legend_of_basins(basins: Basins) -> tuple[LegendEntry, ...]:

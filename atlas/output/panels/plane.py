@@ -27,10 +27,11 @@ from tiles.mixing import mixed
 from tiles.shading import colour_table
 from tiles.values import ValueFit, fit_values, shade_values, value_key_labels
 
-SECONDS_PER_STEP, SECONDS_PER_SLOW_CALL = 0.7e-9, 1.2e-9
+SECONDS_PER_ORBIT, SECONDS_PER_STEP, SECONDS_PER_SLOW_CALL = 1e-6, 0.7e-9, 1.2e-9
 BYTES_PER_VALUE, BYTES_PER_FITTED = 4, 24
-BYTES_PER_ORBIT, BYTES_PER_STATE, BYTES_WAITING = 160, 640, 256
-"""Measured: what a thread holds of an orbit, and of each of its states; results of all regions in hand."""
+KERNELS_MEMORY, BYTES_PER_ORBIT, BYTES_PER_STATE, BYTES_OF_SORTING = 10 << 20, 320, 192, 10 << 20
+"""Measured: of the kernels; what a thread holds of an orbit, with the results of regions that wait for their
+turn, and of each of its states; and what it takes to tell the attractors of a pixel apart."""
 FITTED_PIXELS, LINES_SHADED = 1 << 22, 64
 CAPTIONS = {
     "lyapunov": "largest Lyapunov exponent (per step)",
@@ -50,10 +51,12 @@ class PlaneMaker:
         finder = finder_of(view.plate, view.columns, view.rows)
         pixels = finder.columns * finder.rows
         smooth = view.plate.supersampling > 1
-        working = pixels if smooth else 0
+        working = KERNELS_MEMORY + (pixels if smooth else 0)
         if DRAWS[view.plate.draw].palette_kind != "categorical":
-            working += BYTES_PER_VALUE * pixels + BYTES_PER_FITTED * min(pixels, FITTED_PIXELS)
-        return Room(pixels, working, (3 if smooth else 1) * view.cells, worker_memory(finder))
+            fitted = pixels // fitting_step(finder.rows, finder.columns) ** 2
+            working += BYTES_PER_VALUE * pixels + BYTES_PER_FITTED * fitted
+        each_worker = worker_memory(finder) + BYTES_OF_SORTING * (view.plate.draw == "attractors")
+        return Room(pixels, working, (3 if smooth else 1) * view.cells, each_worker)
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
@@ -96,15 +99,20 @@ class PlaneMaker:
 
 def worker_memory(finder: FateFinder) -> int:
     """Return the bytes that a thread works with, and of the regions that wait for their turn."""
-    states = len(finder.family.states)
-    return PIXELS_AT_ONCE * (BYTES_PER_ORBIT + BYTES_PER_STATE * states + BYTES_WAITING)
+    return PIXELS_AT_ONCE * (BYTES_PER_ORBIT + BYTES_PER_STATE * len(finder.family.states))
 
 
 def finding_seconds(finder: FateFinder) -> float:
     """Return the estimated time of one core for a plane, as if every orbit had to be measured."""
-    slow = SECONDS_PER_SLOW_CALL * step_source(finder.family).slow_calls
+    orbits = finder.columns * finder.rows * len(finder.setting.starts)
     steps = finder.rules.transient + finder.rules.steps
-    return finder.columns * finder.rows * steps * (SECONDS_PER_STEP + slow) * len(finder.setting.starts)
+    return orbits * (SECONDS_PER_ORBIT + steps * step_seconds(finder))
+
+
+def step_seconds(finder: FateFinder) -> float:
+    """Return the estimated time of one step of an orbit and of what is measured along it."""
+    slow = SECONDS_PER_SLOW_CALL * step_source(finder.family).slow_calls
+    return SECONDS_PER_STEP * len(finder.family.states) + slow
 
 
 def record_of(finder: FateFinder, supersampling: int = 1) -> dict[str, Any]:
@@ -205,11 +213,17 @@ class _Values:
         return self.hash.hexdigest()
 
 
-def fitted_part(values: NDArray[Any]) -> NDArray[Any]:
-    """Return what a fit is made to: of more than four million pixels every second, fourth, … both ways."""
+def fitting_step(lines: int, pixels: int) -> int:
+    """Return which pixels a fit is made to: of more than four million every second, fourth, … both ways."""
     step = 1
-    while -(-values.shape[0] // step) * -(-values.shape[1] // step) > FITTED_PIXELS:
+    while -(-lines // step) * -(-pixels // step) > FITTED_PIXELS:
         step *= 2
+    return step
+
+
+def fitted_part(values: NDArray[Any]) -> NDArray[Any]:
+    """Return the values that a fit is made to."""
+    step = fitting_step(*values.shape)
     return values[::step, ::step]
 
 
