@@ -79,6 +79,7 @@ def distance_left(x, c, word, m, before, period, size, half, relative, work):
     gaps = work[AXIS_COUNT]
     n = before
     for turn in range(TURNS):
+        AT n
         REMEMBER
         for step_number in range(period * EVERY):
             AT n

@@ -156,7 +156,7 @@ class Pixels:
         number = self.outcome.size
         seen = (np.zeros(number, np.int64), np.zeros(number, np.int64), np.zeros(number), np.zeros(number))
         self.kernels.returns(self.x, *self.map, order, 0, self.longest, self.longest, *seen)
-        rules = (np.ones(len(self.x)), np.zeros(len(self.x), np.bool_))
+        rules = (np.ones(len(self.x)), np.zeros(len(self.x), np.bool_), self.low)
         known = (self.outcome, self.period, self.turn, self.repelling, self.away)
         self.kernels.judge(self.x, *self.map, self.start, order, 0, seen, rules, known, self.exponents)
         left: Order = order[(self.outcome[order] == OPEN) | (self.outcome[order] == NEAR)]

@@ -198,7 +198,7 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
     """
     outcome, period, turn, repelling, away = known
     repeat, nearest, gap, size = seen
-    half, relative = rules
+    half, relative, low = rules
     logs = np.empty(NX)
     work = np.empty((AXIS_COUNT + 1, TURNS))
     for m in order:
@@ -220,7 +220,10 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
                 continue
             if gap[m] > 0.0 and left > 0.0:
                 left *= widest_gap(x, c, word, m, before, p, p) / gap[m]
-            if left > reach * 2.0 ** -20:
+            dying = False
+            for k in range(NX):
+                dying = dying or (low[k] > 0.0 and abs(x[k, m]) < reach * 2.0 ** -20)
+            if left > reach * 2.0 ** -20 or dying:
                 outcome[m] = NEAR
                 away[m] = widest_gap(x, c, word, m, before, p, 64)
                 continue

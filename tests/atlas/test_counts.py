@@ -154,3 +154,22 @@ def test_a_wrong_request_gets_one_sentence(more: dict[str, Any], sentence: str) 
 def test_two_sweeps_need_more_memory_than_one() -> None:
     with pytest.raises(TooLarge, match="a Dataset of 9000 x 18000 cells would need"):
         counted(("x", 0, 1), size=(9000, 9000), follow="both")
+
+
+def test_an_observable_of_a_map_with_a_pattern_is_counted_as_its_state_is() -> None:
+    """Twice the state falls into the cells twice as high; 2 x is exact."""
+    made = family_from_config(
+        "forced",
+        {
+            "state": {"x": {"start": "0.3"}},
+            "parameters": {"a": {"default": 3}, "b": {"default": 3}, "r": {"pattern": ["a", "b"]}},
+            "step": {"x": "r * x * (1 - x)"},
+            "observables": {"double": "2 * x"},
+        },
+    )
+    across = ("a", "2.9", "3.9")
+    options: dict[str, Any] = {"size": (9, 16), "samples": 300, "transient": 60}
+    state = atlas.orbit_counts(made, atlas.View(across, ("x", 0, 1)), **options)
+    twice = atlas.orbit_counts(made, atlas.View(across, ("double", 0, 2)), **options)
+    assert int(state.counts.sum()) > 0
+    np.testing.assert_array_equal(state.counts.values, twice.counts.values)

@@ -175,7 +175,10 @@ class FateTwin:
                 return None
             if left > 0.0:
                 left *= self._widest_gap(x, p, p) / gaps[p]
-            if left > size * 2.0**-20:
+            dying = any(
+                low > 0.0 and abs(value) < size * 2.0**-20 for value, low in zip(x, self.low, strict=True)
+            )
+            if left > size * 2.0**-20 or dying:
                 self._ways.add("approaching")
                 return Approaching(self._widest_gap(x, p, 64))
         exponents = self._multipliers(x, p)
