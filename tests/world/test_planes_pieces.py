@@ -39,7 +39,7 @@ def lozi() -> Any:
 
 @pytest.fixture(scope="module")
 def cusp() -> Any:
-    grid = {"grid": [16], "box": {"x": ["-1.2", "1.2"]}}
+    grid = {"grid": [16], "box": {"x": ["-0.9", "0.9"]}}
     layers = ("fate", "period", "lyapunov", "attractors")
     return plane(CUSP, ("a", "-0.5", "0.5"), ("b", "0.1", "1.9"), (50, 90), layers, starts=grid)
 
@@ -144,7 +144,8 @@ class TestCusp:
     """x -> a + b x - x**3: fold, flip and superstable curves (cus.fold, cus.flip, cus.super; exact algebra).
 
     A start for each critical point finds every attractor, because the Schwarzian derivative is negative
-    (D. Singer 1978, SIAM J. Appl. Math. 35, 260; from memory); the grid of starts is denser than needed.
+    (D. Singer 1978, SIAM J. Appl. Math. 35, 260; from memory); the grid of starts is denser than needed, and in
+    the basin, which ends about |x| = (1 + b)**0.5.
     """
 
     @staticmethod
@@ -178,8 +179,7 @@ class TestCusp:
             there = same & (told[0] == number)
             assert there.sum() > 800
             assert (cusp.attractors.values[there] == number).all()
-            assert (cusp.period.values[there] <= 1).all()
-            assert (cusp.fate.values[there] == FIXED_POINT).mean() > 0.99
+            assert (cusp.fate.values[there] == FIXED_POINT).all()
 
     def test_inside_the_cusp_alone_there_are_two(self, cusp: Any) -> None:
         a, b = corners(cusp)
