@@ -3,6 +3,7 @@ axis."""
 
 from __future__ import annotations
 
+import copy
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -102,7 +103,10 @@ class FateFinder:
 
     def warm(self) -> None:
         """Compile the kernels, so that a later timing or progress bar does not include it."""
-        self.find(Region(0, 1, 0, 1))
+        assert self.module
+        short = copy.copy(self)
+        short.rules = FateRules(0, 64, 0, 1)
+        short.find(Region(0, 1, 0, 1))
 
     def find(self, region: Region, *, start: int = 0, stop: NDArray[np.uint8] | None = None) -> Pixels:
         """Find the fates of the pixels of a region, column by column, each from its lowest row up.
