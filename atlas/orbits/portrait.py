@@ -149,6 +149,7 @@ class PortraitCounter:
         self.family, self.view, self.columns, self.rows = family, view, columns, rows
         self.rules, self.lanes = rules, lanes
         self.setting = Setting(family, set, starts)
+        self._on_repelling: NDArray[np.bool_] | None = None
         if 2 * self.cells > MOST_CELLS:
             raise TooLarge(f"{columns} x {rows} cells are too many for a phase portrait; take fewer")
 
@@ -254,28 +255,32 @@ class PortraitCounter:
         rules = replace(self.rules, samples=self.samples_of_a_copy)
         base = np.zeros(last - first, np.int32)
         flag = np.zeros(1, np.uint8) if stop is None else stop
-        block = Block(self.module, rules, self.axes, self._orbits(first, last), base, counts, flag)
+        block = Block(self.module, rules, self.axes, self._orbits(first, last, flag), base, counts, flag)
         block.sample(block.settle())
         block.run_again()
         return block
 
-    def _orbits(self, first: int, last: int) -> Orbits:
+    def _orbits(self, first: int, last: int, stop: NDArray[np.uint8]) -> Orbits:
+        repelling = self._repelling(stop)
         start, copy = np.divmod(np.arange(first, last, dtype=np.uint64), np.uint64(self.copies))
         key = hashed(hashed(hashed(np.uint64(0) * start) ^ copy) ^ start)
         states = self.starts[start.astype(np.int64)].T.copy()
         for variable, row in enumerate(states):
             u = hashed(key ^ np.uint64(variable + 1)) >> np.uint64(11)
             factor = 1.0 - u.astype(np.float64) * 2.0**-93
-            row *= np.where((copy == 0) | self._repelling[start.astype(np.int64)], 1.0, factor)
+            row *= np.where((copy == 0) | repelling[start.astype(np.int64)], 1.0, factor)
         return self.setting.orbits(self.module, self.source, states, key, {})
 
-    @cached_property
-    def _repelling(self) -> NDArray[np.bool_]:
-        """Whether each start lies exactly on a repelling cycle."""
+    def _repelling(self, stop: NDArray[np.uint8]) -> NDArray[np.bool_]:
+        """Return whether each start lies exactly on a repelling cycle; worth nothing once ``stop`` is set."""
+        if self._on_repelling is not None:
+            return self._on_repelling
         number = len(self.starts)
         few = self.at(1, 1, replace(self.rules, samples=1, transient_limit=0))
-        keys, base, stop = np.zeros(number, np.uint64), np.zeros(number, np.int32), np.zeros(1, np.uint8)
+        keys, base = np.zeros(number, np.uint64), np.zeros(number, np.int32)
         orbits = self.setting.orbits(self.module, self.source, self.starts.T, keys, {})
         block = Block(self.module, few.rules, few.axes, orbits, base, few.room(), stop)
         block.settle()
+        if not stop[0]:
+            self._on_repelling = block.on_repelling
         return block.on_repelling
