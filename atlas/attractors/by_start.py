@@ -139,11 +139,17 @@ class StartSorter:
         for claimed in claims.values():
             if len(claimed) > 1:
                 states = sorter.states(both, base + wanted[claimed[0]][1], STATES_COMPARED)
-                away = [np.abs(states - before[:, one]).max(axis=1).min() for one in claimed]
+                away = [self._away(states, before[:, one]) for one in claimed]
                 nearest = claimed[int(np.argmin(away))]
                 for one in claimed:
                     if one != nearest:
                         del wanted[one]
+
+    def _away(self, states: Floats, state: Floats) -> float:
+        """Return how far a state is from the nearest of some, the shorter way round periodic variables."""
+        gaps = np.abs(states - state)
+        gaps = np.minimum(gaps, np.abs(np.array(self.finder.source.widths) - gaps))
+        return float(gaps.max(axis=1).min())
 
     def _ends(self, begin: Floats, first: int, last: int, each: int, stop: NDArray[np.uint8]) -> Ends:
         finder = self.finder

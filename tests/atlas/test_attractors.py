@@ -19,7 +19,7 @@ from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.portrait import PortraitCounter
 from atlas.orbits.portrait_counts import count_portrait
 from atlas.orbits.schedule import schedule
-from atlas.planes.finder import Region
+from atlas.planes.finder import FateFinder, Region
 from atlas.planes.pixels import FateRules
 from tests.atlas.basin_cases import RULES, finder
 from tests.reference.attractors import ESCAPED, State, sorted_starts
@@ -136,6 +136,25 @@ def test_starts_that_escape_have_no_number_and_further_attractors_share_the_last
     numbers = _numbers("-0.1", "0.1", 5, starts_at(-1, 5, 1))
     assert numbers.tolist() == [[1, 0, 2]] * 5
     assert _numbers("-0.1", "0.1", 5, starts_at(-1, 5, 1), most=1).tolist() == [[1, 0, 1]] * 5
+
+
+def test_an_attractor_keeps_its_number_across_the_seam_of_a_periodic_variable() -> None:
+    """Two wells of a circle at s and s + 1/2, of which the second is lost while s goes through 0."""
+    wells = family_from_config(
+        "two_wells",
+        {
+            "state": {"t": {"start": "0.9", "wrap": [0, 1]}},
+            "parameters": {"q": {"default": "0"}},
+            "helpers": {"d": "t - 0.04*q + 0.02"},
+            "step": {"t": "t - 0.03*((1.5 - 1.25*q)*sin(4*pi*d) + sin(2*pi*d))"},
+        },
+        where="tests",
+    )
+    view = View(("q", "-0.5", "1.5"), ("t", 0, 1))
+    made = FateFinder(wells, view, 2, 4, RULES, starts=[{"t": exact("0.9")}, {"t": exact("0.45")}])
+    with schedule(1) as opened:
+        numbers = attractor_numbers(StartSorter(made, view.across.values(2, 1).reshape(-1)), opened)
+    assert numbers.tolist() == [[1, 2], [1, 1]]
 
 
 def _split(starts: Any, workers: int = 1) -> tuple[OrbitCounter, SplitCounts]:
