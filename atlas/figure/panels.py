@@ -133,7 +133,7 @@ def _plate_request(plate: Plate) -> PlateRequest:
 
 def legend_labels(plate: Plate) -> tuple[str, ...]:
     """Return the longest labels that the legend of a plate may have; none where it has no legend."""
-    if plate.kind == "follow":
+    if plate.follow == "both":
         return ("upward", "downward")
     if plate.by_attractor:
         return ("attractor 10", "no attractor found")

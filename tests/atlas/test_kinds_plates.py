@@ -235,6 +235,7 @@ def words_of(name: str) -> set[str]:
 def test_legends_name_what_is_in_the_picture() -> None:
     assert {"period 2", "period 4", "chaotic", "escapes"} <= words_of("fates")
     assert {"upward", "downward"} <= words_of("both_ways")
+    assert any(word.startswith("density (share of samples") for word in words_of("rising"))
     assert {"1 attractor", "2 attractors"} <= words_of("several")
     found = words_of("basins")
     assert "escapes" in found
