@@ -189,7 +189,7 @@ def attractor_numbers(
     ndarray of uint8, shape (values, starts)
         From 1; 0 for starts that reach no attractor.
     """
-    width = max(1, min(VALUES_AT_ONCE, ORBITS_AT_ONCE // len(sorter.starts)))
+    width = _values_at_once(len(sorter.starts))
 
     def group(first: int) -> Reached:
         last = min(first + width + 1, sorter.size)
@@ -215,6 +215,15 @@ def attractor_numbers(
     sorter.finder.warm()
     schedule.run((partial(group, first) for first in range(0, sorter.size, width)), done)
     return numbers
+
+
+def _values_at_once(starts: int) -> int:
+    return max(1, min(VALUES_AT_ONCE, ORBITS_AT_ONCE // starts))
+
+
+def orbits_sorted_at_once(starts: int) -> int:
+    """Return how many orbits a thread holds at most: of each value the starts', and those carried on."""
+    return 2 * starts * (_values_at_once(starts) + 1)
 
 
 class _Names:

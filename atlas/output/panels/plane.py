@@ -40,7 +40,7 @@ CAPTIONS = {
     "escape": "steps to escape",
 }
 FAR_BELOW = -1e30
-"""Stands for the exponent of a superstable cycle, minus infinity, in pictures."""
+"""Stands for the exponent of a superstable cycle, minus infinity, in pictures: it has the lowest shade."""
 
 
 class PlaneMaker:
@@ -99,7 +99,12 @@ class PlaneMaker:
 
 def worker_memory(finder: FateFinder) -> int:
     """Return the bytes that a thread works with, and of the regions that wait for their turn."""
-    return PIXELS_AT_ONCE * (BYTES_PER_ORBIT + BYTES_PER_STATE * len(finder.family.states))
+    return PIXELS_AT_ONCE * orbit_memory(len(finder.family.states))
+
+
+def orbit_memory(states: int) -> int:
+    """Return the bytes of an orbit on its way to its fate."""
+    return BYTES_PER_ORBIT + BYTES_PER_STATE * states
 
 
 def finding_seconds(finder: FateFinder) -> float:
@@ -190,7 +195,7 @@ class _Values:
     def finished(self) -> tuple[Raster, PanelText]:
         """Return the raster and its lettering."""
         plate = self.view.plate
-        fit = self.fit or fit_values(fitted_part(self.values), kind=_kind(plate), shading=plate.shading)
+        fit = self.fit or fit_values(seen_part(self.values), kind=_kind(plate), shading=plate.shading)
         self.fit = fit
         table = colour_table(plate.palette, background=plate.background, missing=plate.missing)
         shades = np.empty(self.values.shape, np.uint8)
@@ -225,6 +230,12 @@ def fitted_part(values: NDArray[Any]) -> NDArray[Any]:
     """Return the values that a fit is made to."""
     step = fitting_step(*values.shape)
     return values[::step, ::step]
+
+
+def seen_part(values: NDArray[Any]) -> NDArray[Any]:
+    """Return the values that a fit is made to, without those of superstable cycles, which span no ramp."""
+    part = fitted_part(values)
+    return part[part > FAR_BELOW]
 
 
 def _count_name(number: int) -> str:

@@ -7,14 +7,17 @@ from hashlib import blake2b
 import numpy as np
 from numpy.typing import NDArray
 
+from atlas.attractors.by_start import orbits_sorted_at_once
 from atlas.attractors.split_counts import SplitCounts, split_histogram, split_portrait
 from atlas.config.jobs import Job
 from atlas.figure.pieces import PanelText
 from atlas.orbits.counting import counter_of, portrait_of, resolved, resolved_portrait
+from atlas.orbits.portrait_counts import room_memory
 from atlas.orbits.schedule import Schedule
 from atlas.output.inking import Layered, overprinted
 from atlas.output.panel import Panel, Room, View, label_of
 from atlas.output.panels.histogram import BYTES_PER_COUNT, counting_seconds
+from atlas.output.panels.plane import KERNELS_MEMORY, orbit_memory
 from atlas.output.panels.portrait import portrait_seconds
 from atlas.output.remarks import remarks_on
 from atlas.output.reporter import PREPARING, Reporter
@@ -34,10 +37,14 @@ class SplitMaker:
         plate = view.plate
         if plate.kind == "portrait":
             samples = portrait_of(plate, view.columns, view.rows).exposure
+            each_worker = room_memory(view.columns, view.rows)
         else:
             counter = counter_of(plate, view.columns, view.rows)
             samples = counter.columns * counter.exposure
-        return Room(samples, BYTES_PER_COUNT * (MOST + 2) * view.cells, 3 * view.cells)
+            orbits = orbits_sorted_at_once(len(plate.starts))
+            each_worker = orbits * orbit_memory(len(plate.family.states))
+        working = KERNELS_MEMORY + BYTES_PER_COUNT * (MOST + 2) * view.cells
+        return Room(samples, working, 3 * view.cells, each_worker)
 
     def seconds(self, view: View) -> float:
         """Return the estimated time of one core."""
@@ -53,6 +60,7 @@ class SplitMaker:
             split, cell, exposure = _portrait(view, name, schedule, reporter)
         else:
             split, cell, exposure = _histogram(view, name, schedule, reporter)
+        digest = _digest(split)
         counts, names = told_apart(split.layers)
         layered = Layered(counts, np.full(view.columns, exposure, np.uint64), cell, names)
         raster, legend = overprinted(plate, plate.view, layered, branches=plate.kind == "histogram")
@@ -70,7 +78,7 @@ class SplitMaker:
             shares,
             sampled,
             split.exposure,
-            _digest(split),
+            digest,
             tuple(remarks_on(view.name, shares)),
         )
 
@@ -84,16 +92,22 @@ def told_apart(layers: NDArray[np.uint32]) -> tuple[NDArray[np.uint32], list[str
     Parameters
     ----------
     layers : ndarray of uint32, shape (most + 1, columns, rows)
-        As `atlas.attractors.split_counts` returns them.
+        As `atlas.attractors.split_counts` returns them; overwritten, for there is no room for a second copy.
     """
-    sums = layers.sum(axis=(1, 2), dtype=np.uint64)
-    large = [number for number in range(1, len(layers)) if sums[number] >= LEAST_SHARE * sums.sum()]
-    rest = [number for number in range(len(layers)) if number not in large and sums[number] > 0]
+    sums = [int(layer.sum(dtype=np.uint64)) for layer in layers]
+    large = [number for number in range(1, len(layers)) if sums[number] >= max(1, LEAST_SHARE * sum(sums))]
+    rest = [number for number in range(len(layers)) if number not in large and sums[number]]
     names = [f"attractor {number}" for number in range(1, len(large) + 1)]
-    if not rest and large:
-        return layers[large], names
-    others = layers[rest].sum(axis=0, dtype=np.uint32)
-    return np.concatenate([layers[large], others[None]]), [*names, OTHERS]
+    for number in rest:
+        if number:
+            layers[0] += layers[number]
+    others = layers[0].copy()
+    for place, number in enumerate(large):
+        layers[place] = layers[number]
+    if large and not rest:
+        return layers[: len(large)], names
+    layers[len(large)] = others
+    return layers[: len(large) + 1], [*names, OTHERS]
 
 
 def _histogram(
