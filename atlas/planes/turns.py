@@ -15,7 +15,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from atlas.orbits.block import STEPS_AT_ONCE
-from atlas.orbits.orbit import Stopped
 from atlas.planes.fates import CHAOTIC, FIXED_POINT, PERIODIC, QUASI_PERIODIC
 from atlas.planes.pixels import Order, Pixels
 
@@ -41,12 +40,8 @@ def rotation(found: Pixels, winding: int | None) -> Floats:
     Returns
     -------
     ndarray of float64, shape (orbits,)
-        Turns per step; about a mean from 0 to 1/2, and none for a fixed point.
-
-    Raises
-    ------
-    Stopped
-        When the work was interrupted.
+        Turns per step; about a mean from 0 to 1/2, and none for a fixed point. Worth nothing once ``stop``
+        of the orbits is set: the work ends early then.
     """
     turns = np.full(found.fate.size, np.nan)
     cyclic = (found.fate == PERIODIC) | ((found.fate == FIXED_POINT) & (winding is not None))
@@ -72,7 +67,7 @@ def _turns(found: Pixels, order: Order, steps: int, winding: int | None, *, weig
     whole = steps if weighted else 0
     for first, last in _slices(found, order, steps):
         found.kernels.turning(x, *found.map, order, first, last - first, whole, mean, total, weights)
-    return total[order] / weights[0] if weighted else total[order]
+    return total[order] / weights[0] if weighted and not found.stop[0] else total[order]
 
 
 def _slices(found: Pixels, order: Order, steps: int) -> Iterator[tuple[int, int]]:
@@ -80,5 +75,5 @@ def _slices(found: Pixels, order: Order, steps: int) -> Iterator[tuple[int, int]
     each = max(1, STEPS_AT_ONCE // order.size)
     for first in range(0, steps, each):
         if found.stop[0]:
-            raise Stopped("the work was interrupted")
+            return
         yield first, min(first + each, steps)
