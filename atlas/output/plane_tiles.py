@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Mapping
 from functools import partial
 from typing import Any
 
@@ -158,8 +159,20 @@ def plane_header(job: TileSet) -> dict[str, Any]:
 
 
 def _made(job: TileSet, finder: FateFinder, index: PlaneIndex) -> Made:
-    shares = Tally(index.class_totals()).shares()
+    shares = tile_shares(job, index.class_totals())
     record = certificate(
         "tile set", job.name, normalised(job), index.counts_digest(), shares, record_of(finder)
     )
-    return Made(finder.columns * finder.rows, record, tuple(remarks_on_fates(job.name, shares)))
+    remarks = () if job.draw == "attractors" else remarks_on_fates(job.name, shares)
+    return Made(finder.columns * finder.rows, record, tuple(remarks))
+
+
+def tile_shares(job: TileSet, totals: Mapping[int, int]) -> dict[str, float | int]:
+    """Return the shares of pixels that a certificate names, as the classes of a complete index tell them.
+
+    How many orbits were run again is not among them: a run that goes on from finished tiles does not know.
+    """
+    if job.draw == "attractors":
+        return {"without_attractor": totals.get(CLASS_NONE, 0) / sum(totals.values())}
+    shares = Tally(dict(totals)).shares()
+    return {name: shares[name] for name in ("escaped", "extinct", "unsettled")}

@@ -21,7 +21,7 @@ from atlas.config.jobs import TileSet
 from atlas.config.remake import from_normalised
 from atlas.output.certificate import read
 from atlas.output.tileset import rebuild_site
-from atlas.planes.fates import CLASS_CHAOTIC, CLASS_ESCAPES
+from atlas.planes.fates import CLASS_CHAOTIC, CLASS_ESCAPES, CLASS_NONE, CLASS_UNSETTLED
 from tests.atlas import kinds
 from tests.atlas.kinds import KINDS, classes_of, config, plane
 from tests.atlas.rendered import files, render, statuses
@@ -383,3 +383,15 @@ def test_a_basin_chart_killed_while_its_site_is_written_is_completed(made: Path,
     finished(out, "basin_tiles")
     expected = {name: content for name, content in files(made).items() if name.startswith("basin_tiles/")}
     assert files(out) == expected
+
+
+def test_certificates_of_planes_say_what_their_tiles_tell_and_no_more(made: Path) -> None:
+    with opened(made, "number_tiles") as index:
+        none = float((mosaic(index, index.pairs[-1], lambda tile: tile.majority()) == CLASS_NONE).mean())
+        assert index.certificate["shares"] == {"without_attractor": none}
+    with opened(made, "escape_tiles") as index:
+        classes = mosaic(index, index.pairs[-1], lambda tile: tile.majority())
+        shares = index.certificate["shares"]
+        assert set(shares) == {"escaped", "extinct", "unsettled"}
+        assert shares["escaped"] == (classes == CLASS_ESCAPES).mean() > 0
+        assert shares["unsettled"] == (classes == CLASS_UNSETTLED).mean()
