@@ -19,7 +19,7 @@ from atlas.attractors.basins import Basins, chart_basins
 from atlas.config.digests import counting_digest, normalised
 from atlas.config.jobs import TileSet
 from atlas.errors import PlanRefused
-from atlas.orbits.counting import counter_of, piloted, portrait_of, resolved_portrait
+from atlas.orbits.counting import counter_of, portrait_of, resolved, resolved_portrait
 from atlas.orbits.follow import count_followed
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.portrait import Portrait, PortraitCounter
@@ -110,9 +110,7 @@ def make_follow_tiles(
 ) -> Made:
     """Follow an attractor along the whole view, build its index and its static folder."""
     reporter.begin(job.name, PREPARING, 0)
-    counter = follow_counter(job)
-    if job.samples == "auto":
-        counter = counter.with_samples(piloted(counter, opened))
+    counter = resolved(job, follow_counter(job), opened)
     counter.warm()
     total = counter.columns * counter.exposure
     reporter.begin(job.name, "following", total)

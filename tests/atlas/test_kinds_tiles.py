@@ -18,9 +18,14 @@ from PIL import Image
 import atlas
 from atlas.cli import main
 from atlas.config.jobs import TileSet
+from atlas.config.load import parse_config
 from atlas.config.remake import from_normalised
+from atlas.orbits.counting import piloted
+from atlas.orbits.sampling import IN_TILES, ON_PLATES
+from atlas.orbits.schedule import schedule
 from atlas.output.certificate import read
 from atlas.output.tileset import rebuild_site
+from atlas.output.whole_tiles import follow_counter
 from atlas.planes.fates import CLASS_CHAOTIC, CLASS_ESCAPES, CLASS_NONE, CLASS_UNSETTLED
 from tests.atlas import kinds
 from tests.atlas.kinds import KINDS, classes_of, config, plane
@@ -395,3 +400,14 @@ def test_certificates_of_planes_say_what_their_tiles_tell_and_no_more(made: Path
         assert set(shares) == {"escaped", "extinct", "unsettled"}
         assert shares["escaped"] == (classes == CLASS_ESCAPES).mean() > 0
         assert shares["unsettled"] == (classes == CLASS_UNSETTLED).mean()
+
+
+def test_automatic_samples_of_a_followed_tile_set_are_those_of_tiles(tmp_path: Path) -> None:
+    view = {"family": "henon", "across": ["a", 1, "1.1"], "up": ["x", "-1.5", "1.5"], "follow": "up"}
+    wanted = parse_config({"tile_sets": {"rising": {**view, "levels": 0, "transient_limit": 2000}}})
+    assert statuses(render(tmp_path, wanted, workers=1)) == {"rising": "made"}
+    with schedule(1) as workers:
+        counter = follow_counter(wanted.tile_sets["rising"])
+        expected = piloted(counter, workers, IN_TILES)
+        assert expected < piloted(counter, workers, ON_PLATES)
+    assert read(tmp_path / "rising/index.sqlite")["samples"]["of_each_orbit"] == expected

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from atlas.figure.pieces import PanelText
-from atlas.orbits.counting import counter_of, piloted
+from atlas.orbits.counting import counter_of, resolved
 from atlas.orbits.follow import SWEEPS, count_followed
 from atlas.orbits.orbit import OrbitCounter
 from atlas.orbits.schedule import Schedule
@@ -43,9 +43,7 @@ class FollowMaker:
         plate = view.plate
         assert plate.follow is not None
         reporter.begin(name, PREPARING, 0)
-        counter = _counter(view)
-        if plate.samples == "auto":
-            counter = counter.with_samples(piloted(counter, schedule))
+        counter = resolved(plate, _counter(view), schedule)
         counter.warm()
         reporter.begin(name, "following", _sweeps(view) * counter.columns * counter.exposure)
         sweeps = count_followed(counter, plate.follow, schedule, reporter.advance)
