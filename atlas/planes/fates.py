@@ -13,13 +13,14 @@ numbers:
    at period p (p a multiple of the length of the pattern) that is nearer than 2**-10 of its size, the
    largest of the next p states and of the start, is *confirmed* when the distance to its limit, estimated
    as 4 d r / (1 - r) from the widest of the gaps d between states p steps apart on a whole period and their
-   ratio r, is not above 2**-20 of that size, and no multiplier of the cycle exceeds 1 + 1e-6 in size. A
-   variable with a threshold of extinction that is nearer to 0 than 2**-20 of the size may still die out, so
-   nothing is confirmed then. The period is the least divisor of p after which all states of the next p come
-   back within 2**-17 of the size. The exponents of a cycle are those of its multipliers. A state that comes
-   back bit for bit on a repelling cycle has collapsed there by rounding: the orbit is run again from its
-   start, every step disturbed by a hashed factor 1 - u 2**-40, and not looked at; unless its start lies on
-   that cycle itself.
+   ratio r (with several variables d is the widest of p and at least 64 steps, which must not have grown by
+   more than 1/16 in the next as many, and r the largest multiplier of the cycle), is not above 2**-20 of
+   that size, and no multiplier of the cycle exceeds 1 + 1e-6 in size. A variable with a threshold of
+   extinction that is nearer to 0 than 2**-20 of the size may still die out, so nothing is confirmed then.
+   The period is the least divisor of p after which all states of the next p come back within 2**-17 of the
+   size. The exponents of a cycle are those of its multipliers. A state that comes back bit for bit on a
+   repelling cycle has collapsed there by rounding: the orbit is run again from its start, every step
+   disturbed by a hashed factor 1 - u 2**-40, and not looked at; unless its start lies on that cycle itself.
 3. An orbit that comes near its past and whose gaps shrink, but whose limit is still too far, is
    *approaching*. It is run on, as many steps again as it has done, up to the limit of the transient, and is
    then *unsettled*; each time the steps were doubled, the widest of the gaps between states p steps apart,

@@ -215,17 +215,31 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
         if repeat[m] == 0:
             if not gap[m] < reach * 2.0 ** -10:
                 continue
+            BEGIN_SINGLE
             left = distance_left(x, c, word, m, before, p, largest, half, relative, work)
             if left < 0.0:
                 continue
             if gap[m] > 0.0 and left > 0.0:
                 left *= widest_gap(x, c, word, m, before, p, p) / gap[m]
+            END_SINGLE
+            BEGIN_SEVERAL
+            early, late = widest_gaps(x, c, word, m, before, p)
+            left = 0.0
+            if not early <= 1e-15 * largest:
+                if not late <= 1.0625 * early:
+                    continue
+                multipliers(x, c, word, m, before, p, logs)
+                rate = exp(logs[0] * p)
+                left = 4.0 * early * rate / (1.0 - rate) if rate < 1.0 else np.inf
+                if not late < early and left > reach * 2.0 ** -20:
+                    continue
+            END_SEVERAL
             dying = False
             for k in range(NX):
                 dying = dying or (low[k] > 0.0 and abs(x[k, m]) < reach * 2.0 ** -20)
             if left > reach * 2.0 ** -20 or dying:
                 outcome[m] = NEAR
-                away[m] = widest_gap(x, c, word, m, before, p, 64)
+                away[m] = widest_gap(x, c, word, m, before, p, WINDOW)
                 continue
         multipliers(x, c, word, m, before, p, logs)
         if logs[0] * p > 1e-6:
@@ -270,6 +284,31 @@ def widest_gap(x, c, word, m, before, cycle, least):
             d = abs(states[k, n + cycle] - states[k, n])
             most = max(most, min(d, abs(WIDTHS[k] - d)))
     return most
+
+
+@compiled
+def widest_gaps(x, c, word, m, before, cycle):
+    """Return the widest gaps between states a period apart over two windows, one after the other.
+
+    Each is of a period and of at least WINDOW steps: so long that the gaps of a spiral, which rise and fall
+    as it turns, have been at their widest.
+    """
+    LOAD_ORBIT
+    steps = max(cycle, WINDOW)
+    states = np.empty((NX, 2 * steps + cycle))
+    for n in range(2 * steps + cycle):
+        NOTE states
+        AT before + n
+        STEP 0
+    early = 0.0
+    late = 0.0
+    for n in range(steps):
+        for k in range(NX):
+            d = abs(states[k, n + cycle] - states[k, n])
+            early = max(early, min(d, abs(WIDTHS[k] - d)))
+            d = abs(states[k, n + steps + cycle] - states[k, n + steps])
+            late = max(late, min(d, abs(WIDTHS[k] - d)))
+    return early, late
 
 
 @compiled

@@ -24,6 +24,8 @@ from atlas.planes.plane_kernels import (
 )
 from atlas.planes.turn_kernels import TURN
 
+WINDOW = 64
+"""Steps over which the gaps of an orbit that turns are at their widest once."""
 BACKWARD = 2.0**-8
 """Turns about a mean by half a turn, and by so much less, count as backward: else rounding would decide of
 every step of a 2-cycle, whose two points lie on opposite sides, which way round it goes."""
@@ -63,7 +65,9 @@ def plane_source(source: StepSource, *, lanes: int, mortal: Sequence[int], windi
     codes = {"OPEN": OPEN, "GONE": GONE, "DEAD": DEAD, "MET": MET, "NEAR": NEAR, "AGAIN": AGAIN}
     constants = {name: str(code) for name, code in codes.items()}
     constants |= {"LANES": str(lanes), "NV_ALL": str(sum(lengths(source.states)))}
-    return writer.named(text, constants | {"RESCALED": "32" if source.states == 1 else "16"})
+    return writer.named(
+        text, constants | {"WINDOW": str(WINDOW), "RESCALED": "32" if source.states == 1 else "16"}
+    )
 
 
 def _on_cycle() -> list[str]:

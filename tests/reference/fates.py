@@ -170,11 +170,9 @@ class FateTwin:
         if not repeats:
             if not gaps[p] < size * 2.0**-10:
                 return None
-            left = self._distance_left(x, p, largest)
+            left = self._distance_left(x, p, largest, size)
             if left is None:
                 return None
-            if left > 0.0:
-                left *= self._widest_gap(x, p, p) / gaps[p]
             dying = any(
                 low > 0.0 and abs(value) < size * 2.0**-20 for value, low in zip(x, self.low, strict=True)
             )
@@ -191,25 +189,45 @@ class FateTwin:
                 raise Collapsed
         return Cycle(p, self._least(self._next_round(ahead[:p]), size * 2.0**-17), exponents, repelling)
 
-    def _distance_left(self, x: State, p: int, size: float) -> float | None:
+    def _distance_left(self, x: State, p: int, largest: float, size: float) -> float | None:
         """Return the estimated distance to the limit; None where there is none."""
-        one = len(x) == 1
-        gaps, time = [], 0
-        for _ in range(3 if one else 8):
+        return self._left_of_one(x, p, largest) if len(x) == 1 else self._left_of_several(x, p, largest, size)
+
+    def _left_of_one(self, x: State, p: int, largest: float) -> float | None:
+        begin, gaps, time = x, [], 0
+        for _ in range(3):
             before = x
             for _ in range(p):
                 x = self.map.step(x, time)
                 time += 1
             gaps.append(self.map.distance(x, before))
-        if gaps[0] <= 1e-15 * size:
+        if gaps[0] <= 1e-15 * largest:
             return 0.0
-        if one:
-            ratio = max(gaps[1] / gaps[0], gaps[2] / gaps[1] if gaps[1] > 0.0 else 0.0)
-        else:
-            ratio = sqrt(sqrt(max(gaps[4:]) / max(gaps[:4])))
+        ratio = max(gaps[1] / gaps[0], gaps[2] / gaps[1] if gaps[1] > 0.0 else 0.0)
         if not ratio < 1.0:
             return None
-        return 4.0 * (gaps[0] if one else max(gaps)) * ratio / (1.0 - ratio)
+        left = 4.0 * gaps[0] * ratio / (1.0 - ratio)
+        return left * (self._widest_gap(begin, p, p) / gaps[0]) if left > 0.0 else left
+
+    def _left_of_several(self, x: State, p: int, largest: float, size: float) -> float | None:
+        """Return the estimate from the widest gap and the largest multiplier, if the gaps do not grow."""
+        begin, steps = x, max(p, 64)
+        early = self._widest_gap(x, p, 64)
+        if early <= 1e-15 * largest:
+            return 0.0
+        for n in range(steps):
+            x = self.map.step(x, n)
+        states = [x]
+        for n in range(steps + p - 1):
+            states.append(self.map.step(states[-1], steps + n))
+        late = max(self.map.distance(states[n + p], states[n]) for n in range(steps))
+        if not late <= 1.0625 * early:
+            return None
+        rate = exp(self._multipliers(begin, p)[0] * p)
+        if rate >= 1.0:
+            self._ways.add("near a repelling cycle")
+        left = 4.0 * early * rate / (1.0 - rate) if rate < 1.0 else inf
+        return left if late < early or left <= size * 2.0**-20 else None
 
     def _widest_gap(self, x: State, p: int, least: int) -> float:
         """Return the widest gap between states p steps apart, over p and at least some steps."""

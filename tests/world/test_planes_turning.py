@@ -160,12 +160,12 @@ class TestBogdanov:
     def test_the_origin_attracts_below_0_and_with_its_exact_exponents(self) -> None:
         """The determinant is 1 + eps; the trace 2 - k + eps makes a complex pair.
 
-        A few slow spirals are not seen to near the origin; they must not pass for another cycle.
+        A slow spiral may not be seen to near the origin; it must not pass for another cycle.
         """
         made = plane(BOGDANOV, ("eps", "-0.1", "0.1"), ("k", "0.2", "2.6"), (20, 12), LAYERS)
         assert (made.fate.values[:, 10:] != FIXED_POINT).all()
         met = made.fate.values[:, :10] == FIXED_POINT
-        assert met.sum() >= 116
+        assert met.sum() >= 119
         assert (made.period.values[:, :10][~met] == 0).all()
         told = np.broadcast_to(np.log(1 + made.eps.values[:10]) / 2, (12, 10))
         np.testing.assert_allclose(made.lyapunov.values[:, :10][met], told[met], atol=1e-6)
@@ -185,10 +185,7 @@ class TestBeddington:
 
     @pytest.mark.parametrize("name", ids("bed.ns."))
     def test_hosts_and_parasitoids_turn_beyond_the_published_points(self, name: str) -> None:
-        """Along r at the K of that point; the equilibrium attracts above it.
-
-        At q = 0.35 spirals are so slow that they may pass for turning, but for no cycle.
-        """
+        """Along r at the K of that point; the equilibrium attracts above it, slowly in the nearest pixel."""
         record = published(name)
         q, onset = float(record.parameters["q"]), record.number(0)
         attack = float(onset) * (1 - q)
@@ -201,7 +198,7 @@ class TestBeddington:
         )
         steady = made.fate.values[0] == FIXED_POINT
         assert not steady[:4].any()
-        assert steady[5:].all() or q < 0.4
+        assert steady[6:].all()
         assert (made.period.values[0, 5:] <= 1).all()
         assert (made.lyapunov.values[0, 5:] < 1e-3).all()
         turning = made.rotation.values[0, 3]
