@@ -136,7 +136,7 @@ def legend_labels(plate: Plate) -> tuple[str, ...]:
     if plate.follow == "both":
         return ("upward", "downward")
     if plate.by_attractor:
-        return ("attractor 10", "no attractor found")
+        return ("attractor 10", "others")
     if plate.draw == "basin":
         return ("10: quasi-periodic", f"10: period {plate.longest_period}")
     if plate.draw == "attractors":

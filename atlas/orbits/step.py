@@ -253,5 +253,9 @@ def load_module(text: str) -> ModuleType:
             raise ImportError(f"cannot import {path}")
         module = importlib.util.module_from_spec(spec)
         sys.modules[name] = module
-        spec.loader.exec_module(module)
+        try:
+            spec.loader.exec_module(module)
+        except BaseException:
+            del sys.modules[name]
+            raise
         return module

@@ -42,7 +42,7 @@ class PlaneSource:
 
     def __init__(self, job: TileSet, finder: FateFinder, schedule: Schedule, reporter: Reporter) -> None:
         self.finder, self.schedule, self.reporter = finder, schedule, reporter
-        self.counted = job.draw == "attractors"
+        self.counted, self.periods = job.draw == "attractors", job.draw == "period"
         self.values = value_names(job)
 
     def __call__(self, address: Address) -> PlaneTile:
@@ -61,6 +61,8 @@ class PlaneSource:
                 classes[at] = np.where(number == 0, CLASS_NONE, number)
             else:
                 classes[at] = classes_of(layers["fate"], layers["period"])
+                if self.periods:
+                    classes[at][layers["period"] == 0] = CLASS_NONE
             for name, array in values.items():
                 array[at] = layers[name].astype(np.float32)
             self.reporter.advance(width * TILE)
@@ -139,7 +141,7 @@ def plane_header(job: TileSet) -> dict[str, Any]:
         layer, label = "attractors", "attractors"
     else:
         names = {str(number): name for number, name in CLASS_NAMES.items()} | {"period": "period {}"}
-        layer, label = "fate", "fate"
+        layer = label = "period" if job.draw == "period" else "fate"
     return {
         **header_of(job),
         "class_layer": layer,
@@ -163,7 +165,7 @@ def _made(job: TileSet, finder: FateFinder, index: PlaneIndex) -> Made:
     record = certificate(
         "tile set", job.name, normalised(job), index.counts_digest(), shares, record_of(finder)
     )
-    remarks = () if job.draw == "attractors" else remarks_on_fates(job.name, shares)
+    remarks = remarks_on_fates(job.name, shares) if "escaped" in shares else ()
     return Made(finder.columns * finder.rows, record, tuple(remarks))
 
 
@@ -174,5 +176,7 @@ def tile_shares(job: TileSet, totals: Mapping[int, int]) -> dict[str, float | in
     """
     if job.draw == "attractors":
         return {"without_attractor": totals.get(CLASS_NONE, 0) / sum(totals.values())}
+    if job.draw == "period":
+        return {"without_cycle": totals.get(CLASS_NONE, 0) / sum(totals.values())}
     shares = Tally(dict(totals)).shares()
     return {name: shares[name] for name in ("escaped", "extinct", "unsettled")}

@@ -31,7 +31,7 @@ from atlas.output.colouring import key_caption
 from atlas.output.panels.basin import attractor_record, kind_of, told
 from atlas.output.panels.histogram import sampled_of as columns_sampled
 from atlas.output.panels.plane import record_of
-from atlas.output.panels.portrait import KEY_CAPTION
+from atlas.output.panels.portrait import KEY_CAPTION, ROOMS
 from atlas.output.printing import Made
 from atlas.output.remarks import remarks_on, remarks_on_basins, remarks_on_portrait
 from atlas.output.reporter import PREPARING, Reporter
@@ -47,8 +47,8 @@ from tiles.plane_index import PlaneIndex
 from tiles.store import written
 from tiles.strip import Strip
 
-BYTES_PER_CELL = {"portrait": 12, "follow": 4, "basin": 7}
-"""What is alive at the peak: counts and the room they were counted in; counts; classes with their keys."""
+BYTES_PER_CELL = {"portrait": 4 + 8 * ROOMS, "follow": 4, "basin": 7}
+"""What is alive at the peak: counts and the rooms they were counted in; counts; classes with their keys."""
 MOST_LISTED = 64
 
 
@@ -80,7 +80,7 @@ def make_portrait_tiles(
     counter = resolved_portrait(job, portrait_counter(job), opened)
     counter.warm()
     reporter.begin(job.name, "counting", counter.exposure)
-    portrait = count_portrait(counter, opened, reporter.advance, at_once=1)
+    portrait = count_portrait(counter, opened, reporter.advance, at_once=ROOMS)
     shares = portrait.shares()
     record = certificate(
         "tile set", job.name, normalised(job), portrait.digest(), shares, sampled_of(counter, portrait)

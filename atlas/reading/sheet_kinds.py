@@ -83,7 +83,7 @@ class FactorKind(Kind[int]):
         return number
 
     def schema(self) -> Schema:
-        return Whole(min(self.choices), max(self.choices)).schema()
+        return {"enum": [*self.choices, *map(str, self.choices)]}
 
 
 Panels = tuple[tuple[str, ...], ...]

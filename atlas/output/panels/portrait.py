@@ -17,6 +17,8 @@ from atlas.output.reporter import PREPARING, Reporter
 from tiles.shading import colour_table, fit_counts, key_labels, shade_counts
 
 SECONDS_PER_SAMPLE, SECONDS_PER_SLOW_CALL = 4e-9, 0.6e-9
+ROOMS = 2
+"""Arrays that are counted into side by side."""
 KEY_CAPTION = "density (share of samples per unit of area)"
 
 
@@ -26,7 +28,8 @@ class PortraitMaker:
     def room(self, view: View) -> Room:
         """Return what a view needs."""
         counter = _counter(view)
-        working = room_memory(view.columns, view.rows) + result_memory(view.columns, view.rows)
+        rooms = ROOMS * room_memory(view.columns, view.rows)
+        working = rooms + result_memory(view.columns, view.rows)
         return Room(counter.exposure, working, view.cells)
 
     def seconds(self, view: View) -> float:
@@ -40,7 +43,7 @@ class PortraitMaker:
         counter = resolved_portrait(plate, _counter(view), schedule)
         counter.warm()
         reporter.begin(name, "counting", counter.exposure)
-        portrait = count_portrait(counter, schedule, reporter.advance, at_once=1)
+        portrait = count_portrait(counter, schedule, reporter.advance, at_once=ROOMS)
         shares = portrait.shares()
         raster, text = _shaded(view, portrait)
         return Panel(
