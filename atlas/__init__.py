@@ -1,4 +1,6 @@
-"""Bifurcation plates and zoomable tile sets of iterated maps, from formulas in a YAML file.
+"""Bifurcation diagrams, parameter planes, phase portraits and basin charts of iterated maps.
+
+Plates and zoomable tile sets from formulas in a YAML file.
 
 Everything that the commands do is a call. Modules are imported when a name is first used, so that importing
 the package costs nothing.

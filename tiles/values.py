@@ -6,7 +6,8 @@ of shaded tiles equals the shaded mosaic. There are three kinds, one for each ki
 
 - ``diverging``: zero lies in the middle of the ramp. Each side is scaled on its own, in equal steps from 0 to
   the value that 99 % of the cells on that side do not exceed in size, so that both colours are used where one
-  sign is much larger than the other.
+  sign is much larger than the other; but to 1/32 of the other side at least, so that what scatters around
+  zero stays pale.
 - ``cyclic``: the fractional part, in equal steps. Shade 1 is centred on 0, so that halves, thirds, quarters,
   sixths, eighths and ninths stand in the middle of a shade: what scatters around them does not flicker.
 - ``sequential``: by the shadings known from densities. ``equalised``, the default, gives every shade an equal
@@ -33,6 +34,7 @@ __all__ = ["KINDS", "ValueFit", "ValuesRefused", "fit_values", "shade_values", "
 KINDS = ("sequential", "diverging", "cyclic")
 _HALF = LEVELS // 2
 _FEW, _NEARLY_ALL = 0.01, 0.99
+_LEAST_SIDE = 32.0
 _BLOCK = 1 << 17
 
 
@@ -187,6 +189,7 @@ def _diverging(ordered: Floats) -> ValueFit:
     low = _share(-ordered[ordered < 0][::-1], _NEARLY_ALL)
     high = _share(ordered[ordered > 0], _NEARLY_ALL)
     low, high = low or high or 1.0, high or low or 1.0
+    low, high = max(low, high / _LEAST_SIDE), max(high, low / _LEAST_SIDE)
     steps = np.arange(_HALF + 1) / _HALF
     return ValueFit("diverging", -low, high, np.concatenate([-low * steps[-2:0:-1], high * steps[:-1]]))
 

@@ -59,7 +59,10 @@ class _Commands(click.Group):
 @click.version_option(package_name="iterated-map-atlas", prog_name="atlas")
 @click.pass_context
 def atlas(ctx: click.Context) -> None:
-    """Bifurcation plates and zoomable tile sets of iterated maps, from formulas in a YAML file."""
+    """Bifurcation diagrams, parameter planes, phase portraits and basin charts of iterated maps.
+
+    Plates and zoomable tile sets from formulas in a YAML file.
+    """
     if ctx.invoked_subcommand is None:
         raise Refusal(no_command(COMMANDS))
 

@@ -76,5 +76,7 @@ def overprinted(
             for each in counts
         ]
         pixels[:, at] = inked(shades, inks, **ground)
-    legend = tuple(LegendEntry(name, swatch(ink)) for name, ink in zip(layered.names, inks, strict=True))
-    return Raster(None, None, view, layered.unsettled, pixels), legend
+    legend = [LegendEntry(name, swatch(ink)) for name, ink in zip(layered.names, inks, strict=True)]
+    if densities == 2:
+        legend.append(LegendEntry("both", swatch(*inks)))
+    return Raster(None, None, view, layered.unsettled, pixels), tuple(legend)

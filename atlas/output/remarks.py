@@ -93,7 +93,11 @@ def remarks_on_basins(name: str, shares: Mapping[str, float | int], told: Sequen
     told : sequence of str
         About each attractor.
     """
-    found = [f"{name}: shares of the box: {', '.join(told)} (standard errors binomial)"] if told else []
+    rest = [
+        f"{what} {float(shares[what]):.2g}" for what in ("escaped", "extinct", "unsettled") if shares[what]
+    ]
+    parts = ", ".join([*told, *rest])
+    found = [f"{name}: shares of the box: {parts} (standard errors binomial)"] if told else []
     if shares.get("further_attractors"):
         found.append(
             f"{name}: {shares['further_attractors']:.2%} of the starts reach attractors that are not told "

@@ -353,7 +353,7 @@ REMARKS: dict[str, tuple[dict[str, Any], str]] = {
     ),
     "shared": (
         {**HENON, "across": ["x", -2, 2], "up": ["y", -2, 2], "set": {"a": "0.5"}, "draw": "basin"},
-        r"^shared: shares of the box: attractor 1 \(period 2\) \d\d\.\d\d% ± \d\.\d\d% \(standard errors",
+        r"^shared: shares of the box: attractor 1 \(period 2\) 0\.\d+ ± 0\.0\d*, escaped 0\.\d+ \(standard errors",
     ),
     "swept": (
         {**HENON, "across": ["a", 3, 4], "up": ["x", -1, 1], "follow": "both", "samples": 100},
@@ -413,7 +413,7 @@ def test_many_basins_are_told_in_short_and_all_named_in_the_legend() -> None:
     chart = Basins(classes, attractors, 3, 5, {ESCAPES: 10}, 0, 0)
     parts = told(chart)
     assert len(parts) == 13
-    assert parts[0] == "attractor 9 (period 9) 0.90% ± 0.10%"
+    assert parts[0] == "attractor 9 (period 9) 0.009 ± 0.001"
     assert parts[-1] == "8 smaller ones 3.60% together"
     labels = [entry.label for entry in legend_of_basins(chart)]
     assert labels[:2] == ["1: chaotic", "2: period 2"]

@@ -139,7 +139,15 @@ def test_a_diverging_key_labels_zero_and_equal_steps(low, high):
     for place, text in labels:
         if "×" not in text and "10" not in text:
             value = float(text.replace("−", "-"))
-            assert place == pytest.approx(0.5 + 0.5 * value / (high if value > 0 else low))
+            assert place == pytest.approx(0.5 + 0.5 * value / (fit.high if value > 0 else -fit.low))
+
+
+def test_a_side_of_a_diverging_ramp_is_a_32nd_of_the_other_at_least():
+    """Exponents that scatter around zero are pale, however deep the cycles beside them are."""
+    values = np.concatenate([np.full(100, -3.2), np.full(100, 1e-3)])
+    fit = fit_values(values, kind="diverging")
+    assert (fit.low, fit.high) == (-3.2, 0.1)
+    assert set(shade_values(values, fit).tolist()) == {1, LEVELS // 2 + 2}
 
 
 def test_keys_of_the_other_kinds():

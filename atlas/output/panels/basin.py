@@ -111,10 +111,10 @@ def told(basins: Basins) -> list[str]:
     """Return a sentence's parts about the shares of basins: the largest in order of number, then the rest."""
     largest = sorted(basins.attractors, key=lambda one: -one.share)
     listed = sorted(largest[:MOST_LISTED], key=lambda one: one.number)
-    parts = [f"attractor {one.number} ({kind_of(one)}) {one.share:.2%} ± {one.error:.2%}" for one in listed]
+    parts = [f"attractor {one.number} ({kind_of(one)}) {one.share:.4g} ± {one.error:.1g}" for one in listed]
     others = largest[MOST_LISTED:]
     if others:
-        parts.append(f"{len(others)} smaller ones {sum(one.share for one in others):.2%} together")
+        parts.append(f"{len(others)} smaller ones {sum(one.share for one in others):.4g} together")
     return parts
 
 

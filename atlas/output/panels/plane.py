@@ -92,7 +92,7 @@ class PlaneMaker:
             record_of(finder, view.plate.supersampling),
             finder.columns * finder.rows,
             picture.digest(),
-            tuple(remarks_on_fates(view.name, shares)),
+            tuple(remarks_on_fates(view.name, shares) + _remarks_on_starts(view)),
             picture.fit,
         )
 
@@ -118,6 +118,16 @@ def step_seconds(finder: FateFinder) -> float:
     """Return the estimated time of one step of an orbit and of what is measured along it."""
     slow = SECONDS_PER_SLOW_CALL * step_source(finder.family).slow_calls
     return SECONDS_PER_STEP * len(finder.family.states) + slow
+
+
+def _remarks_on_starts(view: View) -> list[str]:
+    others = len(view.plate.starts) - 1
+    if not others or view.plate.draw == "attractors":
+        return []
+    return [
+        f"{view.name}: a plane of {view.plate.draw} is that of the first start; the {others} other starts "
+        "serve draw: attractors alone"
+    ]
 
 
 def record_of(finder: FateFinder, supersampling: int = 1) -> dict[str, Any]:
