@@ -353,7 +353,7 @@ REMARKS: dict[str, tuple[dict[str, Any], str]] = {
     ),
     "shared": (
         {**HENON, "across": ["x", -2, 2], "up": ["y", -2, 2], "set": {"a": "0.5"}, "draw": "basin"},
-        r"^shared: shares of the box: attractor 1 \(period 2\) 0\.\d+ ± 0\.0\d*, escaped 0\.\d+ \(standard errors",
+        r"^shared: shares of the box: attractor 1 \(period 2\) 0\.\d+ ± 0\.0\d*, escaped 0\.\d+ \(stand",
     ),
     "swept": (
         {**HENON, "across": ["a", 3, 4], "up": ["x", -1, 1], "follow": "both", "samples": 100},
@@ -414,7 +414,7 @@ def test_many_basins_are_told_in_short_and_all_named_in_the_legend() -> None:
     parts = told(chart)
     assert len(parts) == 13
     assert parts[0] == "attractor 9 (period 9) 0.009 ± 0.001"
-    assert parts[-1] == "8 smaller ones 3.60% together"
+    assert parts[-1] == "8 smaller ones 0.036 together"
     labels = [entry.label for entry in legend_of_basins(chart)]
     assert labels[:2] == ["1: chaotic", "2: period 2"]
     assert labels[-2:] == ["3 further", "escapes"]
