@@ -54,7 +54,7 @@ DRAWN: dict[str, tuple[tuple[str, ...], str]] = {
     ),
     "vast values": (
         (*PLANE, "--draw", "lyapunov", "--size", "20000x20000px"),
-        "2.2 GiB of memory and the budget",
+        "2.1 GiB of memory and the budget",
     ),
     "steps": ((*PLANE, "--steps", "10"), "--steps: "),
     "steps of a density": ((*MIXED, "--steps", "100"), "belongs to a parameter plane or a basin chart"),
@@ -181,7 +181,7 @@ CONFIGS: dict[str, tuple[dict[str, Any], str]] = {
     ),
     "large portrait": (
         {"tile_sets": {"view": {"family": "henon", "across": ["x", -1, 1], "up": ["y", -1, 1], "levels": 6}}},
-        "view: 16384 x 16384 pixels would need 3.2 GiB",
+        "view: 16384 x 16384 pixels would need 5.2 GiB",
     ),
     "deep basin": (
         {
