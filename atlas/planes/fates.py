@@ -14,7 +14,7 @@ numbers:
    largest of the next p states and of the start, is *confirmed* when the distance to its limit, estimated
    as 4 d r / (1 - r) from the widest of the gaps d between states p steps apart on a whole period and their
    ratio r (with several variables d is the widest of p and at least 64 steps, which must not have grown by
-   more than 1/16 in the next as many, and r the largest multiplier of the cycle), is not above 2**-20 of
+   more than 1/16 in the next as many, and r the largest multiplier, below 1), is not above 2**-20 of
    that size, and no multiplier of the cycle exceeds 1 + 1e-6 in size. A variable with a threshold of
    extinction that is nearer to 0 than 2**-20 of the size may still die out, so nothing is confirmed then.
    The period is the least divisor of p after which all states of the next p come back within 2**-17 of the

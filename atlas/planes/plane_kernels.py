@@ -230,7 +230,9 @@ def judge(x, c, word, start, order, before, seen, rules, known, exponents):
                     continue
                 multipliers(x, c, word, m, before, p, logs)
                 rate = exp(logs[0] * p)
-                left = 4.0 * early * rate / (1.0 - rate) if rate < 1.0 else np.inf
+                if not rate < 1.0:
+                    continue
+                left = 4.0 * early * rate / (1.0 - rate)
                 if not late < early and left > reach * 2.0 ** -20:
                     continue
             END_SEVERAL

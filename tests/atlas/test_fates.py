@@ -45,7 +45,7 @@ class Case:
         """Whether orbits have rotation numbers."""
         return len(self.family.states) > 1 or any(state.wrap for state in self.family.states)
 
-    def finder(self, lanes: int = 7) -> FateFinder:
+    def finder(self, lanes: int = 64) -> FateFinder:
         """Return what finds its fates."""
         mapped = self.family.with_patterns({"r": self.word}) if self.word else self.family
         starts = [{}, {name: exact(value) for name, value in self.start.items()}]
@@ -53,7 +53,7 @@ class Case:
             mapped, View(self.across, self.up), COLUMNS, ROWS, self.rules, starts=starts, lanes=lanes
         )
 
-    def found(self, region: Region = WHOLE, lanes: int = 7) -> Pixels:
+    def found(self, region: Region = WHOLE, lanes: int = 64) -> Pixels:
         """Return the fates of a region, as kernels find them."""
         return self.finder(lanes).find(region, start=1)
 
@@ -165,8 +165,8 @@ def check(name: str, at: int, slow: Found, quick: Pixels, m: int) -> None:
 @pytest.mark.parametrize(
     ("name", "lanes"),
     [
-        *((name, 7) for name in CASES),
-        *((name, lanes) for name in ("logistic", "windows") for lanes in (1, 32)),
+        *((name, 64) for name in CASES),
+        *((name, lanes) for name in ("logistic", "windows", "lozi") for lanes in (1, 7)),
     ],
 )
 def test_fates_equal_those_of_the_slow_twin(name: str, lanes: int) -> None:

@@ -226,7 +226,8 @@ class FateTwin:
         rate = exp(self._multipliers(begin, p)[0] * p)
         if rate >= 1.0:
             self._ways.add("near a repelling cycle")
-        left = 4.0 * early * rate / (1.0 - rate) if rate < 1.0 else inf
+            return None
+        left = 4.0 * early * rate / (1.0 - rate)
         return left if late < early or left <= size * 2.0**-20 else None
 
     def _widest_gap(self, x: State, p: int, least: int) -> float:
