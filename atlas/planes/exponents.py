@@ -113,8 +113,8 @@ def kaplan_yorke(exponents: Sequence[float] | NDArray[np.float64]) -> float:
 
     It is k + (L1 + … + Lk) / |Lk+1| with k the largest number for which the sum is not negative; 0 when L1
     is negative, and the number of exponents when no sum is (J. L. Kaplan and J. A. Yorke 1979, in Functional
-    Differential Equations and Approximation of Fixed Points, Lecture Notes in Mathematics 730, 204-227;
-    citation from memory).
+    Differential Equations and Approximation of Fixed Points, ed. H.-O. Peitgen and H.-O. Walther, Springer,
+    204-227; citation from memory).
 
     Parameters
     ----------
